@@ -45,14 +45,14 @@ bool fault_at(struct fault *fault, enum fault_code code, size_t row, size_t colu
 }
 
 void fault_context(struct fault *fault, const char *format, ...) {
-    char before[256], after[sizeof fault->message];
+    char joined[sizeof fault->message + 256];
     va_list arguments;
     va_start(arguments, format);
-    vsnprintf(before, sizeof before, format, arguments);
+    int length = vsnprintf(joined, 256, format, arguments);
     va_end(arguments);
-    memcpy(after, fault->message, sizeof after);
-    after[sizeof after - 1] = '\0';
-    int written = snprintf(fault->message, sizeof fault->message, "%s: %s", before, after);
-    (void)written;
+    size_t used = length < 0 ? 0 : length < 256 ? (size_t)length : 255;
+    snprintf(joined + used, sizeof joined - used, ": %s", fault->message);
+    joined[sizeof fault->message - 1] = '\0';
+    memcpy(fault->message, joined, sizeof fault->message);
     whole_characters(fault->message, sizeof fault->message);
 }
