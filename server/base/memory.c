@@ -35,7 +35,8 @@ void *memory_new(size_t count, size_t size) {
 
 void *memory_grow(void *old, size_t count, size_t size) {
     BUG_IF(size && count > SIZE_MAX / size);
-    return or_stop(realloc(old, count * size ? count * size : 1));
+    size_t wanted = count * size;
+    return or_stop(realloc(old, wanted ? wanted : 1));
 }
 
 char *memory_text(const char *text) {
