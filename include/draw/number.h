@@ -1,0 +1,21 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* Numbers and words as every writer of draw/ needs them. Assumes the C locale, as the whole program does. */
+#ifndef EVENHAND_DRAW_NUMBER_H
+#define EVENHAND_DRAW_NUMBER_H
+#include "base/text.h"
+#include <stdbool.h>
+#include <stddef.h>
+
+/* The fewest of 1 to 17 significant digits that read back as the same double ("%.17g" at worst); whole numbers below
+ * 2^53 without exponent; "-" is the ASCII hyphen. value must be finite. */
+void number_exact(struct text *out, double value);
+/* For a person: fixed decimals, true minus, and when with_sign a plus before positive numbers. NaN gives an en dash. */
+void number_shown(struct text *out, double value, int decimals, bool with_sign);
+/* Decimals that show every digit of a step or of data recorded to that step: 5 -> 0, 0.25 -> 2; at most 8. */
+int number_decimals(double step);
+
+/* Columns a terminal needs for a UTF-8 string (libunistring's uniwidth; broken bytes count one each). */
+size_t number_columns(const char *string);
+/* An upper estimate of the width of a string set in a sans-serif at `size` units: 0.6 em for each column. */
+double number_width(const char *string, double size);
+#endif
