@@ -1,0 +1,93 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The frame: the immutable, typed, columnar picture of the data at one version = cells as received + plan + replay of the
+ * record. Columns are shared between versions that do not touch them. Participants stand in byte order of their
+ * identifiers. Reference-counted; read-only once built, so any number of threads may read it. */
+#ifndef EVENHAND_TRIAL_FRAME_H
+#define EVENHAND_TRIAL_FRAME_H
+#include "base/hash.h"
+#include "intake/cells.h"
+#include "trial/plan.h"
+#include "trial/record.h"
+#include <stdatomic.h>
+
+enum cell_state { /* why a value is missing */
+    CELL_OBSERVED,
+    CELL_BLANK,
+    CELL_MISSING_CODE,
+    CELL_UNREADABLE,
+    CELL_BELOW_LIMIT,
+    CELL_ABOVE_LIMIT,
+    CELL_SET_MISSING,
+    CELL_AFTER_EVENT,
+    CELL_HELD_ASIDE,
+    CELL_STATE_COUNT
+};
+const char *cell_state_name(enum cell_state state);  /* "missing-code" */
+const char *cell_state_words(enum cell_state state); /* "code for missing" */
+
+struct column {
+    atomic_uint references;
+    struct arena arena;
+    size_t index; /* column of the cells */
+    enum variable_kind kind;
+    const char **text;    /* [records] current text; NULL: set missing; points into the cells or this arena */
+    uint32_t *origin;     /* [records] number of the decision that made it, 0: as received; NULL: none changed */
+    double *number;       /* [participants] numbers: the value, NaN unless observed */
+    double *limit;        /* [participants] numbers: the limit where below or above one, else NaN */
+    int32_t *level;       /* [participants] categories, events (0 no, 1 yes), arm: index of the level, NOWHERE if missing */
+    unsigned char *state; /* [participants] enum cell_state */
+    struct level *levels; /* categories and arm: the plan's, then unlisted codes as they stand, in byte order */
+    size_t level_count, listed_count;
+    int decimals; /* numbers: most decimals written in an observed cell */
+    char hash[HASH_SIZE];
+};
+
+#define NO_RECORD ((size_t)-1)
+struct participant {
+    const char *id;
+    size_t record;       /* 0-based record in force, or NO_RECORD while held aside */
+    size_t record_count; /* how many records bear this identifier */
+    bool excluded_full, excluded_per_protocol;
+};
+
+struct frame {
+    atomic_uint references;
+    struct arena arena;
+    uint32_t version;
+    const struct plan *plan;     /* borrowed from the study, as are cells, letters and data_sha256 */
+    const struct cells *cells;
+    const struct decision *decisions; /* [version], a copy of the list; texts are borrowed */
+    const bool *stands;          /* [version] which decisions stand */
+    struct participant *participants;
+    size_t participant_count;
+    size_t held_aside;           /* records held aside: repeated, or without an identifier */
+    struct column **columns;     /* [plan->variable_count], same order */
+    struct column *arm;          /* NULL where the plan has none */
+    struct column *identifier;   /* text and origin only */
+    enum scale *scales;          /* [outcomes] latest decision, else the plan */
+    bool *flagged;               /* [outcomes * participants] */
+    enum blinding blinding;
+    const unsigned char *letters; /* letters[level of arm] = 0 for A, 1 for B ... */
+    bool locked;
+    const char *data_sha256;
+    char state_sha256[HASH_SIZE];
+};
+
+/* Builds the frame after `count` decisions; `previous` (may be NULL) lends columns that nothing has touched. Decisions beyond
+ * previous->version are checked on the way: a `from` that is not the current text, an unknown column or participant, a
+ * lock ... are refused, with the position among the new ones in fault.row. Without `previous` nothing is checked. */
+struct frame *frame_build(const struct plan *plan, const struct cells *cells, const char *data_sha256,
+    const unsigned char *letters, const struct decision *decisions, size_t count, struct frame *previous,
+    struct fault *fault);
+struct frame *frame_retain(struct frame *frame);
+void frame_release(struct frame *frame); /* NULL is fine */
+
+/* The participant's index by binary search, or NOWHERE. */
+int frame_participant(const struct frame *frame, const char *id);
+/* Current text of a column for a participant: NULL where set missing or held aside. */
+const char *frame_text(const struct frame *frame, const struct column *column, size_t participant);
+/* The frame's column of that name (variable, arm, identifier) or NULL. */
+const struct column *frame_column(const struct frame *frame, const char *name);
+/* The 0-based records that bear a participant's identifier, in file order: at most `room` are written; returns how many. */
+size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room);
+#endif

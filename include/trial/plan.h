@@ -1,0 +1,132 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The plan: what the columns mean and what was decided in advance. Read from JSON (RFC 8259, UTF-8); unknown keys are
+ * refused by name. Immutable after plan_read; one arena owns everything; threads may share it. */
+#ifndef EVENHAND_TRIAL_PLAN_H
+#define EVENHAND_TRIAL_PLAN_H
+#include "base/fault.h"
+#include "base/memory.h"
+#include <stdbool.h>
+#include <stddef.h>
+#include <stdint.h>
+
+enum scale { SCALE_LINEAR, SCALE_LOG10 };
+enum blinding { BLINDING_POOLED, BLINDING_CODED, BLINDING_UNBLINDED };
+enum variable_kind { VARIABLE_NUMBER, VARIABLE_CATEGORY, VARIABLE_EVENT, VARIABLE_ARM, VARIABLE_PARTICIPANT };
+enum { NOWHERE = -1 }; /* an index that points at nothing */
+
+struct texts {
+    size_t count;
+    const char **item;
+};
+
+struct range { /* inclusive; `given` is false where the plan says nothing */
+    bool given;
+    double low, high;
+};
+
+struct level {
+    const char *code, *label;
+};
+
+struct arm_level {
+    const char *code, *label;
+    bool reference; /* exactly one */
+    double ratio;   /* planned allocation, 1 by default */
+};
+
+struct visit {
+    const char *label, *column;
+    int variable; /* index into plan.variables */
+};
+
+struct outcome {
+    const char *id, *label, *unit; /* unit "" where none */
+    bool primary, lower_is_better;
+    enum scale scale;
+    struct range plausible;
+    double important_difference; /* NaN where none; in the unit (linear) or as a ratio (log10) */
+    struct visit *visits;
+    size_t visit_count;   /* with one visit there is no baseline; else visits[0] is the baseline */
+    size_t primary_visit; /* index into visits */
+    const struct texts *missing_codes;
+    double responder_threshold; /* NaN where none */
+    const char *population, *event_strategy, *summary; /* of the estimand; NULL where none */
+};
+
+struct covariate {
+    const char *id, *label, *unit, *column;
+    bool number;          /* else a category */
+    struct level *levels; /* categories: as the plan lists them; may be empty */
+    size_t level_count;
+    struct range eligible, plausible;
+    double *bands; /* increasing cut points */
+    size_t band_count;
+    const struct texts *missing_codes;
+    int variable;
+};
+
+struct event {
+    const char *id, *label, *column;
+    struct texts yes, no;
+    const char *kind, *date, *reason; /* NULL where none */
+    int variable;
+};
+
+/* Every column the plan gives a meaning to, once: covariates, then outcomes visit by visit, then events. The arm and the
+ * participant are not among them. */
+struct variable {
+    const char *column, *label, *unit; /* of an outcome's visit: "Systolic blood pressure, 26 weeks" */
+    enum variable_kind kind;
+    int outcome, visit, covariate, event; /* where it comes from, else NOWHERE */
+    struct range plausible, eligible;
+    const struct texts *missing_codes;
+};
+
+struct plan {
+    struct arena arena;
+    const char *title, *participant;
+    const char *arm_column; /* NULL: no arms yet, only pooled exhibits work */
+    struct arm_level *arms;
+    size_t arm_count, reference;
+    struct texts missing_codes;
+    struct outcome *outcomes;
+    size_t outcome_count, primary; /* index of the primary outcome */
+    struct covariate *covariates;
+    size_t covariate_count;
+    struct event *events;
+    size_t event_count;
+    int *adjust_for; /* indices of covariates */
+    size_t adjust_count;
+    int *subgroups;
+    size_t subgroup_count;
+    int *stratified_by;
+    size_t stratified_count;
+    bool drop_missing_baseline; /* false: the mean of the set stands in (White & Thompson 2005, Stat Med 24:993) */
+    bool robust;                /* the plan says so, or planned allocation is unequal, or there are more than two arms */
+    const char *robust_because; /* words for the reader where robust, else NULL */
+    double confidence;
+    enum blinding blinding;
+    uint64_t seed;
+    const char *site_column; /* NULL where none */
+    struct variable *variables;
+    size_t variable_count;
+};
+
+/* Reads and checks a plan. `name` is the file's name for the sentence. On failure everything is released. */
+bool plan_read(struct plan *plan, const char *json, size_t length, const char *name, struct fault *fault);
+void plan_release(struct plan *plan);
+
+int plan_outcome(const struct plan *plan, const char *id); /* index or NOWHERE */
+int plan_covariate(const struct plan *plan, const char *id);
+int plan_event(const struct plan *plan, const char *id);
+int plan_variable(const struct plan *plan, const char *column); /* index into variables or NOWHERE */
+
+const char *scale_name(enum scale scale); /* "linear", "log10" */
+bool scale_read(const char *name, enum scale *scale);
+const char *blinding_name(enum blinding blinding); /* "pooled", "coded", "unblinded" */
+bool blinding_read(const char *name, enum blinding *blinding);
+
+/* The band of a number among cut points, 0..count; and its words: "below 50", "50 to below 60", "60 and above". */
+size_t band_of(const double *bands, size_t count, double value);
+const char *band_words(struct arena *arena, const double *bands, size_t count, size_t band);
+#endif
