@@ -8,8 +8,8 @@
  *   pid site grp sex age bmi sbp_0 sbp_8 sbp_26 uacr_0 uacr_8 uacr_26 rescue
  * UTF-8, comma, no byte order mark, lines end in "\n". A record number is 1-based and does not count the header.
  *
- * The same seed gives the same bytes on every machine (only +, -, *, / and sqrt are used, nothing from libm whose
- * last digit may differ). Pure: no files, no clock, thread-safe. */
+ * The same seed gives the same bytes on every machine (only +, -, * and / of doubles, nothing from libm, whose last
+ * digits differ). Pure: no files, no clock, thread-safe. */
 #ifndef EVENHAND_DEMO_QUAYSIDE_H
 #define EVENHAND_DEMO_QUAYSIDE_H
 #include "base/text.h"
@@ -17,6 +17,8 @@
 
 /* The seed of the demonstration; also the seed in the plan. */
 #define QUAYSIDE_SEED UINT64_C(20261201)
+/* A seed beyond this would not come through JSON whole. */
+#define QUAYSIDE_SEED_MOST (UINT64_C(1) << 53)
 
 struct quayside {
     struct text export_csv;     /* what the trial's data base gave out, with troubles planted in it */
@@ -32,7 +34,8 @@ struct quayside {
  *   "arms": {"L": {...}, "W": {...}},         randomised, and what the generator drew from
  *   "effects": {"sbp": {"8 weeks", "26 weeks"}, "uacr": {...}}}   W minus L in mmHg; W over L as a ratio
  * check is one of missing-code, category-variant, unreadable-number, out-of-plausible-range, out-of-eligibility,
- * repeated-participant, below-limit. One trouble per cell (repeated-participant: per participant, "column" is null,
+ * repeated-participant, below-limit; and beyond-fences, a genuine outlier, within the plausible range, that a box plot
+ * of its column shows apart. One trouble per cell (repeated-participant: per participant, "column" is null,
  * "row" is the record that stands, "received" and "true" the two texts of the cell that differs); else "row" is the
  * record the cell is in. "true" is "" where the value is truly missing. */
 
