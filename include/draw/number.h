@@ -6,8 +6,8 @@
 #include <stdbool.h>
 #include <stddef.h>
 
-/* The fewest of 1 to 17 significant digits that read back as the same double ("%.17g" at worst); whole numbers below
- * 2^53 without exponent; "-" is the ASCII hyphen. value must be finite. */
+/* 15, 16 or 17 significant digits, the fewest that read back as the same double, trailing zeros dropped ("%.17g" at
+ * worst); whole numbers below 2^53 without exponent; the minus is the ASCII hyphen. value must be finite. */
 void number_exact(struct text *out, double value);
 /* For a person: fixed decimals, true minus, and when with_sign a plus before positive numbers. NaN gives an en dash. */
 void number_shown(struct text *out, double value, int decimals, bool with_sign);

@@ -1,0 +1,66 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "draw/number.h"
+#include "base/memory.h"
+#include <math.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <unistr.h>
+#include <uniwidth.h>
+
+void number_exact(struct text *out, double value) {
+    BUG_IF(!isfinite(value));
+    if (fabs(value) < 9007199254740992.0 && value == trunc(value)) {
+        text_format(out, "%.0f", value == 0.0 ? 0.0 : value);
+        return;
+    }
+    /* %g drops trailing zeros, so 15 digits give the shortest form whenever 15 or fewer are enough. */
+    for (int digits = 15; digits <= 17; digits++) {
+        char form[40];
+        snprintf(form, sizeof form, "%.*g", digits, value);
+        if (digits == 17 || strtod(form, NULL) == value) {
+            text_string(out, form);
+            return;
+        }
+    }
+}
+
+void number_shown(struct text *out, double value, int decimals, bool with_sign) {
+    if (with_sign) {
+        text_signed(out, value, decimals);
+    } else {
+        text_decimal(out, value, decimals);
+    }
+}
+
+int number_decimals(double step) {
+    double scaled = fabs(step);
+    int decimals = 0;
+    while (decimals < 8 && fabs(scaled - round(scaled)) > 1e-6 * scaled) {
+        scaled *= 10.0;
+        decimals++;
+    }
+    return decimals;
+}
+
+size_t number_columns(const char *string) {
+    const uint8_t *at = (const uint8_t *)string, *end = at + strlen(string);
+    size_t columns = 0;
+    while (at < end) {
+        ucs4_t character;
+        int used = u8_mbtoucr(&character, at, (size_t)(end - at));
+        if (used <= 0) { /* a broken byte is shown as one replacement character */
+            columns++;
+            at++;
+            continue;
+        }
+        int width = uc_width(character, "UTF-8");
+        columns += width > 0 ? (size_t)width : 0;
+        at += used;
+    }
+    return columns;
+}
+
+double number_width(const char *string, double size) {
+    return string ? 0.6 * size * (double)number_columns(string) : 0.0;
+}
