@@ -32,7 +32,7 @@ static const struct {
     {AXIS_LINEAR, 0.0, 4e8, 2, true, false, "0 +2\u00d710\u2078 +4\u00d710\u2078"},
     {AXIS_LINEAR, -1e-6, 0.0, 2, false, false, "\u221210\u207b\u2076 \u22125\u00d710\u207b\u2077 0"},
     {AXIS_LOG10, 3.0, 3.0, 4, false, false, "1 2 5 10"},
-    {AXIS_LOG10, -1.0, 10.0, 6, false, false, "0.01 0.1 1 10"},
+    {AXIS_LOG10, -1.0, 10.0, 6, false, false, "0.01 0.02 0.05 0.1 0.2 0.5 1 2 5 10"},
 };
 
 static void test_ticks(void **state) {
