@@ -27,32 +27,44 @@ TESTS := $(shell find tests/unit tests/reference tests/http -name 'test_*.c' 2>/
 TEST_PROGRAMS := $(patsubst %.c,$(OUT)/%,$(TESTS))
 BENCHES := $(patsubst %.c,$(OUT)/%,$(shell find tests/bench -name '*.c' 2>/dev/null | sort))
 
+# One short line per step; V=1 shows the commands.
+ifeq ($(V),1)
+else
+QUIET := @
+say = @echo "  $(1) $(2)"
+endif
+
 .DEFAULT_GOAL := build/evenhand
 .DELETE_ON_ERROR:
 .SECONDARY:
 
 build/evenhand: build/release/evenhand
-	cp $< $@
+	$(QUIET)cp $< $@
 
 $(OUT)/evenhand: $(OUT)/server/main.o $(OUT)/libevenhand.a
-	$(CC) $(LDFLAGS) $^ -o $@ $(LDLIBS)
+	$(call say,LD,$@)
+	$(QUIET)$(CC) $(LDFLAGS) $^ -o $@ $(LDLIBS)
 
 $(OUT)/libevenhand.a: $(LIBRARY_OBJECTS)
-	rm -f $@
-	$(AR) rcs $@ $^
+	$(call say,AR,$@)
+	@rm -f $@
+	$(QUIET)$(AR) rcs $@ $^
 
 $(OUT)/%.o: %.c build/flags-$(VARIANT)
 	@mkdir -p $(@D)
-	$(CC) $(CFLAGS) -MMD -MP -c $< -o $@
+	$(call say,CC,$<)
+	$(QUIET)$(CC) $(CFLAGS) -MMD -MP -c $< -o $@
 
 $(OUT)/assets.o: build/assets.c build/flags-$(VARIANT)
 	@mkdir -p $(@D)
-	$(CC) $(CFLAGS) -c $< -o $@
+	$(call say,CC,$<)
+	$(QUIET)$(CC) $(CFLAGS) -c $< -o $@
 
 # The page is built into the program: every file of web/ becomes an array and a row of a table.
 build/assets.c: $(WEB) server/http/embed.sh include/http/assets.h
 	@mkdir -p build
-	sh server/http/embed.sh $(WEB) > $@
+	$(call say,EMBED,web/)
+	$(QUIET)sh server/http/embed.sh $(WEB) > $@
 
 # A change of flags rebuilds: the file changes only when its content does.
 build/flags-$(VARIANT): force
@@ -61,24 +73,25 @@ build/flags-$(VARIANT): force
 
 $(OUT)/tests/%: tests/%.c $(OUT)/libevenhand.a build/flags-$(VARIANT)
 	@mkdir -p $(@D)
-	$(CC) $(CFLAGS) -Itests -MMD -MP $< -o $@ $(LDFLAGS) $(OUT)/libevenhand.a $(LDLIBS) -lcmocka
+	$(call say,TEST,$<)
+	$(QUIET)$(CC) $(CFLAGS) -Itests -MMD -MP $< -o $@ $(LDFLAGS) $(OUT)/libevenhand.a $(LDLIBS) -lcmocka
 
 programs: $(OUT)/evenhand $(TEST_PROGRAMS)
 benches: $(BENCHES)
 
 demo:
-	.ci/needs build
-	$(MAKE) build/evenhand
+	@.ci/needs build
+	@$(MAKE) --no-print-directory build/evenhand
 	build/evenhand demo $(ARGUMENTS)
 
 test:
-	.ci/needs build test
-	tests/run
+	@.ci/needs build test
+	@tests/run
 
 bench:
-	.ci/needs build test
-	$(MAKE) build/evenhand benches
-	tests/bench/run
+	@.ci/needs build test
+	@$(MAKE) --no-print-directory build/evenhand benches
+	@tests/bench/run
 
 clean:
 	rm -rf build
