@@ -1,0 +1,799 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "trial/frame.h"
+#include "base/map.h"
+#include "intake/number.h"
+#include <math.h>
+#include <stdlib.h>
+#include <string.h>
+
+static const struct {
+    const char *name, *words;
+} states[CELL_STATE_COUNT] = {
+    [CELL_OBSERVED] = {"observed", "observed"},
+    [CELL_BLANK] = {"blank", "blank"},
+    [CELL_MISSING_CODE] = {"missing-code", "code for missing"},
+    [CELL_UNREADABLE] = {"unreadable", "unreadable"},
+    [CELL_BELOW_LIMIT] = {"below-limit", "below the limit"},
+    [CELL_ABOVE_LIMIT] = {"above-limit", "above the limit"},
+    [CELL_SET_MISSING] = {"set-missing", "set missing"},
+    [CELL_AFTER_EVENT] = {"after-event", "after an event"},
+    [CELL_HELD_ASIDE] = {"held-aside", "record held aside"},
+};
+
+const char *cell_state_name(enum cell_state state) {
+    return states[state].name;
+}
+
+const char *cell_state_words(enum cell_state state) {
+    return states[state].words;
+}
+
+/* What a frame is built from, and what is known on the way. */
+struct build {
+    struct frame *frame;
+    const struct frame *previous; /* NULL: nothing is checked and nothing shared */
+    size_t count;                 /* decisions */
+    bool *stands;
+    struct fault *fault;
+};
+
+/* ---- refusing a new decision ---- */
+
+static bool is_new(const struct build *build, size_t i) {
+    return build->previous && i >= build->previous->version;
+}
+
+static bool refuse(struct build *build, size_t i, const char *what) {
+    size_t entry = i + 1 - build->previous->version;
+    return fault_at(build->fault, FAULT_INPUT, entry, 0, "decision %zu of the batch (%s) %s; nothing was recorded", entry,
+        decision_rules[build->frame->decisions[i].kind].name, what);
+}
+
+/* While blinded no text of the arm's column may stand in a sentence. */
+static bool may_quote(const struct build *build, const struct column *column) {
+    return column->kind != VARIABLE_ARM || build->frame->blinding == BLINDING_UNBLINDED;
+}
+
+/* ---- the roster: participants in identifier order, and which record is in force ---- */
+
+struct roster_row {
+    const char *id;
+    size_t record;
+};
+
+static int by_id_then_record(const void *a, const void *b) {
+    const struct roster_row *x = a, *y = b;
+    int order = strcmp(x->id, y->id);
+    return order ? order : (x->record > y->record) - (x->record < y->record);
+}
+
+static bool is_blank(const char *text) {
+    return text[strspn(text, " \t\r\n\f\v")] == '\0';
+}
+
+static void build_roster(struct build *build) {
+    struct frame *frame = build->frame;
+    size_t records = frame->cells->records, used = 0;
+    struct roster_row *rows = memory_new(records, sizeof *rows);
+    for (size_t r = 0; r < records; r++) {
+        const char *id = frame->identifier->text[r];
+        if (id && !is_blank(id)) {
+            rows[used++] = (struct roster_row){id, r};
+        }
+    }
+    frame->held_aside = records - used;
+    bool sorted = true;
+    for (size_t i = 1; i < used && sorted; i++) {
+        sorted = by_id_then_record(&rows[i - 1], &rows[i]) < 0;
+    }
+    if (!sorted) {
+        qsort(rows, used, sizeof *rows, by_id_then_record);
+    }
+    frame->participants = ARENA_NEW(&frame->arena, used, struct participant);
+    for (size_t i = 0; i < used; i++) {
+        struct participant *last = frame->participant_count ? &frame->participants[frame->participant_count - 1] : NULL;
+        if (last && strcmp(last->id, rows[i].id) == 0) {
+            last->record_count++;
+            last->record = NO_RECORD;
+        } else {
+            frame->participants[frame->participant_count++] = (struct participant){rows[i].id, rows[i].record, 1, false, false};
+        }
+    }
+    memory_free(rows);
+    for (size_t i = 0; i < frame->participant_count; i++) {
+        frame->held_aside += frame->participants[i].record_count > 1 ? frame->participants[i].record_count : 0;
+    }
+}
+
+/* keep-record: one of a repeated participant's records stands. */
+static bool apply_keep(struct build *build, size_t i) {
+    struct frame *frame = build->frame;
+    const struct decision *decision = &frame->decisions[i];
+    int who = frame_participant(frame, decision->participant);
+    size_t record = decision->row - 1;
+    const char *there = record < frame->cells->records ? frame->identifier->text[record] : NULL;
+    if (who == NOWHERE || !there || strcmp(there, decision->participant) != 0) {
+        return !is_new(build, i) || refuse(build, i,
+            who == NOWHERE ? "names a participant who is not in the file" : "names a row that is not one of the participant's records");
+    }
+    struct participant *participant = &frame->participants[who];
+    if (participant->record == NO_RECORD) {
+        frame->held_aside -= participant->record_count;
+        frame->held_aside += participant->record_count - 1;
+    }
+    participant->record = record;
+    return true;
+}
+
+int frame_participant(const struct frame *frame, const char *id) {
+    size_t low = 0, high = frame->participant_count;
+    while (low < high) {
+        size_t middle = low + (high - low) / 2;
+        int order = strcmp(frame->participants[middle].id, id);
+        if (order == 0) {
+            return (int)middle;
+        }
+        if (order < 0) {
+            low = middle + 1;
+        } else {
+            high = middle;
+        }
+    }
+    return NOWHERE;
+}
+
+size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room) {
+    const struct participant *who = &frame->participants[participant];
+    if (who->record_count == 1 && room) {
+        records[0] = who->record;
+        return 1;
+    }
+    size_t found = 0;
+    for (size_t r = 0; r < frame->cells->records && found < who->record_count; r++) {
+        const char *id = frame->identifier->text[r];
+        if (id && strcmp(id, who->id) == 0) {
+            if (found < room) {
+                records[found] = r;
+            }
+            found++;
+        }
+    }
+    return found;
+}
+
+/* ---- columns: replay of the decisions about them ---- */
+
+static bool about_column(const struct decision *decision, const char *name) {
+    return decision->column && decision->kind <= DECISION_CONFIRM && strcmp(decision->column, name) == 0;
+}
+
+/* Whether any decision about the column has come, gone or come back since the previous frame. */
+static bool column_touched(const struct build *build, const char *name) {
+    for (size_t i = 0; i < build->count; i++) {
+        bool before = i < build->previous->version && build->previous->stands[i];
+        if (before != build->stands[i] && about_column(&build->frame->decisions[i], name)) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static bool roster_touched(const struct build *build) {
+    for (size_t i = 0; i < build->count; i++) {
+        bool before = i < build->previous->version && build->previous->stands[i];
+        if (before != build->stands[i] && build->frame->decisions[i].kind == DECISION_KEEP_RECORD) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static void put_cell(struct build *build, struct column *column, size_t record, const char *text, uint32_t number) {
+    if (!column->origin) {
+        column->origin = ARENA_NEW(&column->arena, build->frame->cells->records, uint32_t);
+    }
+    column->text[record] = text;
+    column->origin[record] = number;
+}
+
+static bool same_text(const char *a, const char *b) {
+    return a && b ? strcmp(a, b) == 0 : a == b;
+}
+
+/* How many of the current texts read so. */
+static size_t count_text(const struct build *build, const struct column *column, const char *text) {
+    size_t count = 0;
+    for (size_t r = 0; r < build->frame->cells->records; r++) {
+        count += same_text(column->text[r], text);
+    }
+    return count;
+}
+
+/* The record a decision on one cell is about: its row, or the participant's record in force. NO_RECORD where unclear. */
+static size_t record_meant(const struct build *build, const struct decision *decision, const char **why) {
+    const struct frame *frame = build->frame;
+    int who = frame->participant_count ? frame_participant(frame, decision->participant) : NOWHERE;
+    if (who == NOWHERE) {
+        *why = "names a participant who is not in the file";
+        return NO_RECORD;
+    }
+    if (decision->row) {
+        const char *there = decision->row <= frame->cells->records ? frame->identifier->text[decision->row - 1] : NULL;
+        *why = "names a row that is not one of the participant's records";
+        return there && strcmp(there, decision->participant) == 0 ? decision->row - 1 : NO_RECORD;
+    }
+    *why = "is about a participant with several records; say which one with \"row\", or keep one first";
+    return frame->participants[who].record;
+}
+
+static bool from_differs(struct build *build, size_t i, const struct column *column, const char *now) {
+    const struct decision *decision = &build->frame->decisions[i];
+    if (!may_quote(build, column)) {
+        return refuse(build, i, "gives a \"from\" that is not the text now current");
+    }
+    return refuse(build, i, arena_format(&build->frame->arena, "says %s of %s reads %s%.60s%s, but it now reads %s%.60s%s",
+        decision->column, decision->participant, decision->from ? "\"" : "", decision->from ? decision->from : "nothing (set missing)",
+        decision->from ? "\"" : "", now ? "\"" : "", now ? now : "nothing (set missing)", now ? "\"" : ""));
+}
+
+static bool apply_to_cell(struct build *build, size_t i, struct column *column) {
+    const struct decision *decision = &build->frame->decisions[i];
+    const char *why = NULL;
+    size_t record = record_meant(build, decision, &why);
+    if (record == NO_RECORD) {
+        return !is_new(build, i) || refuse(build, i, why);
+    }
+    if (decision->kind == DECISION_CONFIRM) {
+        return !is_new(build, i) || same_text(column->text[record], decision->value) ||
+               refuse(build, i, "confirms a value that is not the text now current");
+    }
+    if (is_new(build, i) && !same_text(column->text[record], decision->from)) {
+        return from_differs(build, i, column, column->text[record]);
+    }
+    put_cell(build, column, record, decision->kind == DECISION_CORRECT ? decision->to : NULL, decision->number);
+    return true;
+}
+
+static bool apply_read_as(struct build *build, size_t i, struct column *column) {
+    const struct decision *decision = &build->frame->decisions[i];
+    if (is_new(build, i) && count_text(build, column, decision->from) == 0) {
+        return refuse(build, i, "reads a code as another, but no value of the column now reads so");
+    }
+    for (size_t r = 0; r < build->frame->cells->records; r++) {
+        if (same_text(column->text[r], decision->from)) {
+            put_cell(build, column, r, decision->to, decision->number);
+        }
+    }
+    return true;
+}
+
+/* Applies every standing decision about the column to its texts, in order. */
+static bool replay(struct build *build, struct column *column, const char *name) {
+    for (size_t i = 0; i < build->count; i++) {
+        const struct decision *decision = &build->frame->decisions[i];
+        if (!build->stands[i] || !about_column(decision, name)) {
+            continue;
+        }
+        bool one_cell = decision->kind == DECISION_CORRECT || decision->kind == DECISION_SET_MISSING ||
+                        (decision->kind == DECISION_CONFIRM && decision->participant);
+        bool done = one_cell                          ? apply_to_cell(build, i, column) :
+            decision->kind == DECISION_READ_AS        ? apply_read_as(build, i, column) :
+            decision->kind == DECISION_CONFIRM        ? !is_new(build, i) || count_text(build, column, decision->value) > 0 ||
+                refuse(build, i, "confirms a value that no cell of the column now has") :
+                                                        true;
+        if (!done) {
+            return false;
+        }
+    }
+    return true;
+}
+
+/* ---- interpretation: from current texts to typed values, by participant ---- */
+
+struct codes {
+    size_t count;
+    const char **text;
+    double *number; /* NaN where the code is no number */
+};
+
+static void collect_codes(const struct build *build, struct column *column, const char *name, struct codes *codes) {
+    codes->text = ARENA_NEW(&column->arena, build->count, const char *);
+    codes->number = ARENA_NEW(&column->arena, build->count, double);
+    for (size_t i = 0; i < build->count; i++) {
+        const struct decision *decision = &build->frame->decisions[i];
+        if (build->stands[i] && decision->kind == DECISION_MISSING_CODE && about_column(decision, name)) {
+            codes->text[codes->count] = decision->value;
+            number_read(decision->value, '.', &codes->number[codes->count], NULL);
+            codes->count++;
+        }
+    }
+}
+
+static bool is_code(const struct codes *codes, const char *text) {
+    for (size_t i = 0; i < codes->count; i++) {
+        if (strcmp(codes->text[i], text) == 0) {
+            return true;
+        }
+    }
+    return false;
+}
+
+/* A code that is a number is meant however it is written: 999, " 999", 999.0. */
+static bool is_code_number(const struct codes *codes, double value) {
+    for (size_t i = 0; i < codes->count; i++) {
+        if (codes->number[i] >= value && codes->number[i] <= value) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static char decimal_sign(const struct build *build, const char *name) {
+    char sign = '.';
+    for (size_t i = 0; i < build->count; i++) {
+        const struct decision *decision = &build->frame->decisions[i];
+        if (build->stands[i] && decision->kind == DECISION_NUMBER_FORMAT && about_column(decision, name)) {
+            sign = decision->decimal[0];
+        }
+    }
+    return sign;
+}
+
+static void interpret_number(struct column *column, size_t p, const char *text, const struct codes *codes, char sign) {
+    static const unsigned char state_of[] = {[NUMBER_READ] = CELL_OBSERVED, [NUMBER_BLANK] = CELL_BLANK,
+        [NUMBER_UNREADABLE] = CELL_UNREADABLE, [NUMBER_BELOW_LIMIT] = CELL_BELOW_LIMIT, [NUMBER_ABOVE_LIMIT] = CELL_ABOVE_LIMIT};
+    double value;
+    int decimals;
+    enum number_reading reading = number_read(text, sign, &value, &decimals);
+    column->state[p] = state_of[reading];
+    if (is_code(codes, text) || (reading == NUMBER_READ && is_code_number(codes, value))) {
+        column->state[p] = CELL_MISSING_CODE;
+    } else if (reading == NUMBER_READ) {
+        column->number[p] = value;
+        column->decimals = decimals > column->decimals ? decimals : column->decimals;
+    } else if (reading == NUMBER_BELOW_LIMIT || reading == NUMBER_ABOVE_LIMIT) {
+        column->limit[p] = value;
+    }
+}
+
+static int32_t event_level(const struct event *event, const char *text) {
+    for (size_t i = 0; i < event->yes.count; i++) {
+        if (strcmp(event->yes.item[i], text) == 0) {
+            return 1;
+        }
+    }
+    for (size_t i = 0; i < event->no.count; i++) {
+        if (strcmp(event->no.item[i], text) == 0) {
+            return 0;
+        }
+    }
+    return NOWHERE;
+}
+
+static int by_text(const void *a, const void *b) {
+    return strcmp(*(const char *const *)a, *(const char *const *)b);
+}
+
+/* Levels of a category or the arm: the listed ones, then every other text that stands there, in byte order. */
+static void interpret_category(const struct frame *frame, struct column *column, const struct codes *codes) {
+    struct map map;
+    map_init(&map);
+    for (size_t i = 0; i < column->listed_count; i++) {
+        map_put(&map, column->levels[i].code, (int32_t)i);
+    }
+    size_t unlisted = 0, room = 0;
+    const char **extra = NULL;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        const char *text = frame_text(frame, column, p);
+        bool there = frame->participants[p].record != NO_RECORD;
+        column->level[p] = NOWHERE;
+        column->state[p] = !there ? CELL_HELD_ASIDE :
+            !text                 ? CELL_SET_MISSING :
+            is_blank(text)        ? CELL_BLANK :
+            is_code(codes, text)  ? CELL_MISSING_CODE :
+                                    CELL_OBSERVED;
+        if (column->state[p] == CELL_OBSERVED && map_get(&map, text) == NOWHERE) {
+            if (unlisted == room) {
+                room = room ? room * 2 : 16;
+                extra = memory_grow(extra, room, sizeof *extra);
+            }
+            extra[unlisted++] = text;
+            map_put(&map, text, 0);
+        }
+    }
+    if (unlisted) {
+        qsort(extra, unlisted, sizeof *extra, by_text);
+    }
+    struct level *levels = ARENA_NEW(&column->arena, column->listed_count + unlisted, struct level);
+    if (column->listed_count) {
+        memcpy(levels, column->levels, column->listed_count * sizeof *levels);
+    }
+    map_release(&map);
+    for (size_t i = 0; i < column->listed_count + unlisted; i++) {
+        if (i >= column->listed_count) {
+            levels[i] = (struct level){extra[i - column->listed_count], extra[i - column->listed_count]};
+        }
+        map_put(&map, levels[i].code, (int32_t)i);
+    }
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        if (column->state[p] == CELL_OBSERVED) {
+            column->level[p] = map_get(&map, frame_text(frame, column, p));
+        }
+    }
+    column->levels = levels;
+    column->level_count = column->listed_count + unlisted;
+    map_release(&map);
+    memory_free(extra);
+}
+
+static void interpret_cell(const struct frame *frame, struct column *column, size_t p, const struct codes *codes,
+    const struct event *event, char sign) {
+    const char *text = frame_text(frame, column, p);
+    if (frame->participants[p].record == NO_RECORD) {
+        column->state[p] = CELL_HELD_ASIDE;
+    } else if (!text) {
+        column->state[p] = CELL_SET_MISSING;
+    } else if (event) {
+        column->level[p] = event_level(event, text);
+        column->state[p] = column->level[p] != NOWHERE ? CELL_OBSERVED : is_blank(text) ? CELL_BLANK : CELL_UNREADABLE;
+    } else {
+        interpret_number(column, p, text, codes, sign);
+    }
+}
+
+/* The fingerprint of a column's values: state, then the value, by participant. */
+static void hash_column(const struct frame *frame, struct column *column) {
+    struct hash hash;
+    hash_init(&hash);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        hash_bytes(&hash, &column->state[p], 1);
+        double number = column->number ? column->number[p] : NAN;
+        double limit = column->limit ? column->limit[p] : NAN;
+        if (!isnan(number) || !isnan(limit)) {
+            double value = (isnan(number) ? limit : number) + 0.0; /* −0 becomes 0 */
+            hash_bytes(&hash, &value, sizeof value);
+        } else if (column->level && column->level[p] != NOWHERE) {
+            hash_field(&hash, column->kind == VARIABLE_EVENT ? (column->level[p] ? "1" : "0") : column->levels[column->level[p]].code);
+        }
+    }
+    hash_finish(&hash, column->hash);
+}
+
+static void interpret(struct build *build, struct column *column, const char *name, const struct event *event) {
+    struct frame *frame = build->frame;
+    size_t n = frame->participant_count;
+    struct codes codes = {0};
+    collect_codes(build, column, name, &codes);
+    column->state = ARENA_NEW(&column->arena, n, unsigned char);
+    if (column->kind == VARIABLE_NUMBER) {
+        column->number = ARENA_NEW(&column->arena, n, double);
+        column->limit = ARENA_NEW(&column->arena, n, double);
+        for (size_t p = 0; p < n; p++) {
+            column->number[p] = column->limit[p] = NAN;
+        }
+    } else {
+        column->level = ARENA_NEW(&column->arena, n, int32_t);
+        for (size_t p = 0; p < n; p++) {
+            column->level[p] = NOWHERE;
+        }
+    }
+    if (column->kind == VARIABLE_CATEGORY || column->kind == VARIABLE_ARM) {
+        interpret_category(frame, column, &codes);
+    } else {
+        char sign = decimal_sign(build, name);
+        for (size_t p = 0; p < n; p++) {
+            interpret_cell(frame, column, p, &codes, event, sign);
+        }
+    }
+    hash_column(frame, column);
+}
+
+static struct column *column_new(const struct frame *frame, const char *name, enum variable_kind kind) {
+    struct column *column = memory_new(1, sizeof *column);
+    atomic_init(&column->references, 1);
+    arena_init(&column->arena);
+    column->index = cells_column(frame->cells, name);
+    column->kind = kind;
+    column->text = ARENA_NEW(&column->arena, frame->cells->records, const char *);
+    for (size_t r = 0; r < frame->cells->records; r++) {
+        column->text[r] = cells_at(frame->cells, r, column->index);
+    }
+    return column;
+}
+
+static struct column *column_retain(struct column *column) {
+    atomic_fetch_add(&column->references, 1);
+    return column;
+}
+
+static void column_release(struct column *column) {
+    if (column && atomic_fetch_sub(&column->references, 1) == 1) {
+        arena_release(&column->arena);
+        memory_free(column);
+    }
+}
+
+/* ---- the parts of a frame ---- */
+
+static bool build_identifier(struct build *build) {
+    struct frame *frame = build->frame;
+    const char *name = frame->plan->participant;
+    if (build->previous && !column_touched(build, name)) {
+        frame->identifier = column_retain(build->previous->identifier);
+        return true;
+    }
+    frame->identifier = column_new(frame, name, VARIABLE_PARTICIPANT);
+    /* Its own corrections are addressed by the identifiers as they stood before them. */
+    if (build->previous) {
+        frame->participants = build->previous->participants;
+        frame->participant_count = build->previous->participant_count;
+    } else {
+        build_roster(build);
+    }
+    bool done = replay(build, frame->identifier, name);
+    frame->participants = NULL;
+    frame->participant_count = frame->held_aside = 0;
+    return done;
+}
+
+static bool build_participants(struct build *build) {
+    struct frame *frame = build->frame;
+    build_roster(build);
+    for (size_t i = 0; i < build->count; i++) {
+        if (build->stands[i] && frame->decisions[i].kind == DECISION_KEEP_RECORD && !apply_keep(build, i)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+static void list_levels(struct column *column, const struct plan *plan, int covariate) {
+    if (column->kind == VARIABLE_ARM) {
+        column->listed_count = plan->arm_count;
+        column->levels = ARENA_NEW(&column->arena, plan->arm_count, struct level);
+        for (size_t i = 0; i < plan->arm_count; i++) {
+            column->levels[i] = (struct level){plan->arms[i].code, plan->arms[i].label};
+        }
+    } else if (column->kind == VARIABLE_CATEGORY && covariate != NOWHERE) {
+        column->listed_count = plan->covariates[covariate].level_count;
+        column->levels = plan->covariates[covariate].levels;
+    }
+}
+
+static bool build_column(struct build *build, const char *name, enum variable_kind kind, int covariate, int event,
+    struct column *before, bool share, struct column **column) {
+    if (before && share && !column_touched(build, name)) {
+        *column = column_retain(before);
+        return true;
+    }
+    *column = column_new(build->frame, name, kind);
+    list_levels(*column, build->frame->plan, covariate);
+    if (!replay(build, *column, name)) {
+        return false;
+    }
+    interpret(build, *column, name, event == NOWHERE ? NULL : &build->frame->plan->events[event]);
+    return true;
+}
+
+static bool build_columns(struct build *build) {
+    struct frame *frame = build->frame;
+    const struct plan *plan = frame->plan;
+    bool share = build->previous && build->previous->identifier == frame->identifier && !roster_touched(build);
+    frame->columns = ARENA_NEW(&frame->arena, plan->variable_count, struct column *);
+    for (size_t v = 0; v < plan->variable_count; v++) {
+        const struct variable *variable = &plan->variables[v];
+        if (!build_column(build, variable->column, variable->kind, variable->covariate, variable->event,
+                build->previous ? build->previous->columns[v] : NULL, share, &frame->columns[v])) {
+            return false;
+        }
+    }
+    return !plan->arm_column || build_column(build, plan->arm_column, VARIABLE_ARM, NOWHERE, NOWHERE,
+                                    build->previous ? build->previous->arm : NULL, share, &frame->arm);
+}
+
+/* ---- what is not a cell: sets, scales, flags, blinding, lock ---- */
+
+static bool apply_unblind(struct build *build, size_t i) {
+    struct frame *frame = build->frame;
+    enum blinding to = BLINDING_CODED;
+    blinding_read(frame->decisions[i].to ? frame->decisions[i].to : "coded", &to);
+    if (is_new(build, i) && !frame->plan->arm_column) {
+        return refuse(build, i, "cannot be: the plan has no arm");
+    }
+    if (is_new(build, i) && to <= frame->blinding) {
+        return refuse(build, i, arena_format(&frame->arena, "asks for %s, but the study is %s already", blinding_name(to),
+            blinding_name(frame->blinding)));
+    }
+    frame->blinding = to;
+    return true;
+}
+
+static bool apply_setting(struct build *build, size_t i) {
+    struct frame *frame = build->frame;
+    const struct decision *decision = &frame->decisions[i];
+    int outcome = decision->outcome ? plan_outcome(frame->plan, decision->outcome) : NOWHERE;
+    int who = decision->participant ? frame_participant(frame, decision->participant) : NOWHERE;
+    if (is_new(build, i) && decision->outcome && outcome == NOWHERE) {
+        return refuse(build, i, arena_format(&frame->arena, "names \"%.60s\", which is not the id of an outcome", decision->outcome));
+    }
+    if (is_new(build, i) && decision->participant && who == NOWHERE) {
+        return refuse(build, i, "names a participant who is not in the file");
+    }
+    switch (decision->kind) {
+    case DECISION_SCALE:
+        scale_read(decision->scale, &frame->scales[outcome]);
+        return true;
+    case DECISION_FLAG:
+        frame->flagged[(size_t)outcome * frame->participant_count + (size_t)who] = true;
+        return true;
+    case DECISION_EXCLUDE:
+        /* Who is out of the full set is out of the per-protocol set too. */
+        frame->participants[who].excluded_per_protocol = true;
+        frame->participants[who].excluded_full |= strcmp(decision->set, "full") == 0;
+        return true;
+    case DECISION_UNBLIND:
+        return apply_unblind(build, i);
+    default:
+        return true;
+    }
+}
+
+static bool build_settings(struct build *build) {
+    struct frame *frame = build->frame;
+    const struct plan *plan = frame->plan;
+    frame->scales = ARENA_NEW(&frame->arena, plan->outcome_count, enum scale);
+    frame->flagged = ARENA_NEW(&frame->arena, plan->outcome_count * frame->participant_count, bool);
+    for (size_t i = 0; i < plan->outcome_count; i++) {
+        frame->scales[i] = plan->outcomes[i].scale;
+    }
+    for (size_t i = 0; i < build->count; i++) {
+        if (build->stands[i] && !apply_setting(build, i)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+/* ---- rules that hold for every new decision ---- */
+
+static bool reverse_fits(struct build *build, size_t i) {
+    const struct decision *decision = &build->frame->decisions[i];
+    if (decision->reverses - 1 >= i) {
+        return refuse(build, i, "reverses a decision that is not there");
+    }
+    const struct decision *target = &build->frame->decisions[decision->reverses - 1];
+    if (!decision_rules[target->kind].reversible) {
+        return refuse(build, i, arena_format(&build->frame->arena, "cannot reverse decision %u: %s stands for good",
+            target->number, decision_rules[target->kind].name));
+    }
+    for (size_t j = 0; j < i; j++) {
+        const struct decision *other = &build->frame->decisions[j];
+        bool again = other->kind == DECISION_REVERSE && other->reverses == decision->reverses && build->stands[j];
+        if (again) {
+            return refuse(build, i, arena_format(&build->frame->arena, "reverses decision %u, which decision %u has reversed already",
+                decision->reverses, other->number));
+        }
+    }
+    return true;
+}
+
+static bool column_fits(struct build *build, size_t i) {
+    const struct frame *frame = build->frame;
+    const struct decision *decision = &frame->decisions[i];
+    const struct plan *plan = frame->plan;
+    bool known = plan_variable(plan, decision->column) != NOWHERE || strcmp(decision->column, plan->participant) == 0 ||
+                 (plan->arm_column && strcmp(decision->column, plan->arm_column) == 0);
+    return known || refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
+                        decision->column));
+}
+
+static bool changes_data(const struct build *build, const struct decision *decision) {
+    const struct decision *meant = decision;
+    while (meant->kind == DECISION_REVERSE && meant->reverses < meant->number) {
+        meant = &build->frame->decisions[meant->reverses - 1];
+    }
+    return meant->kind != DECISION_REVERSE && decision_rules[meant->kind].data;
+}
+
+static bool new_ones_fit(struct build *build) {
+    struct frame *frame = build->frame;
+    frame->locked = false;
+    for (size_t i = 0; i < build->count; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        bool stands = build->stands[i];
+        if (is_new(build, i)) {
+            if ((decision->column && !column_fits(build, i)) || (decision->kind == DECISION_REVERSE && !reverse_fits(build, i))) {
+                return false;
+            }
+            if (frame->locked && changes_data(build, decision)) {
+                return refuse(build, i, "would change data, and the study is locked; unlock it first, with a reason");
+            }
+        }
+        frame->locked = stands && decision->kind == DECISION_LOCK   ? true :
+            stands && decision->kind == DECISION_UNLOCK ? false :
+                                                          frame->locked;
+    }
+    return true;
+}
+
+static void hash_state(struct frame *frame) {
+    struct hash hash;
+    hash_init(&hash);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        const struct participant *who = &frame->participants[p];
+        hash_field(&hash, who->id);
+        hash_field(&hash, who->record == NO_RECORD ? "held-aside" : who->excluded_full ? "excluded" :
+            who->excluded_per_protocol ? "excluded-per-protocol" : "in");
+    }
+    for (size_t v = 0; v < frame->plan->variable_count; v++) {
+        hash_field(&hash, frame->plan->variables[v].column);
+        hash_field(&hash, frame->columns[v]->hash);
+    }
+    hash_field(&hash, frame->arm ? frame->arm->hash : NULL);
+    for (size_t i = 0; i < frame->plan->outcome_count; i++) {
+        hash_field(&hash, frame->plan->outcomes[i].id);
+        hash_field(&hash, scale_name(frame->scales[i]));
+    }
+    hash_finish(&hash, frame->state_sha256);
+}
+
+struct frame *frame_build(const struct plan *plan, const struct cells *cells, const char *data_sha256,
+    const unsigned char *letters, const struct decision *decisions, size_t count, struct frame *previous,
+    struct fault *fault) {
+    struct frame *frame = memory_new(1, sizeof *frame);
+    atomic_init(&frame->references, 1);
+    arena_init(&frame->arena);
+    frame->version = (uint32_t)count;
+    frame->plan = plan;
+    frame->cells = cells;
+    frame->letters = letters;
+    frame->data_sha256 = data_sha256;
+    frame->blinding = plan->blinding;
+    struct decision *copy = ARENA_NEW(&frame->arena, count, struct decision);
+    if (count) {
+        memcpy(copy, decisions, count * sizeof *copy);
+    }
+    bool *stands = ARENA_NEW(&frame->arena, count, bool);
+    record_standing(copy, count, stands);
+    frame->decisions = copy;
+    frame->stands = stands;
+    struct build build = {frame, previous, count, stands, fault};
+    if (!new_ones_fit(&build) || !build_identifier(&build) || !build_participants(&build) || !build_columns(&build) ||
+        !build_settings(&build)) {
+        frame_release(frame);
+        return NULL;
+    }
+    hash_state(frame);
+    return frame;
+}
+
+struct frame *frame_retain(struct frame *frame) {
+    atomic_fetch_add(&frame->references, 1);
+    return frame;
+}
+
+void frame_release(struct frame *frame) {
+    if (!frame || atomic_fetch_sub(&frame->references, 1) != 1) {
+        return;
+    }
+    for (size_t v = 0; frame->columns && v < frame->plan->variable_count; v++) {
+        column_release(frame->columns[v]);
+    }
+    column_release(frame->arm);
+    column_release(frame->identifier);
+    arena_release(&frame->arena);
+    memory_free(frame);
+}
+
+const char *frame_text(const struct frame *frame, const struct column *column, size_t participant) {
+    size_t record = frame->participants[participant].record;
+    return record == NO_RECORD ? NULL : column->text[record];
+}
+
+const struct column *frame_column(const struct frame *frame, const char *name) {
+    int variable = plan_variable(frame->plan, name);
+    return variable != NOWHERE                                                       ? frame->columns[variable] :
+        frame->plan->arm_column && strcmp(frame->plan->arm_column, name) == 0        ? frame->arm :
+        strcmp(frame->plan->participant, name) == 0                                  ? frame->identifier :
+                                                                                       NULL;
+}

@@ -1,0 +1,742 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "trial/plan.h"
+#include "base/text.h"
+#include <cjson/cJSON.h>
+#include <math.h>
+#include <stdio.h>
+#include <string.h>
+
+/* ---- reading JSON with sentences: where we are is a path such as outcomes[0].visits[1] ---- */
+
+struct reader {
+    struct plan *plan;
+    const char *name; /* the file's, for the sentence */
+    struct fault *fault;
+};
+
+static bool wrong(struct reader *reader, const char *path, const char *what) {
+    return fault_set(reader->fault, FAULT_INPUT, "%s: %s%s%s", reader->name, path, *path ? " " : "", what);
+}
+
+static const char *join(struct reader *reader, const char *path, const char *key) {
+    return arena_format(&reader->plan->arena, "%s%s%s", path, *path ? "." : "", key);
+}
+
+static const char *at_index(struct reader *reader, const char *path, size_t index) {
+    return arena_format(&reader->plan->arena, "%s[%zu]", path, index);
+}
+
+/* Refuses keys that are not in the space-separated list, and keys given twice. */
+static bool keys_known(struct reader *reader, const cJSON *object, const char *path, const char *known) {
+    if (!cJSON_IsObject(object)) {
+        return wrong(reader, *path ? path : "the plan", "must be an object in braces");
+    }
+    for (const cJSON *child = object->child; child; child = child->next) {
+        size_t length = strlen(child->string);
+        bool found = false;
+        for (const char *word = known; *word && !found; word += strcspn(word, " "), word += *word == ' ') {
+            found = strcspn(word, " ") == length && memcmp(word, child->string, length) == 0;
+        }
+        if (!found) {
+            return fault_set(reader->fault, FAULT_INPUT, "%s: the key \"%.60s\"%s%s is not one a plan has here; known are: %s",
+                reader->name, child->string, *path ? " in " : "", path, known);
+        }
+        for (const cJSON *before = object->child; before != child; before = before->next) {
+            if (strcmp(before->string, child->string) == 0) {
+                return fault_set(reader->fault, FAULT_INPUT, "%s: the key \"%.60s\"%s%s stands there twice; keep one",
+                    reader->name, child->string, *path ? " in " : "", path);
+            }
+        }
+    }
+    return true;
+}
+
+static const cJSON *member(const cJSON *object, const char *key) {
+    return cJSON_GetObjectItemCaseSensitive(object, key);
+}
+
+static bool read_text(struct reader *reader, const cJSON *object, const char *path, const char *key, bool required,
+    const char **value) {
+    const cJSON *item = member(object, key);
+    if (!item) {
+        return required ? wrong(reader, join(reader, path, key), "is missing; a plan needs it") : true;
+    }
+    if (!cJSON_IsString(item) || (required && !*item->valuestring)) {
+        return wrong(reader, join(reader, path, key), "must be a text in quotes that is not empty");
+    }
+    *value = arena_text(&reader->plan->arena, item->valuestring);
+    return true;
+}
+
+static bool read_number(struct reader *reader, const cJSON *object, const char *path, const char *key, double *value) {
+    const cJSON *item = member(object, key);
+    if (item && (!cJSON_IsNumber(item) || !isfinite(item->valuedouble))) {
+        return wrong(reader, join(reader, path, key), "must be a number");
+    }
+    if (item) {
+        *value = item->valuedouble;
+    }
+    return true;
+}
+
+static bool read_range(struct reader *reader, const cJSON *object, const char *path, const char *key, struct range *range) {
+    const cJSON *item = member(object, key);
+    if (!item) {
+        return true;
+    }
+    const cJSON *low = cJSON_GetArrayItem(item, 0), *high = cJSON_GetArrayItem(item, 1);
+    if (!cJSON_IsArray(item) || cJSON_GetArraySize(item) != 2 || !cJSON_IsNumber(low) || !cJSON_IsNumber(high) ||
+        !(low->valuedouble < high->valuedouble)) {
+        return wrong(reader, join(reader, path, key), "must be two numbers, the lower first, such as [70, 260]");
+    }
+    *range = (struct range){true, low->valuedouble, high->valuedouble};
+    return true;
+}
+
+static bool read_texts(struct reader *reader, const cJSON *object, const char *path, const char *key, struct texts *texts) {
+    const cJSON *list = member(object, key);
+    if (!list) {
+        return true;
+    }
+    if (!cJSON_IsArray(list)) {
+        return wrong(reader, join(reader, path, key), "must be a list of texts, such as [\"999\"]");
+    }
+    texts->item = ARENA_NEW(&reader->plan->arena, cJSON_GetArraySize(list), const char *);
+    for (const cJSON *item = list->child; item; item = item->next) {
+        if (!cJSON_IsString(item)) {
+            return wrong(reader, join(reader, path, key), "must hold texts in quotes only, such as [\"999\"]");
+        }
+        texts->item[texts->count++] = arena_text(&reader->plan->arena, item->valuestring);
+    }
+    return true;
+}
+
+/* An own list of codes, or else the plan's. */
+static bool read_codes(struct reader *reader, const cJSON *object, const char *path, const struct texts **codes) {
+    *codes = &reader->plan->missing_codes;
+    if (!member(object, "missing_codes")) {
+        return true;
+    }
+    struct texts *own = ARENA_NEW(&reader->plan->arena, 1, struct texts);
+    *codes = own;
+    return read_texts(reader, object, path, "missing_codes", own);
+}
+
+static bool read_flag(struct reader *reader, const cJSON *object, const char *path, const char *key, bool *flag) {
+    const cJSON *item = member(object, key);
+    if (item && !cJSON_IsBool(item)) {
+        return wrong(reader, join(reader, path, key), "must be true or false");
+    }
+    *flag = item && cJSON_IsTrue(item);
+    return true;
+}
+
+/* One of two words. second is set where the second stands. */
+static bool read_choice(struct reader *reader, const cJSON *object, const char *path, const char *key, const char *first,
+    const char *other, bool *second) {
+    const char *word = NULL;
+    if (!read_text(reader, object, path, key, false, &word)) {
+        return false;
+    }
+    if (word && strcmp(word, first) != 0 && strcmp(word, other) != 0) {
+        return wrong(reader, join(reader, path, key),
+            arena_format(&reader->plan->arena, "must be \"%s\" or \"%s\"", first, other));
+    }
+    *second = word && strcmp(word, other) == 0;
+    return true;
+}
+
+/* ---- the parts of a plan ---- */
+
+static bool read_arms(struct reader *reader, const cJSON *root) {
+    struct plan *plan = reader->plan;
+    const cJSON *arm = member(root, "arm");
+    if (!arm) {
+        return true;
+    }
+    if (!keys_known(reader, arm, "arm", "column levels") ||
+        !read_text(reader, arm, "arm", "column", true, &plan->arm_column)) {
+        return false;
+    }
+    const cJSON *levels = member(arm, "levels");
+    if (!cJSON_IsArray(levels) || cJSON_GetArraySize(levels) < 2) {
+        return wrong(reader, "arm.levels", "must list two or more arms, each with its code and label");
+    }
+    plan->arms = ARENA_NEW(&plan->arena, cJSON_GetArraySize(levels), struct arm_level);
+    size_t references = 0;
+    for (const cJSON *item = levels->child; item; item = item->next) {
+        const char *path = at_index(reader, "arm.levels", plan->arm_count);
+        struct arm_level *level = &plan->arms[plan->arm_count];
+        level->ratio = 1;
+        if (!keys_known(reader, item, path, "code label reference ratio") ||
+            !read_text(reader, item, path, "code", true, &level->code) ||
+            !read_text(reader, item, path, "label", false, &level->label) ||
+            !read_flag(reader, item, path, "reference", &level->reference) ||
+            !read_number(reader, item, path, "ratio", &level->ratio)) {
+            return false;
+        }
+        if (!(level->ratio > 0)) {
+            return wrong(reader, join(reader, path, "ratio"), "must be a number above 0");
+        }
+        level->label = level->label ? level->label : level->code;
+        for (size_t i = 0; i < plan->arm_count; i++) {
+            if (strcmp(plan->arms[i].code, level->code) == 0) {
+                return wrong(reader, path, "has the code of an arm before it; each arm needs its own");
+            }
+        }
+        if (level->reference) {
+            plan->reference = plan->arm_count;
+            references++;
+        }
+        plan->arm_count++;
+    }
+    if (plan->arm_count > 26) {
+        return wrong(reader, "arm.levels", "has more than 26 arms, more than there are letters to code them");
+    }
+    return references == 1 ||
+           wrong(reader, "arm.levels", "must mark exactly one arm as the reference, with \"reference\": true");
+}
+
+static bool read_visits(struct reader *reader, const cJSON *item, const char *path, struct outcome *outcome) {
+    const cJSON *visits = member(item, "visits");
+    const char *where = join(reader, path, "visits");
+    if (!cJSON_IsArray(visits) || !visits->child) {
+        return wrong(reader, where, "must list at least one visit with its label and column, the baseline first");
+    }
+    outcome->visits = ARENA_NEW(&reader->plan->arena, cJSON_GetArraySize(visits), struct visit);
+    for (const cJSON *child = visits->child; child; child = child->next) {
+        struct visit *visit = &outcome->visits[outcome->visit_count];
+        const char *place = at_index(reader, where, outcome->visit_count);
+        if (!keys_known(reader, child, place, "label column") ||
+            !read_text(reader, child, place, "label", true, &visit->label) ||
+            !read_text(reader, child, place, "column", true, &visit->column)) {
+            return false;
+        }
+        for (size_t i = 0; i < outcome->visit_count; i++) {
+            if (strcmp(outcome->visits[i].label, visit->label) == 0 ||
+                strcmp(outcome->visits[i].column, visit->column) == 0) {
+                return wrong(reader, place, "repeats the label or column of a visit before it");
+            }
+        }
+        outcome->visit_count++;
+    }
+    const char *primary = NULL;
+    if (!read_text(reader, item, path, "primary_visit", false, &primary)) {
+        return false;
+    }
+    outcome->primary_visit = outcome->visit_count - 1;
+    if (!primary) {
+        return true;
+    }
+    for (size_t i = 0; i < outcome->visit_count; i++) {
+        if (strcmp(outcome->visits[i].label, primary) == 0) {
+            outcome->primary_visit = i;
+            return i > 0 || outcome->visit_count == 1 ||
+                   wrong(reader, join(reader, path, "primary_visit"), "is the baseline; name a follow-up");
+        }
+    }
+    return wrong(reader, join(reader, path, "primary_visit"), "is not the label of one of its visits");
+}
+
+static bool read_estimand(struct reader *reader, const cJSON *item, const char *path, struct outcome *outcome) {
+    const cJSON *estimand = member(item, "estimand");
+    const char *where = join(reader, path, "estimand");
+    return !estimand ||
+           (keys_known(reader, estimand, where, "population event_strategy summary") &&
+               read_text(reader, estimand, where, "population", false, &outcome->population) &&
+               read_text(reader, estimand, where, "event_strategy", false, &outcome->event_strategy) &&
+               read_text(reader, estimand, where, "summary", false, &outcome->summary));
+}
+
+static bool id_is_new(struct reader *reader, const char *path, const char *id) {
+    const struct plan *plan = reader->plan;
+    if (strpbrk(id, ",=&")) {
+        return wrong(reader, join(reader, path, "id"), "must not hold a comma, = or &");
+    }
+    return (plan_outcome(plan, id) == NOWHERE && plan_covariate(plan, id) == NOWHERE && plan_event(plan, id) == NOWHERE) ||
+           fault_set(reader->fault, FAULT_INPUT, "%s: the id \"%.60s\" is given twice; outcomes, covariates and events each need their own",
+               reader->name, id);
+}
+
+static bool read_outcome(struct reader *reader, const cJSON *item, const char *path) {
+    struct plan *plan = reader->plan;
+    struct outcome *outcome = &plan->outcomes[plan->outcome_count];
+    *outcome = (struct outcome){.unit = "", .important_difference = NAN, .responder_threshold = NAN};
+    bool secondary = false, higher = false, log10_scale = false;
+    struct texts unused = {0};
+    if (!keys_known(reader, item, path,
+            "id label unit role better scale plausible important_difference visits primary_visit missing_codes limit "
+            "responder_threshold auxiliary estimand") ||
+        !read_text(reader, item, path, "id", true, &outcome->id) || !id_is_new(reader, path, outcome->id) ||
+        !read_text(reader, item, path, "label", false, &outcome->label) ||
+        !read_text(reader, item, path, "unit", false, &outcome->unit) ||
+        !read_choice(reader, item, path, "role", "primary", "secondary", &secondary) ||
+        !read_choice(reader, item, path, "better", "lower", "higher", &higher) ||
+        !read_choice(reader, item, path, "scale", "linear", "log10", &log10_scale) ||
+        !read_range(reader, item, path, "plausible", &outcome->plausible) ||
+        !read_number(reader, item, path, "important_difference", &outcome->important_difference) ||
+        !read_number(reader, item, path, "responder_threshold", &outcome->responder_threshold) ||
+        !read_texts(reader, item, path, "auxiliary", &unused) || !read_visits(reader, item, path, outcome) ||
+        !read_estimand(reader, item, path, outcome) || !read_codes(reader, item, path, &outcome->missing_codes)) {
+        return false;
+    }
+    if (member(item, "limit") && !keys_known(reader, member(item, "limit"), join(reader, path, "limit"), "lower upper rule")) {
+        return false;
+    }
+    if (!member(item, "role") || !member(item, "better")) {
+        return wrong(reader, path, "must say its role (primary or secondary) and which way is better (lower or higher)");
+    }
+    outcome->label = outcome->label ? outcome->label : outcome->id;
+    outcome->primary = !secondary;
+    outcome->lower_is_better = !higher;
+    outcome->scale = log10_scale ? SCALE_LOG10 : SCALE_LINEAR;
+    plan->outcome_count++;
+    return true;
+}
+
+static bool read_levels(struct reader *reader, const cJSON *item, const char *path, struct covariate *covariate) {
+    const cJSON *levels = member(item, "levels");
+    if (!levels) {
+        return true;
+    }
+    const char *where = join(reader, path, "levels");
+    if (!cJSON_IsArray(levels)) {
+        return wrong(reader, where, "must be a list of levels, each with its code and label");
+    }
+    covariate->levels = ARENA_NEW(&reader->plan->arena, cJSON_GetArraySize(levels), struct level);
+    for (const cJSON *child = levels->child; child; child = child->next) {
+        struct level *level = &covariate->levels[covariate->level_count];
+        const char *place = at_index(reader, where, covariate->level_count);
+        if (!keys_known(reader, child, place, "code label") || !read_text(reader, child, place, "code", true, &level->code) ||
+            !read_text(reader, child, place, "label", false, &level->label)) {
+            return false;
+        }
+        level->label = level->label ? level->label : level->code;
+        for (size_t i = 0; i < covariate->level_count; i++) {
+            if (strcmp(covariate->levels[i].code, level->code) == 0) {
+                return wrong(reader, place, "has the code of a level before it; each level needs its own");
+            }
+        }
+        covariate->level_count++;
+    }
+    return true;
+}
+
+static bool read_bands(struct reader *reader, const cJSON *item, const char *path, struct covariate *covariate) {
+    const cJSON *bands = member(item, "bands");
+    if (!bands) {
+        return true;
+    }
+    const char *where = join(reader, path, "bands");
+    if (!cJSON_IsArray(bands)) {
+        return wrong(reader, where, "must be a list of increasing cut points, such as [55, 65]");
+    }
+    covariate->bands = ARENA_NEW(&reader->plan->arena, cJSON_GetArraySize(bands), double);
+    for (const cJSON *child = bands->child; child; child = child->next) {
+        if (!cJSON_IsNumber(child) ||
+            (covariate->band_count && child->valuedouble <= covariate->bands[covariate->band_count - 1])) {
+            return wrong(reader, where, "must be a list of increasing cut points, such as [55, 65]");
+        }
+        covariate->bands[covariate->band_count++] = child->valuedouble;
+    }
+    return true;
+}
+
+static bool read_covariate(struct reader *reader, const cJSON *item, const char *path) {
+    struct plan *plan = reader->plan;
+    struct covariate *covariate = &plan->covariates[plan->covariate_count];
+    *covariate = (struct covariate){.unit = ""};
+    if (!keys_known(reader, item, path, "id label column kind levels unit eligible plausible bands missing_codes") ||
+        !read_text(reader, item, path, "id", true, &covariate->id) || !id_is_new(reader, path, covariate->id) ||
+        !read_text(reader, item, path, "label", false, &covariate->label) ||
+        !read_text(reader, item, path, "column", true, &covariate->column) ||
+        !read_text(reader, item, path, "unit", false, &covariate->unit) ||
+        !read_choice(reader, item, path, "kind", "category", "number", &covariate->number) ||
+        !read_levels(reader, item, path, covariate) || !read_range(reader, item, path, "eligible", &covariate->eligible) ||
+        !read_range(reader, item, path, "plausible", &covariate->plausible) || !read_bands(reader, item, path, covariate) ||
+        !read_codes(reader, item, path, &covariate->missing_codes)) {
+        return false;
+    }
+    if (!member(item, "kind")) {
+        return wrong(reader, join(reader, path, "kind"), "is missing; say \"number\" or \"category\"");
+    }
+    if (covariate->number && covariate->level_count) {
+        return wrong(reader, join(reader, path, "levels"), "belong to a category, and this is a number; use bands for cut points");
+    }
+    if (!covariate->number && (covariate->band_count || covariate->eligible.given || covariate->plausible.given)) {
+        return wrong(reader, path, "is a category; bands, eligible and plausible belong to numbers");
+    }
+    covariate->label = covariate->label ? covariate->label : covariate->id;
+    plan->covariate_count++;
+    return true;
+}
+
+static bool read_event(struct reader *reader, const cJSON *item, const char *path) {
+    static const char *const kinds[] = {"stopped-treatment", "rescue", "withdrew", "died"};
+    struct plan *plan = reader->plan;
+    struct event *event = &plan->events[plan->event_count];
+    if (!keys_known(reader, item, path, "id label column yes no date reason kind") ||
+        !read_text(reader, item, path, "id", true, &event->id) || !id_is_new(reader, path, event->id) ||
+        !read_text(reader, item, path, "label", false, &event->label) ||
+        !read_text(reader, item, path, "column", true, &event->column) ||
+        !read_texts(reader, item, path, "yes", &event->yes) || !read_texts(reader, item, path, "no", &event->no) ||
+        !read_text(reader, item, path, "date", false, &event->date) ||
+        !read_text(reader, item, path, "reason", false, &event->reason) ||
+        !read_text(reader, item, path, "kind", false, &event->kind)) {
+        return false;
+    }
+    if (!event->yes.count || !event->no.count) {
+        return wrong(reader, path, "must list the codes that mean yes and those that mean no");
+    }
+    for (size_t i = 0; i < event->yes.count; i++) {
+        for (size_t j = 0; j < event->no.count; j++) {
+            if (strcmp(event->yes.item[i], event->no.item[j]) == 0) {
+                return wrong(reader, path, "has a code that means yes and no at once");
+            }
+        }
+    }
+    bool known = !event->kind;
+    for (size_t i = 0; i < sizeof kinds / sizeof *kinds && !known; i++) {
+        known = strcmp(event->kind, kinds[i]) == 0;
+    }
+    event->label = event->label ? event->label : event->id;
+    plan->event_count++;
+    return known || wrong(reader, join(reader, path, "kind"), "must be stopped-treatment, rescue, withdrew or died");
+}
+
+static bool read_list(struct reader *reader, const cJSON *root, const char *key, void **memory, size_t size,
+    bool (*read)(struct reader *, const cJSON *, const char *)) {
+    const cJSON *list = member(root, key);
+    if (!list) {
+        return true;
+    }
+    if (!cJSON_IsArray(list)) {
+        return wrong(reader, key, "must be a list in square brackets");
+    }
+    *memory = arena_new(&reader->plan->arena, (size_t)cJSON_GetArraySize(list), size);
+    size_t index = 0;
+    for (const cJSON *item = list->child; item; item = item->next) {
+        if (!read(reader, item, at_index(reader, key, index++))) {
+            return false;
+        }
+    }
+    return true;
+}
+
+/* A list of covariates' ids as indices. */
+static bool read_ids(struct reader *reader, const cJSON *root, const char *key, int **ids, size_t *count) {
+    struct texts texts = {0};
+    if (!read_texts(reader, root, "", key, &texts)) {
+        return false;
+    }
+    *ids = ARENA_NEW(&reader->plan->arena, texts.count, int);
+    for (size_t i = 0; i < texts.count; i++) {
+        int index = plan_covariate(reader->plan, texts.item[i]);
+        for (size_t j = 0; j < *count; j++) {
+            if ((*ids)[j] == index && index != NOWHERE) {
+                return fault_set(reader->fault, FAULT_INPUT, "%s: %s names \"%.60s\" twice", reader->name, key, texts.item[i]);
+            }
+        }
+        if (index == NOWHERE) {
+            return fault_set(reader->fault, FAULT_INPUT, "%s: %s names \"%.60s\", which is not the id of a covariate of this plan",
+                reader->name, key, texts.item[i]);
+        }
+        (*ids)[(*count)++] = index;
+    }
+    return true;
+}
+
+static bool settle_primary(struct reader *reader) {
+    struct plan *plan = reader->plan;
+    size_t primaries = 0;
+    for (size_t i = 0; i < plan->outcome_count; i++) {
+        if (plan->outcomes[i].primary) {
+            plan->primary = i;
+            primaries++;
+        }
+    }
+    return primaries == 1 || wrong(reader, "outcomes", "must have exactly one with \"role\": \"primary\"");
+}
+
+/* Adds the column to the variables, or finds it there; a column has one kind. */
+static bool place_variable(struct reader *reader, const struct variable *wanted, int *index) {
+    struct plan *plan = reader->plan;
+    if (strcmp(wanted->column, plan->participant) == 0 ||
+        (plan->arm_column && strcmp(wanted->column, plan->arm_column) == 0)) {
+        return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is both %s and %s; a column has one meaning",
+            reader->name, wanted->column, wanted->label,
+            strcmp(wanted->column, plan->participant) == 0 ? "the participant's identifier" : "the arm");
+    }
+    *index = plan_variable(plan, wanted->column);
+    if (*index == NOWHERE) {
+        *index = (int)plan->variable_count;
+        plan->variables[plan->variable_count++] = *wanted;
+        return true;
+    }
+    struct variable *there = &plan->variables[*index];
+    if (there->kind != wanted->kind) {
+        return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is used as two different kinds, for %s and for %s",
+            reader->name, wanted->column, there->label, wanted->label);
+    }
+    if (wanted->outcome != NOWHERE && there->outcome == NOWHERE) {
+        there->outcome = wanted->outcome;
+        there->visit = wanted->visit;
+        there->plausible = there->plausible.given ? there->plausible : wanted->plausible;
+    } else if (wanted->outcome != NOWHERE) {
+        return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is a visit of two outcomes, %s and %s",
+            reader->name, wanted->column, there->label, wanted->label);
+    }
+    return true;
+}
+
+static bool settle_variables(struct reader *reader) {
+    static const struct variable none = {.outcome = NOWHERE, .visit = NOWHERE, .covariate = NOWHERE, .event = NOWHERE};
+    static const struct texts no_codes = {0};
+    struct plan *plan = reader->plan;
+    size_t room = plan->covariate_count + plan->event_count;
+    for (size_t i = 0; i < plan->outcome_count; i++) {
+        room += plan->outcomes[i].visit_count;
+    }
+    plan->variables = ARENA_NEW(&plan->arena, room, struct variable);
+    for (size_t i = 0; i < plan->covariate_count; i++) {
+        struct covariate *covariate = &plan->covariates[i];
+        struct variable variable = none;
+        variable.column = covariate->column;
+        variable.label = covariate->label;
+        variable.unit = covariate->unit;
+        variable.kind = covariate->number ? VARIABLE_NUMBER : VARIABLE_CATEGORY;
+        variable.covariate = (int)i;
+        variable.plausible = covariate->plausible;
+        variable.eligible = covariate->eligible;
+        variable.missing_codes = covariate->missing_codes;
+        if (!place_variable(reader, &variable, &covariate->variable)) {
+            return false;
+        }
+    }
+    for (size_t i = 0; i < plan->outcome_count; i++) {
+        struct outcome *outcome = &plan->outcomes[i];
+        for (size_t v = 0; v < outcome->visit_count; v++) {
+            struct variable variable = none;
+            variable.column = outcome->visits[v].column;
+            variable.label = outcome->visit_count == 1 ? outcome->label :
+                arena_format(&plan->arena, "%s, %s", outcome->label, outcome->visits[v].label);
+            variable.unit = outcome->unit;
+            variable.kind = VARIABLE_NUMBER;
+            variable.outcome = (int)i;
+            variable.visit = (int)v;
+            variable.plausible = outcome->plausible;
+            variable.missing_codes = outcome->missing_codes;
+            if (!place_variable(reader, &variable, &outcome->visits[v].variable)) {
+                return false;
+            }
+        }
+    }
+    for (size_t i = 0; i < plan->event_count; i++) {
+        struct event *event = &plan->events[i];
+        struct variable variable = none;
+        variable.column = event->column;
+        variable.label = event->label;
+        variable.unit = "";
+        variable.kind = VARIABLE_EVENT;
+        variable.event = (int)i;
+        variable.missing_codes = &no_codes;
+        if (!place_variable(reader, &variable, &event->variable)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+static bool settle_standard_error(struct reader *reader, const cJSON *root) {
+    struct plan *plan = reader->plan;
+    if (!read_choice(reader, root, "", "standard_error", "classical", "robust", &plan->robust)) {
+        return false;
+    }
+    bool unequal = false;
+    for (size_t i = 1; i < plan->arm_count; i++) {
+        unequal = unequal || plan->arms[i].ratio > plan->arms[0].ratio || plan->arms[i].ratio < plan->arms[0].ratio;
+    }
+    plan->robust_because = plan->robust ? "the plan asks for it" :
+        unequal                         ? "the planned allocation is unequal" :
+        plan->arm_count > 2             ? "there are more than two arms" :
+                                          NULL;
+    plan->robust = plan->robust_because != NULL;
+    return true;
+}
+
+static bool settle_settings(struct reader *reader, const cJSON *root) {
+    struct plan *plan = reader->plan;
+    double seed = 1;
+    const char *blinding = NULL;
+    plan->confidence = 0.95;
+    if (!read_number(reader, root, "", "confidence", &plan->confidence) || !read_number(reader, root, "", "seed", &seed) ||
+        !read_text(reader, root, "", "blinding", false, &blinding) ||
+        !read_choice(reader, root, "", "missing_baseline", "mean", "drop", &plan->drop_missing_baseline)) {
+        return false;
+    }
+    if (!(plan->confidence >= 0.5 && plan->confidence < 1)) {
+        return wrong(reader, "confidence", "must be at least 0.5 and below 1, such as 0.95");
+    }
+    if (!(seed >= 0 && seed <= 9007199254740992.0) || floor(seed) < seed) {
+        return wrong(reader, "seed", "must be a whole number from 0");
+    }
+    plan->seed = (uint64_t)seed;
+    if (blinding && !blinding_read(blinding, &plan->blinding)) {
+        return wrong(reader, "blinding", "must be \"pooled\", \"coded\" or \"unblinded\"");
+    }
+    if (plan->blinding != BLINDING_POOLED && !plan->arm_column) {
+        return wrong(reader, "blinding", "must be \"pooled\" while the plan has no arm");
+    }
+    const cJSON *site = member(root, "site");
+    return !site || (keys_known(reader, site, "site", "column") &&
+                        read_text(reader, site, "site", "column", true, &plan->site_column));
+}
+
+static bool refuse_later_keys(struct reader *reader, const cJSON *root) {
+    static const char *const later[] = {"dates", "derived", "screening", "files"};
+    for (size_t i = 0; i < sizeof later / sizeof *later; i++) {
+        if (member(root, later[i])) {
+            return fault_set(reader->fault, FAULT_INPUT,
+                "%s: this version of Evenhand does not take \"%s\" yet; leave the key out", reader->name, later[i]);
+        }
+    }
+    return true;
+}
+
+static bool read_plan(struct reader *reader, const cJSON *root) {
+    struct plan *plan = reader->plan;
+    if (!refuse_later_keys(reader, root) ||
+        !keys_known(reader, root, "",
+            "title participant arm missing_codes outcomes covariates events adjust_for missing_baseline subgroups confidence "
+            "blinding seed site stratified_by standard_error") ||
+        !read_text(reader, root, "", "title", true, &plan->title) ||
+        !read_text(reader, root, "", "participant", true, &plan->participant) || !read_arms(reader, root) ||
+        !read_texts(reader, root, "", "missing_codes", &plan->missing_codes) ||
+        !read_list(reader, root, "outcomes", (void **)&plan->outcomes, sizeof *plan->outcomes, read_outcome) ||
+        !read_list(reader, root, "covariates", (void **)&plan->covariates, sizeof *plan->covariates, read_covariate) ||
+        !read_list(reader, root, "events", (void **)&plan->events, sizeof *plan->events, read_event) ||
+        !settle_primary(reader) || !read_ids(reader, root, "adjust_for", &plan->adjust_for, &plan->adjust_count) ||
+        !read_ids(reader, root, "subgroups", &plan->subgroups, &plan->subgroup_count) ||
+        !read_ids(reader, root, "stratified_by", &plan->stratified_by, &plan->stratified_count)) {
+        return false;
+    }
+    if (plan->arm_column && strcmp(plan->arm_column, plan->participant) == 0) {
+        return wrong(reader, "arm.column", "is the participant's column; a column has one meaning");
+    }
+    return settle_variables(reader) && settle_settings(reader, root) && settle_standard_error(reader, root);
+}
+
+/* Where in the text JSON stopped being JSON: 1-based line and column. */
+static bool not_json(const char *json, const char *end, const char *name, struct fault *fault) {
+    size_t line = 1, column = 1;
+    for (const char *p = json; p < end; p++) {
+        column = *p == '\n' ? 1 : column + 1;
+        line += *p == '\n';
+    }
+    return fault_at(fault, FAULT_INPUT, line, column,
+        "%s, line %zu, column %zu: this is not JSON from here on; mend the text (a comma, a quote or a bracket?) and try again", name,
+        line, column);
+}
+
+bool plan_read(struct plan *plan, const char *json, size_t length, const char *name, struct fault *fault) {
+    *plan = (struct plan){0};
+    arena_init(&plan->arena);
+    if (length >= 3 && memcmp(json, "\xEF\xBB\xBF", 3) == 0) {
+        json += 3;
+        length -= 3;
+    }
+    /* cJSON stops at a NUL byte; a copy that ends with one is what it needs. */
+    const char *copy = arena_bytes(&plan->arena, json, length), *end = copy;
+    struct reader reader = {plan, name, fault};
+    cJSON *root = cJSON_ParseWithOpts(copy, &end, 1);
+    bool done = root && strlen(copy) == length ? read_plan(&reader, root) : not_json(copy, end ? end : copy, name, fault);
+    cJSON_Delete(root);
+    if (!done) {
+        plan_release(plan);
+    }
+    return done;
+}
+
+void plan_release(struct plan *plan) {
+    arena_release(&plan->arena);
+    *plan = (struct plan){0};
+}
+
+int plan_outcome(const struct plan *plan, const char *id) {
+    for (size_t i = 0; i < plan->outcome_count; i++) {
+        if (strcmp(plan->outcomes[i].id, id) == 0) {
+            return (int)i;
+        }
+    }
+    return NOWHERE;
+}
+
+int plan_covariate(const struct plan *plan, const char *id) {
+    for (size_t i = 0; i < plan->covariate_count; i++) {
+        if (strcmp(plan->covariates[i].id, id) == 0) {
+            return (int)i;
+        }
+    }
+    return NOWHERE;
+}
+
+int plan_event(const struct plan *plan, const char *id) {
+    for (size_t i = 0; i < plan->event_count; i++) {
+        if (strcmp(plan->events[i].id, id) == 0) {
+            return (int)i;
+        }
+    }
+    return NOWHERE;
+}
+
+int plan_variable(const struct plan *plan, const char *column) {
+    for (size_t i = 0; i < plan->variable_count; i++) {
+        if (strcmp(plan->variables[i].column, column) == 0) {
+            return (int)i;
+        }
+    }
+    return NOWHERE;
+}
+
+static const char *const scale_names[] = {"linear", "log10"};
+static const char *const blinding_names[] = {"pooled", "coded", "unblinded"};
+
+const char *scale_name(enum scale scale) {
+    return scale_names[scale];
+}
+
+bool scale_read(const char *name, enum scale *scale) {
+    *scale = strcmp(name, "log10") == 0 ? SCALE_LOG10 : SCALE_LINEAR;
+    return strcmp(name, scale_names[*scale]) == 0;
+}
+
+const char *blinding_name(enum blinding blinding) {
+    return blinding_names[blinding];
+}
+
+bool blinding_read(const char *name, enum blinding *blinding) {
+    for (int i = 0; i < 3; i++) {
+        if (strcmp(name, blinding_names[i]) == 0) {
+            *blinding = (enum blinding)i;
+            return true;
+        }
+    }
+    return false;
+}
+
+size_t band_of(const double *bands, size_t count, double value) {
+    size_t band = 0;
+    while (band < count && value >= bands[band]) {
+        band++;
+    }
+    return band;
+}
+
+const char *band_words(struct arena *arena, const double *bands, size_t count, size_t band) {
+    if (count == 0) {
+        return "all";
+    }
+    return band == 0     ? arena_format(arena, "below %.15g", bands[0]) :
+           band == count ? arena_format(arena, "%.15g and above", bands[count - 1]) :
+                           arena_format(arena, "%.15g to below %.15g", bands[band - 1], bands[band]);
+}
