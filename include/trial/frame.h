@@ -56,7 +56,7 @@ struct frame {
     uint32_t version;
     const struct plan *plan;     /* borrowed from the study, as are cells, letters and data_sha256 */
     const struct cells *cells;
-    const struct decision *decisions; /* [version], a copy of the list; texts are borrowed */
+    struct decision *decisions;  /* [version], a copy of the list; texts are borrowed */
     const bool *stands;          /* [version] which decisions stand */
     struct participant *participants;
     size_t participant_count;
@@ -73,11 +73,12 @@ struct frame {
     char state_sha256[HASH_SIZE];
 };
 
-/* Builds the frame after `count` decisions; `previous` (may be NULL) lends columns that nothing has touched. Decisions beyond
- * previous->version are checked on the way: a `from` that is not the current text, an unknown column or participant, a
- * lock ... are refused, with the position among the new ones in fault.row. Without `previous` nothing is checked. */
+/* Builds the frame after `count` decisions; `previous` (may be NULL) lends columns that nothing has touched. With `check`
+ * (which needs previous) decisions beyond previous->version are held against the data on the way: a `from` that is not the
+ * current text, an unknown column or participant, a lock ... are refused, the position among the new ones in fault.row.
+ * Texts of decisions, plan, cells and letters are borrowed and must outlive the frame. */
 struct frame *frame_build(const struct plan *plan, const struct cells *cells, const char *data_sha256,
-    const unsigned char *letters, const struct decision *decisions, size_t count, struct frame *previous,
+    const unsigned char *letters, const struct decision *decisions, size_t count, struct frame *previous, bool check,
     struct fault *fault);
 struct frame *frame_retain(struct frame *frame);
 void frame_release(struct frame *frame); /* NULL is fine */

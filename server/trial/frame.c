@@ -31,7 +31,8 @@ const char *cell_state_words(enum cell_state state) {
 /* What a frame is built from, and what is known on the way. */
 struct build {
     struct frame *frame;
-    const struct frame *previous; /* NULL: nothing is checked and nothing shared */
+    const struct frame *previous; /* NULL: nothing is shared */
+    bool check;                   /* hold decisions beyond previous->version against the data */
     size_t count;                 /* decisions */
     bool *stands;
     struct fault *fault;
@@ -40,7 +41,7 @@ struct build {
 /* ---- refusing a new decision ---- */
 
 static bool is_new(const struct build *build, size_t i) {
-    return build->previous && i >= build->previous->version;
+    return build->check && i >= build->previous->version;
 }
 
 static bool refuse(struct build *build, size_t i, const char *what) {
@@ -209,21 +210,37 @@ static size_t count_text(const struct build *build, const struct column *column,
     return count;
 }
 
+/* An identifier's own correction is addressed by the identifier as it reads at that point of the record. */
+static size_t record_of_identifier(const struct column *column, size_t records, const char *id, const char **why) {
+    size_t found = NO_RECORD;
+    for (size_t r = 0; r < records; r++) {
+        if (same_text(column->text[r], id) && found != NO_RECORD) {
+            *why = "is about an identifier that several records bear; say which one with \"row\"";
+            return NO_RECORD;
+        }
+        found = same_text(column->text[r], id) ? r : found;
+    }
+    *why = "names a participant who is not in the file";
+    return found;
+}
+
 /* The record a decision on one cell is about: its row, or the participant's record in force. NO_RECORD where unclear. */
-static size_t record_meant(const struct build *build, const struct decision *decision, const char **why) {
+static size_t record_meant(
+    const struct build *build, const struct decision *decision, const struct column *column, const char **why) {
     const struct frame *frame = build->frame;
-    int who = frame->participant_count ? frame_participant(frame, decision->participant) : NOWHERE;
-    if (who == NOWHERE) {
-        *why = "names a participant who is not in the file";
-        return NO_RECORD;
-    }
+    const struct column *identifier = column->kind == VARIABLE_PARTICIPANT ? column : frame->identifier;
     if (decision->row) {
-        const char *there = decision->row <= frame->cells->records ? frame->identifier->text[decision->row - 1] : NULL;
+        size_t record = decision->row - 1;
         *why = "names a row that is not one of the participant's records";
-        return there && strcmp(there, decision->participant) == 0 ? decision->row - 1 : NO_RECORD;
+        return record < frame->cells->records && same_text(identifier->text[record], decision->participant) ? record : NO_RECORD;
     }
-    *why = "is about a participant with several records; say which one with \"row\", or keep one first";
-    return frame->participants[who].record;
+    if (column->kind == VARIABLE_PARTICIPANT) {
+        return record_of_identifier(column, frame->cells->records, decision->participant, why);
+    }
+    int who = frame_participant(frame, decision->participant);
+    *why = who == NOWHERE ? "names a participant who is not in the file" :
+                            "is about a participant with several records; say which one with \"row\", or keep one first";
+    return who == NOWHERE ? NO_RECORD : frame->participants[who].record;
 }
 
 static bool from_differs(struct build *build, size_t i, const struct column *column, const char *now) {
@@ -239,7 +256,7 @@ static bool from_differs(struct build *build, size_t i, const struct column *col
 static bool apply_to_cell(struct build *build, size_t i, struct column *column) {
     const struct decision *decision = &build->frame->decisions[i];
     const char *why = NULL;
-    size_t record = record_meant(build, decision, &why);
+    size_t record = record_meant(build, decision, column, &why);
     if (record == NO_RECORD) {
         return !is_new(build, i) || refuse(build, i, why);
     }
@@ -447,8 +464,8 @@ static void hash_column(const struct frame *frame, struct column *column) {
     hash_init(&hash);
     for (size_t p = 0; p < frame->participant_count; p++) {
         hash_bytes(&hash, &column->state[p], 1);
-        double number = column->number ? column->number[p] : NAN;
-        double limit = column->limit ? column->limit[p] : NAN;
+        double number = column->number ? column->number[p] : (double)NAN;
+        double limit = column->limit ? column->limit[p] : (double)NAN;
         if (!isnan(number) || !isnan(limit)) {
             double value = (isnan(number) ? limit : number) + 0.0; /* −0 becomes 0 */
             hash_bytes(&hash, &value, sizeof value);
@@ -523,17 +540,7 @@ static bool build_identifier(struct build *build) {
         return true;
     }
     frame->identifier = column_new(frame, name, VARIABLE_PARTICIPANT);
-    /* Its own corrections are addressed by the identifiers as they stood before them. */
-    if (build->previous) {
-        frame->participants = build->previous->participants;
-        frame->participant_count = build->previous->participant_count;
-    } else {
-        build_roster(build);
-    }
-    bool done = replay(build, frame->identifier, name);
-    frame->participants = NULL;
-    frame->participant_count = frame->held_aside = 0;
-    return done;
+    return replay(build, frame->identifier, name);
 }
 
 static bool build_participants(struct build *build) {
@@ -738,7 +745,7 @@ static void hash_state(struct frame *frame) {
 }
 
 struct frame *frame_build(const struct plan *plan, const struct cells *cells, const char *data_sha256,
-    const unsigned char *letters, const struct decision *decisions, size_t count, struct frame *previous,
+    const unsigned char *letters, const struct decision *decisions, size_t count, struct frame *previous, bool check,
     struct fault *fault) {
     struct frame *frame = memory_new(1, sizeof *frame);
     atomic_init(&frame->references, 1);
@@ -757,7 +764,7 @@ struct frame *frame_build(const struct plan *plan, const struct cells *cells, co
     record_standing(copy, count, stands);
     frame->decisions = copy;
     frame->stands = stands;
-    struct build build = {frame, previous, count, stands, fault};
+    struct build build = {frame, previous, check && previous, count, stands, fault};
     if (!new_ones_fit(&build) || !build_identifier(&build) || !build_participants(&build) || !build_columns(&build) ||
         !build_settings(&build)) {
         frame_release(frame);

@@ -1,0 +1,682 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "trial/checks.h"
+#include "base/map.h"
+#include "base/text.h"
+#include "draw/json.h"
+#include "intake/number.h"
+#include "trial/arms.h"
+#include <math.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <unicase.h>
+#include <uninorm.h>
+#include <unictype.h>
+#include <unistr.h>
+
+const char *severity_name(enum severity severity) {
+    return severity == SEVERITY_MUST_SETTLE ? "must-settle" : "worth-a-look";
+}
+
+const char *discrepancy_state_name(enum discrepancy_state state) {
+    static const char *const names[] = {"open", "settled", "queried"};
+    return names[state];
+}
+
+enum check_kind {
+    CHECK_REPEATED,
+    CHECK_NO_IDENTIFIER,
+    CHECK_ARM,
+    CHECK_MISSING_CODE,
+    CHECK_VARIANT,
+    CHECK_UNLISTED,
+    CHECK_UNREADABLE,
+    CHECK_LIMIT,
+    CHECK_PLAUSIBLE,
+    CHECK_ELIGIBLE,
+    CHECK_SCALE,
+    CHECK_COUNT
+};
+
+const struct check checks[] = {
+    [CHECK_REPEATED] = {"repeated-participant", "Repeated participants", "An identifier stands on more than one record.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_NO_IDENTIFIER] = {"no-identifier", "Records without an identifier", "A record names no participant.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_ARM] = {"unlisted-arm", "Arms that are blank or not in the plan", "A participant has no arm the plan lists.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_MISSING_CODE] = {"missing-code", "Codes for missing", "A value that looks like a code for missing.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_VARIANT] = {"category-variant", "Variants of a code", "A code that differs from a listed one by case, space or form.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_UNLISTED] = {"unlisted-category", "Codes the plan does not list", "A code that the plan does not list.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_UNREADABLE] = {"unreadable-number", "Unreadable numbers", "A cell of a number's column that is no number as written.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_LIMIT] = {"below-limit", "Below or above a limit of detection", "A value given only as beyond a limit.",
+        SEVERITY_WORTH_A_LOOK},
+    [CHECK_PLAUSIBLE] = {"out-of-plausible-range", "Out of plausible range", "A number outside what the plan calls plausible.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_ELIGIBLE] = {"out-of-eligibility", "Outside eligibility", "A number outside what the plan calls eligible.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_SCALE] = {"not-on-scale", "Not on the logarithmic scale", "A value that is not positive on an outcome analysed on log10.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_COUNT] = {NULL, NULL, NULL, SEVERITY_MUST_SETTLE},
+};
+
+/* ---- collecting ---- */
+
+struct finding { /* a run of the checks over one frame */
+    const struct frame *frame;
+    struct arena *arena;
+    struct discrepancy *list;
+    size_t count, room;
+};
+
+static struct discrepancy *found(struct finding *finding, enum check_kind check, const char *column, const char *what) {
+    if (finding->count == finding->room) {
+        size_t room = finding->room ? finding->room * 2 : 32;
+        struct discrepancy *list = ARENA_NEW(finding->arena, room, struct discrepancy);
+        if (finding->count) {
+            memcpy(list, finding->list, finding->count * sizeof *list);
+        }
+        finding->list = list;
+        finding->room = room;
+    }
+    struct discrepancy *new = &finding->list[finding->count++];
+    *new = (struct discrepancy){.check = checks[check].name, .severity = checks[check].severity, .column = column};
+    new->id = column ? arena_format(finding->arena, "%s/%s/%s", checks[check].name, column, what) :
+                       arena_format(finding->arena, "%s/%s", checks[check].name, what);
+    return new;
+}
+
+static void concerns(struct finding *finding, struct discrepancy *what, const char *participant) {
+    const char **list = ARENA_NEW(finding->arena, 1, const char *);
+    list[0] = participant;
+    what->participants = list;
+    what->participant_count = 1;
+    what->participant = participant;
+}
+
+/* Everyone whose current text in the column is this one. */
+static void concerns_text(struct finding *finding, struct discrepancy *what, const struct column *column, const char *text) {
+    const struct frame *frame = finding->frame;
+    const char **list = ARENA_NEW(finding->arena, frame->participant_count, const char *);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        const char *here = frame_text(frame, column, p);
+        if (here && strcmp(here, text) == 0) {
+            list[what->participant_count++] = frame->participants[p].id;
+        }
+    }
+    what->participants = list;
+    what->participant = what->participant_count == 1 ? list[0] : NULL;
+}
+
+static const char *times(struct finding *finding, size_t count) {
+    return count == 1 ? "once" : count == 2 ? "twice" : arena_format(finding->arena, "%zu times", count);
+}
+
+/* A decision's JSON of up to three fields after its kind. */
+static const char *proposal(struct finding *finding, const char *kind, const char *const fields[][2], size_t count) {
+    struct text text;
+    text_init(&text);
+    struct json json;
+    json_init(&json, &text);
+    json_object(&json);
+    json_field_string(&json, "kind", kind);
+    for (size_t i = 0; i < count; i++) {
+        json_field_string(&json, fields[i][0], fields[i][1]);
+    }
+    json_close(&json);
+    json_finish(&json);
+    const char *made = arena_text(finding->arena, text.data);
+    text_release(&text);
+    return made;
+}
+
+static const char *number_words(struct finding *finding, double value) {
+    return arena_format(finding->arena, "%.15g", value);
+}
+
+/* ---- records ---- */
+
+static const char *differing_columns(struct finding *finding, const size_t *records, size_t count) {
+    const struct frame *frame = finding->frame;
+    char words[160] = "";
+    size_t used = 0, more = 0;
+    for (size_t c = 0; c < frame->cells->columns; c++) {
+        bool differs = false;
+        for (size_t i = 1; i < count && !differs; i++) {
+            differs = strcmp(cells_at(frame->cells, records[0], c), cells_at(frame->cells, records[i], c)) != 0;
+        }
+        if (!differs || arms_hide_column(frame, frame->cells->names[c])) {
+            continue;
+        }
+        if (used + 48 < sizeof words) {
+            used += (size_t)snprintf(words + used, sizeof words - used, "%s%.40s", used ? ", " : "", frame->cells->names[c]);
+        } else {
+            more++;
+        }
+    }
+    return used ? arena_format(finding->arena, "They differ in %s%s.", words, more ? " and more" : "") :
+                  "They are alike in every column shown.";
+}
+
+static void check_repeated(struct finding *finding) {
+    enum { SHOWN = 16 };
+    const struct frame *frame = finding->frame;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        const struct participant *who = &frame->participants[p];
+        if (who->record_count < 2 || who->record != NO_RECORD) {
+            continue;
+        }
+        size_t records[SHOWN], all = frame_records(frame, p, records, SHOWN), count = all < SHOWN ? all : SHOWN;
+        unsigned *rows = ARENA_NEW(finding->arena, count, unsigned);
+        struct text words;
+        text_init(&words);
+        for (size_t i = 0; i < count; i++) {
+            rows[i] = (unsigned)records[i] + 1;
+            text_format(&words, "%s%u", i == 0 ? "" : i + 1 == count ? " and " : ", ", rows[i]);
+        }
+        struct discrepancy *new = found(finding, CHECK_REPEATED, NULL, who->id);
+        concerns(finding, new, who->id);
+        new->rows = rows;
+        new->row_count = count;
+        new->message = arena_format(finding->arena, "%s stands on %zu records (%s); all are held aside until one is kept. %s", who->id,
+            who->record_count, words.data, differing_columns(finding, records, count));
+        text_release(&words);
+    }
+}
+
+static void check_no_identifier(struct finding *finding) {
+    const struct frame *frame = finding->frame;
+    size_t blank = 0, first = 0;
+    for (size_t r = 0; r < frame->cells->records; r++) {
+        const char *id = frame->identifier->text[r];
+        if (!id || id[strspn(id, " \t\r\n\f\v")] == '\0') {
+            first = blank++ == 0 ? r + 1 : first;
+        }
+    }
+    if (blank) {
+        struct discrepancy *new = found(finding, CHECK_NO_IDENTIFIER, frame->plan->participant, "blank");
+        new->message = arena_format(finding->arena, "%zu record%s no identifier, the first is record %zu; %s held aside and counted.", blank,
+            blank == 1 ? " has" : "s have", first, blank == 1 ? "it is" : "they are");
+    }
+}
+
+/* While blinded a count and nothing else. */
+static void check_arm(struct finding *finding) {
+    const struct frame *frame = finding->frame;
+    if (!frame->arm) {
+        return;
+    }
+    size_t count = 0;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        bool listed = frame->arm->level[p] != NOWHERE && (size_t)frame->arm->level[p] < frame->arm->listed_count;
+        count += frame->participants[p].record != NO_RECORD && !listed;
+    }
+    if (!count) {
+        return;
+    }
+    bool open = frame->blinding == BLINDING_UNBLINDED;
+    struct discrepancy *new = found(finding, CHECK_ARM, NULL, "count");
+    new->column = open ? frame->plan->arm_column : NULL;
+    new->message = arena_format(finding->arena, "%zu participant%s no arm that the plan lists; %s out of every exhibit by arm, and counted.",
+        count, count == 1 ? " has" : "s have", count == 1 ? "this one is" : "they are");
+    if (open) {
+        const char **list = ARENA_NEW(finding->arena, count, const char *);
+        for (size_t p = 0; p < frame->participant_count; p++) {
+            bool listed = frame->arm->level[p] != NOWHERE && (size_t)frame->arm->level[p] < frame->arm->listed_count;
+            if (frame->participants[p].record != NO_RECORD && !listed) {
+                list[new->participant_count++] = frame->participants[p].id;
+            }
+        }
+        new->participants = list;
+        new->participant = count == 1 ? list[0] : NULL;
+    }
+}
+
+/* ---- codes for missing ---- */
+
+/* Numbers the trade has long used for "missing"; common practice, no source. Only with a sign in the data is one suspected. */
+static bool is_sentinel(double value) {
+    static const double known[] = {9, 99, 999, 9999, 99999, 99.9, 999.9, -1, -8, -9, -88, -99, -999, -9999, 77, 88, 777, 888};
+    for (size_t i = 0; i < sizeof known / sizeof *known; i++) {
+        if (value >= known[i] && value <= known[i]) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static int by_value(const void *a, const void *b) {
+    double x = *(const double *)a, y = *(const double *)b;
+    return (x > y) - (x < y);
+}
+
+/* Signs that a sentinel is not a measurement: outside the plausible range, or, where the plan gives none, far from every
+ * other value (a gap of more than three times the distance between the quartiles). */
+static bool stands_apart(const struct variable *variable, const double *sorted, size_t n, double value) {
+    if (variable->plausible.given) {
+        return value < variable->plausible.low || value > variable->plausible.high;
+    }
+    if (n < 8) {
+        return false;
+    }
+    double spread = sorted[3 * n / 4] - sorted[n / 4], below = -INFINITY, above = INFINITY;
+    for (size_t i = 0; i < n; i++) {
+        below = sorted[i] < value ? sorted[i] : below;
+        above = sorted[i] > value && sorted[i] < above ? sorted[i] : above;
+    }
+    return value - below > 3 * spread && above - value > 3 * spread && spread > 0;
+}
+
+static void suspect_code(struct finding *finding, const struct column *column, const struct variable *variable, double value) {
+    const struct frame *frame = finding->frame;
+    const char *text = NULL;
+    for (size_t p = 0; p < frame->participant_count && !text; p++) {
+        text = column->number[p] >= value && column->number[p] <= value ? frame_text(frame, column, p) : NULL;
+    }
+    struct discrepancy *new = found(finding, CHECK_MISSING_CODE, variable->column, text);
+    concerns_text(finding, new, column, text);
+    new->value = text;
+    new->message = arena_format(finding->arena, "%s reads %s %s, far from every other value: a code for missing?", variable->label, text,
+        times(finding, new->participant_count));
+    const char *const fields[][2] = {{"column", variable->column}, {"value", text}};
+    new->proposal = proposal(finding, "missing-code", fields, 2);
+    new->proposal_words = arena_format(finding->arena, "Treat %s as a code for missing", text);
+}
+
+static void suspect_codes(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    double *sorted = ARENA_NEW(finding->arena, frame->participant_count, double);
+    size_t n = 0;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        if (!isnan(column->number[p])) {
+            sorted[n++] = column->number[p];
+        }
+    }
+    if (n) {
+        qsort(sorted, n, sizeof *sorted, by_value);
+    }
+    for (size_t i = 0; i < n; i++) {
+        if ((i == 0 || sorted[i] > sorted[i - 1]) && is_sentinel(sorted[i]) && stands_apart(variable, sorted, n, sorted[i])) {
+            suspect_code(finding, column, variable, sorted[i]);
+        }
+    }
+}
+
+/* Codes that stand in the column and are settled as such already. */
+static void settled_codes(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    for (size_t i = 0; i < frame->version; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        if (!frame->stands[i] || decision->kind != DECISION_MISSING_CODE || strcmp(decision->column, variable->column) != 0) {
+            continue;
+        }
+        const char **list = ARENA_NEW(finding->arena, frame->participant_count, const char *);
+        size_t count = 0;
+        for (size_t p = 0; p < frame->participant_count; p++) {
+            const char *text = column->state[p] == CELL_MISSING_CODE ? frame_text(frame, column, p) : NULL;
+            if (text && strcmp(text, decision->value) == 0) {
+                list[count++] = frame->participants[p].id;
+            }
+        }
+        if (!count) {
+            continue;
+        }
+        struct discrepancy *new = found(finding, CHECK_MISSING_CODE, variable->column, decision->value);
+        new->value = decision->value;
+        new->participants = list;
+        new->participant_count = count;
+        new->participant = count == 1 ? list[0] : NULL;
+        new->state = DISCREPANCY_SETTLED;
+        new->settled_by = decision->number;
+        new->message = arena_format(finding->arena, "%s reads %s %s, a code for missing%s.", variable->label, decision->value,
+            times(finding, count), decision->planned ? " by the plan" : "");
+    }
+}
+
+/* ---- categories ---- */
+
+/* The text that variants share: compatibility form, no case, letters and digits only. */
+static char *folded(struct arena *arena, const char *text) {
+    size_t length = 0;
+    uint8_t *made = u8_casefold((const uint8_t *)text, strlen(text), NULL, UNINORM_NFKC, NULL, &length);
+    char *kept = ARENA_NEW(arena, length + 1, char);
+    size_t used = 0;
+    for (size_t i = 0; made && i < length;) {
+        ucs4_t c;
+        int width = u8_mbtouc(&c, made + i, length - i);
+        if (uc_is_general_category(c, UC_LETTER) || uc_is_general_category(c, UC_NUMBER)) {
+            memcpy(kept + used, made + i, (size_t)width);
+            used += (size_t)width;
+        }
+        i += (size_t)(width > 0 ? width : 1);
+    }
+    free(made); /* libunistring's own allocation */
+    return kept;
+}
+
+static size_t count_level(const struct frame *frame, const struct column *column, size_t level) {
+    size_t count = 0;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        count += column->level[p] == (int32_t)level;
+    }
+    return count;
+}
+
+/* The listed level (or, where the plan lists none, the most frequent other one) that the code is a variant of. */
+static int variant_of(struct finding *finding, const struct column *column, size_t level) {
+    const char *key = folded(finding->arena, column->levels[level].code);
+    size_t candidates = column->listed_count ? column->listed_count : column->level_count;
+    int best = NOWHERE;
+    size_t most = column->listed_count ? 0 : count_level(finding->frame, column, level), matches = 0;
+    for (size_t i = 0; *key && i < candidates; i++) {
+        bool same = i != level && (strcmp(key, folded(finding->arena, column->levels[i].code)) == 0 ||
+                                      (column->listed_count && strcmp(key, folded(finding->arena, column->levels[i].label)) == 0));
+        size_t count = same ? count_level(finding->frame, column, i) : 0;
+        if (same && (column->listed_count || count > most || (count == most && i < level))) {
+            best = (int)i;
+            most = count;
+            matches++;
+        }
+    }
+    return column->listed_count && matches > 1 ? NOWHERE : best;
+}
+
+static void check_category(struct finding *finding, const struct column *column, const struct variable *variable) {
+    for (size_t l = column->listed_count; l < column->level_count; l++) {
+        const char *code = column->levels[l].code;
+        int target = variant_of(finding, column, l);
+        if (target == NOWHERE && !column->listed_count) {
+            continue; /* without a list every code is its own level */
+        }
+        struct discrepancy *new = found(finding, target == NOWHERE ? CHECK_UNLISTED : CHECK_VARIANT, variable->column, code);
+        concerns_text(finding, new, column, code);
+        new->value = code;
+        if (target == NOWHERE) {
+            new->message = arena_format(finding->arena, "%s reads \"%s\" %s, which the plan does not list.", variable->label, code,
+                times(finding, new->participant_count));
+            continue;
+        }
+        const char *to = column->levels[target].code;
+        const char *const fields[][2] = {{"column", variable->column}, {"from", code}, {"to", to}};
+        new->message = arena_format(finding->arena, "%s reads \"%s\" %s; it differs from \"%s\" by case, space or form only.",
+            variable->label, code, times(finding, new->participant_count), to);
+        new->proposal = proposal(finding, "read-as", fields, 3);
+        new->proposal_words = arena_format(finding->arena, "Read \"%s\" as \"%s\"", code, to);
+    }
+}
+
+static void check_event(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    struct map seen;
+    map_init(&seen);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        const char *text = column->state[p] == CELL_UNREADABLE ? frame_text(frame, column, p) : NULL;
+        if (text && map_get(&seen, text) == NOWHERE) {
+            map_put(&seen, text, 1);
+            struct discrepancy *new = found(finding, CHECK_UNLISTED, variable->column, text);
+            concerns_text(finding, new, column, text);
+            new->value = text;
+            new->message = arena_format(finding->arena, "%s reads \"%s\" %s, which the plan lists neither as yes nor as no.",
+                variable->label, text, times(finding, new->participant_count));
+        }
+    }
+    map_release(&seen);
+}
+
+/* ---- numbers ---- */
+
+static void check_unreadable(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        if (column->state[p] != CELL_UNREADABLE) {
+            continue;
+        }
+        const char *text = frame_text(frame, column, p), *id = frame->participants[p].id;
+        struct discrepancy *new = found(finding, CHECK_UNREADABLE, variable->column, id);
+        concerns(finding, new, id);
+        new->value = text;
+        double value;
+        char number[64];
+        size_t digits = strspn(text, " 0123456789.,+-");
+        if (number_read(text, ',', &value, NULL) == NUMBER_READ) {
+            const char *const fields[][2] = {{"column", variable->column}, {"decimal", ","}};
+            new->message = arena_format(finding->arena, "%s of %s reads \"%s\", no number as written; with a decimal comma it is %s.",
+                variable->label, id, text, number_words(finding, value));
+            new->proposal = proposal(finding, "number-format", fields, 2);
+            new->proposal_words = arena_format(finding->arena, "Read decimal commas in %s", variable->column);
+        } else if (digits > 0 && digits < sizeof number && digits < strlen(text) &&
+                   number_read(arena_bytes(finding->arena, text, digits), '.', &value, NULL) == NUMBER_READ) {
+            const char *to = number_words(finding, value);
+            const char *const fields[][2] = {{"column", variable->column}, {"participant", id}, {"from", text}, {"to", to}};
+            new->message = arena_format(finding->arena, "%s of %s reads \"%s\": a number with something after it, perhaps its unit.",
+                variable->label, id, text);
+            new->proposal = proposal(finding, "correct", fields, 4);
+            new->proposal_words = arena_format(finding->arena, "Correct it to %s", to);
+        } else {
+            new->message = arena_format(finding->arena, "%s of %s reads \"%s\", which is no number.", variable->label, id, text);
+        }
+    }
+}
+
+static void check_limit(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    struct map seen;
+    map_init(&seen);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        bool beyond = column->state[p] == CELL_BELOW_LIMIT || column->state[p] == CELL_ABOVE_LIMIT;
+        const char *text = beyond ? frame_text(frame, column, p) : NULL;
+        if (text && map_get(&seen, text) == NOWHERE) {
+            map_put(&seen, text, 1);
+            struct discrepancy *new = found(finding, CHECK_LIMIT, variable->column, text);
+            concerns_text(finding, new, column, text);
+            new->value = text;
+            new->message = arena_format(finding->arena, "%s reads %s %s: %s the limit, so neither a number nor simply missing; left out of "
+                "analyses and counted.", variable->label, text, times(finding, new->participant_count),
+                column->state[p] == CELL_BELOW_LIMIT ? "below" : "above");
+            const char *const fields[][2] = {{"column", variable->column}, {"value", text}};
+            new->proposal = proposal(finding, "confirm", fields, 2);
+            new->proposal_words = "Confirm as recorded";
+        }
+    }
+    map_release(&seen);
+}
+
+/* A power of ten that would bring the value into the range, as words; it is never proposed as a correction without a source. */
+static const char *slip_words(struct finding *finding, const struct range *range, double value) {
+    static const double factors[] = {10, 100, 0.1, 0.01};
+    static const char *const words[] = {"A tenth", "A hundredth", "Ten times", "A hundred times"};
+    for (size_t i = 0; i < 4; i++) {
+        double slipped = value / factors[i];
+        if (slipped >= range->low && slipped <= range->high) {
+            return arena_format(finding->arena, " %s%s, %s, would fit: a decimal slip?", words[i], i < 2 ? " of it" : " it",
+                number_words(finding, slipped));
+        }
+    }
+    return "";
+}
+
+static void check_range(struct finding *finding, enum check_kind check, const struct column *column,
+    const struct variable *variable, const struct range *range) {
+    const struct frame *frame = finding->frame;
+    for (size_t p = 0; range->given && p < frame->participant_count; p++) {
+        double value = column->number[p];
+        if (isnan(value) || (value >= range->low && value <= range->high)) {
+            continue;
+        }
+        const char *id = frame->participants[p].id, *unit = variable->unit;
+        bool implausible = variable->plausible.given && (value < variable->plausible.low || value > variable->plausible.high);
+        if (check == CHECK_ELIGIBLE && implausible) {
+            continue; /* asked about once, as implausible */
+        }
+        struct discrepancy *new = found(finding, check, variable->column, id);
+        concerns(finding, new, id);
+        new->value = frame_text(frame, column, p);
+        new->message = arena_format(finding->arena, "%s of %s is %s%s%s, outside the %s range %s to %s.%s", variable->label, id,
+            number_words(finding, value), *unit ? " " : "", unit, check == CHECK_ELIGIBLE ? "eligible" : "plausible",
+            number_words(finding, range->low), number_words(finding, range->high),
+            check == CHECK_PLAUSIBLE ? slip_words(finding, range, value) : " A breach of eligibility is classified, not deleted.");
+    }
+}
+
+static void check_scale(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        if (isnan(column->number[p]) || column->number[p] > 0) {
+            continue;
+        }
+        const char *id = frame->participants[p].id;
+        struct discrepancy *new = found(finding, CHECK_SCALE, variable->column, id);
+        concerns(finding, new, id);
+        new->value = frame_text(frame, column, p);
+        new->message = arena_format(finding->arena, "%s of %s is %s, which the logarithmic scale cannot take; it is left out there and counted.",
+            variable->label, id, number_words(finding, column->number[p]));
+    }
+}
+
+/* ---- all of them, in the order of the table ---- */
+
+static void check_variable(struct finding *finding, enum check_kind check, size_t v) {
+    const struct frame *frame = finding->frame;
+    const struct variable *variable = &frame->plan->variables[v];
+    const struct column *column = frame->columns[v];
+    if (arms_hide_column(frame, variable->column)) {
+        return;
+    }
+    bool number = variable->kind == VARIABLE_NUMBER, category = variable->kind == VARIABLE_CATEGORY;
+    bool log10_outcome = variable->outcome != NOWHERE && frame->scales[variable->outcome] == SCALE_LOG10;
+    if (check == CHECK_MISSING_CODE) {
+        settled_codes(finding, column, variable);
+        if (number) {
+            suspect_codes(finding, column, variable);
+        }
+    } else if (check == CHECK_VARIANT && category) {
+        check_category(finding, column, variable);
+    } else if (check == CHECK_UNLISTED && variable->kind == VARIABLE_EVENT) {
+        check_event(finding, column, variable);
+    } else if (check == CHECK_UNREADABLE && number) {
+        check_unreadable(finding, column, variable);
+    } else if (check == CHECK_LIMIT && number) {
+        check_limit(finding, column, variable);
+    } else if (check == CHECK_PLAUSIBLE && number) {
+        check_range(finding, check, column, variable, &variable->plausible);
+    } else if (check == CHECK_ELIGIBLE && number) {
+        check_range(finding, check, column, variable, &variable->eligible);
+    } else if (check == CHECK_SCALE && log10_outcome) {
+        check_scale(finding, column, variable);
+    }
+}
+
+static void run(struct finding *finding) {
+    check_repeated(finding);
+    check_no_identifier(finding);
+    check_arm(finding);
+    for (int check = CHECK_MISSING_CODE; check < CHECK_COUNT; check++) {
+        for (size_t v = 0; v < finding->frame->plan->variable_count; v++) {
+            check_variable(finding, (enum check_kind)check, v);
+        }
+    }
+}
+
+/* ---- what decisions have done about them ---- */
+
+static bool same(const char *a, const char *b) {
+    return a && b && strcmp(a, b) == 0;
+}
+
+/* Whether a confirmation or a query that stands is about this discrepancy. */
+static bool decided_about(const struct decision *decision, const struct discrepancy *what) {
+    if (decision->discrepancy) {
+        return strcmp(decision->discrepancy, what->id) == 0;
+    }
+    bool cell = same(decision->column, what->column) && (!decision->participant || same(decision->participant, what->participant));
+    return cell && (decision->kind == DECISION_QUERY || same(decision->value, what->value));
+}
+
+static void look_for_decision(const struct frame *frame, struct discrepancy *what) {
+    for (size_t i = 0; i < frame->version; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        bool confirms = decision->kind == DECISION_CONFIRM && (!decision->value || !what->value || same(decision->value, what->value));
+        if (!frame->stands[i] || !(confirms || decision->kind == DECISION_QUERY) || !decided_about(decision, what)) {
+            continue;
+        }
+        what->state = confirms ? DISCREPANCY_SETTLED : what->state == DISCREPANCY_OPEN ? DISCREPANCY_QUERIED : what->state;
+        what->settled_by = confirms ? decision->number : what->settled_by;
+    }
+}
+
+/* The decision that settled what the checks no longer find: one that names it, else the last about its cell or column. */
+static uint32_t settler(const struct frame *frame, const struct discrepancy *what) {
+    uint32_t by = 0;
+    for (size_t i = 0; i < frame->version; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        bool keeps = decision->kind == DECISION_KEEP_RECORD && same(decision->participant, what->participant);
+        bool column = decision->kind <= DECISION_SET_MISSING && same(decision->column, what->column) &&
+                      (!decision->participant || same(decision->participant, what->participant));
+        if (frame->stands[i] && (keeps || column || same(decision->discrepancy, what->id))) {
+            by = decision->number;
+        }
+    }
+    return by;
+}
+
+static int check_order(const char *name) {
+    int order = 0;
+    while (strcmp(checks[order].name, name) != 0) {
+        order++;
+    }
+    return order;
+}
+
+static int by_check(const void *a, const void *b) {
+    const struct discrepancy *x = a, *y = b;
+    int order = check_order(x->check) - check_order(y->check);
+    order = order ? order : strcmp(x->column ? x->column : "", y->column ? y->column : "");
+    order = order ? order : strcmp(x->participant_count ? x->participants[0] : "", y->participant_count ? y->participants[0] : "");
+    return order ? order : strcmp(x->id, y->id);
+}
+
+void checks_run(const struct frame *frame, const struct frame *received, struct arena *arena, struct discrepancies *all) {
+    struct finding now = {.frame = frame, .arena = arena};
+    run(&now);
+    struct map ids;
+    map_init(&ids);
+    for (size_t i = 0; i < now.count; i++) {
+        if (now.list[i].state == DISCREPANCY_OPEN) {
+            look_for_decision(frame, &now.list[i]);
+        }
+        map_put(&ids, now.list[i].id, (int32_t)i);
+    }
+    struct finding before = {.frame = received, .arena = arena};
+    if (received != frame) {
+        /* What was found at load is looked at as blinded as the study is now. */
+        run(&before);
+    }
+    struct discrepancy *list = ARENA_NEW(arena, now.count + before.count, struct discrepancy);
+    if (now.count) {
+        memcpy(list, now.list, now.count * sizeof *list);
+    }
+    size_t count = now.count;
+    for (size_t i = 0; i < before.count; i++) {
+        struct discrepancy *old = &before.list[i];
+        if (map_get(&ids, old->id) != NOWHERE || (old->column && arms_hide_column(frame, old->column))) {
+            continue;
+        }
+        old->settled_by = settler(frame, old);
+        old->state = DISCREPANCY_SETTLED;
+        list[count++] = *old;
+    }
+    map_release(&ids);
+    if (count) {
+        qsort(list, count, sizeof *list, by_check);
+    }
+    *all = (struct discrepancies){.list = list, .count = count};
+    for (size_t i = 0; i < count; i++) {
+        all->open += list[i].state == DISCREPANCY_OPEN;
+        all->settled += list[i].state == DISCREPANCY_SETTLED;
+        all->queried += list[i].state == DISCREPANCY_QUERIED;
+    }
+}

@@ -1,0 +1,507 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "trial/study.h"
+#include "base/clock.h"
+#include "base/version.h"
+#include "draw/json.h"
+#include "store/store.h"
+#include <pthread.h>
+#include <pwd.h>
+#include <stdio.h>
+#include <stdlib.h>
+#include <string.h>
+#include <sys/random.h>
+#include <unistd.h>
+
+struct look {
+    struct look *next;
+    const char *exhibit, *arguments, *by;
+    uint32_t version;
+};
+
+struct study {
+    pthread_mutex_t mutex;
+    struct arena arena; /* what lives as long as the study: plan text, facts, decisions' texts */
+    struct store *store;
+    struct cells cells;
+    struct plan plan;
+    struct record record;
+    unsigned char letters[32];
+    struct study_facts facts;
+    char entry_zero[HASH_SIZE];
+    struct frame *frame, *received;
+    struct look *looks; /* entered by this process, so that drawing the same screen again is one look */
+};
+
+/* ---- the plan against the file ---- */
+
+static bool column_is_there(const struct cells *cells, const char *column, const char *what, const char *data_name,
+    const char *plan_name, struct fault *fault) {
+    if (cells_column(cells, column) != SIZE_MAX) {
+        return true;
+    }
+    char names[256] = "";
+    size_t used = 0;
+    for (size_t i = 0; i < cells->columns && used + 40 < sizeof names; i++) {
+        used += (size_t)snprintf(names + used, sizeof names - used, "%s%.32s", i ? ", " : "", cells->names[i]);
+    }
+    return fault_set(fault, FAULT_INPUT, "%s: the column \"%.60s\" (%.80s) is not in %s, line 1, which has: %s; mend the plan or the header",
+        plan_name, column, what, data_name, names);
+}
+
+static bool plan_fits(const struct plan *plan, const struct cells *cells, const char *data_name, const char *plan_name,
+    struct fault *fault) {
+    if (!column_is_there(cells, plan->participant, "the participant's identifier", data_name, plan_name, fault) ||
+        (plan->arm_column && !column_is_there(cells, plan->arm_column, "the arm", data_name, plan_name, fault)) ||
+        (plan->site_column && !column_is_there(cells, plan->site_column, "the site", data_name, plan_name, fault))) {
+        return false;
+    }
+    for (size_t i = 0; i < plan->variable_count; i++) {
+        if (!column_is_there(cells, plan->variables[i].column, plan->variables[i].label, data_name, plan_name, fault)) {
+            return false;
+        }
+    }
+    return cells->records > 0 || fault_at(fault, FAULT_INPUT, 2, 0, "%s has a header and no record below it; load a file with at least one participant",
+                                    data_name);
+}
+
+/* ---- making a study ---- */
+
+static const char *file_part(const char *path) {
+    const char *slash = strrchr(path, '/');
+    return slash ? slash + 1 : path;
+}
+
+/* A random order of the arms' letters from the system's randomness (Fisher & Yates; rejection keeps it even). */
+static bool draw_letters(unsigned char *letters, size_t count, struct fault *fault) {
+    for (size_t i = 0; i < count; i++) {
+        letters[i] = (unsigned char)i;
+    }
+    for (size_t i = count; i > 1; i--) {
+        unsigned char byte;
+        do {
+            if (getrandom(&byte, 1, 0) != 1) {
+                return fault_set(fault, FAULT_SYSTEM, "this system gives no random numbers, which coding the arms needs; try again");
+            }
+        } while (byte >= 256 / i * i);
+        size_t j = byte % i;
+        unsigned char swap = letters[i - 1];
+        letters[i - 1] = letters[j];
+        letters[j] = swap;
+    }
+    return true;
+}
+
+static const char *letters_text(struct arena *arena, const unsigned char *letters, size_t count) {
+    char *text = ARENA_NEW(arena, count + 1, char);
+    for (size_t i = 0; i < count; i++) {
+        text[i] = (char)('A' + letters[i]);
+    }
+    return text;
+}
+
+static const char *account_name(struct arena *arena) {
+    const struct passwd *entry = getpwuid(geteuid());
+    return entry ? arena_text(arena, entry->pw_name) : arena_format(arena, "account %u", (unsigned)geteuid());
+}
+
+/* The plan's codes for missing as the first decisions: one for each column and code. */
+static size_t planned_decisions(const struct plan *plan, struct arena *arena, struct decision **decisions) {
+    size_t room = 0, count = 0;
+    for (size_t v = 0; v < plan->variable_count; v++) {
+        room += plan->variables[v].missing_codes->count;
+    }
+    *decisions = ARENA_NEW(arena, room, struct decision);
+    for (size_t v = 0; v < plan->variable_count; v++) {
+        const struct variable *variable = &plan->variables[v];
+        for (size_t c = 0; c < variable->missing_codes->count; c++) {
+            struct text body;
+            text_init(&body);
+            struct json json;
+            json_init(&json, &body);
+            json_object(&json);
+            json_field_string(&json, "value", variable->missing_codes->item[c]);
+            json_field_bool(&json, "planned", true);
+            json_close(&json);
+            struct decision *decision = &(*decisions)[count++];
+            *decision = (struct decision){.number = (uint32_t)count, .kind = DECISION_MISSING_CODE, .column = variable->column,
+                .value = variable->missing_codes->item[c], .reason = "The plan lists it as a code for missing.",
+                .planned = true, .body = arena_text(arena, body.data)};
+            text_release(&body);
+        }
+    }
+    return count;
+}
+
+static void to_stored(const struct decision *decision, struct stored_decision *stored) {
+    *stored = (struct stored_decision){.number = decision->number, .at = decision->at, .by = decision->by,
+        .account = decision->account, .kind = decision_rules[decision->kind].name, .participant = decision->participant,
+        .column = decision->column, .from = decision->from, .to = decision->to, .reason = decision->reason,
+        .evidence = decision->evidence, .discrepancy = decision->discrepancy, .blinding = decision->blinding,
+        .body = decision->body, .state_sha256 = decision->state};
+}
+
+static void tell_account(struct text *account, const char *data_name, const struct cells *cells, const struct frame *frame,
+    size_t planned) {
+    size_t repeated = 0;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        repeated += frame->participants[p].record_count > 1;
+    }
+    text_format(account, "%s: %zu records of %zu columns, %s, delimiter %s%s.\n", data_name, cells->records, cells->columns,
+        cells->encoding, cells->delimiter_word, cells->byte_order_mark ? ", byte order mark" : "");
+    text_format(account, "%zu participants; %zu repeated, %zu records held aside until a decision says which stands.\n",
+        frame->participant_count, repeated, frame->held_aside);
+    text_format(account, "%zu columns have a meaning in the plan; %zu codes for missing entered from it.\n",
+        frame->plan->variable_count + 1 + (frame->plan->arm_column != NULL), planned);
+    struct arena arena;
+    arena_init(&arena);
+    struct discrepancies found;
+    checks_run(frame, frame, &arena, &found);
+    text_format(account, "%zu discrepancies to settle, blinding %s.\n", found.open, blinding_name(frame->blinding));
+    arena_release(&arena);
+}
+
+struct birth { /* everything on the way to a new study */
+    struct arena arena;
+    struct cells cells;
+    struct plan plan;
+    struct frame *frame;
+};
+
+static bool write_birth(struct birth *birth, const char *path, const char *data_name, const char *data, size_t data_length,
+    const char *plan_text, const char *by, struct text *account, struct fault *fault) {
+    unsigned char letters[32];
+    char at[CLOCK_SIZE];
+    clock_utc(at);
+    if (!draw_letters(letters, birth->plan.arm_count, fault)) {
+        return false;
+    }
+    struct decision *planned;
+    size_t count = planned_decisions(&birth->plan, &birth->arena, &planned);
+    birth->frame = frame_build(&birth->plan, &birth->cells, "", letters, planned, count, NULL, false, fault);
+    if (!birth->frame) {
+        return false;
+    }
+    struct stored_decision *stored = ARENA_NEW(&birth->arena, count, struct stored_decision);
+    for (size_t i = 0; i < count; i++) {
+        planned[i].at = at;
+        planned[i].by = by;
+        planned[i].account = account_name(&birth->arena);
+        planned[i].blinding = blinding_name(birth->plan.blinding);
+        planned[i].state = birth->frame->state_sha256;
+        to_stored(&planned[i], &stored[i]);
+    }
+    struct store_file file = {.name = data_name, .bytes = data, .length = data_length};
+    struct store_table table = {birth->cells.records, birth->cells.columns, birth->cells.names, birth->cells.bytes, birth->cells.start};
+    struct store_value values[] = {{"letters", letters_text(&birth->arena, letters, birth->plan.arm_count)},
+        {"program", "Evenhand " EVENHAND_VERSION}};
+    struct store_birth store = {.files = &file, .tables = &table, .file_count = 1, .plan = plan_text, .values = values,
+        .value_count = 2, .by = by, .at = at, .decisions = stored, .decision_count = count};
+    if (account) {
+        tell_account(account, data_name, &birth->cells, birth->frame, count);
+    }
+    return store_create(path, &store, fault);
+}
+
+bool study_create(const char *path, const char *data_name, const char *data, size_t data_length, const char *plan_name,
+    const char *plan, size_t plan_length, const char *by, struct text *account, struct fault *fault) {
+    struct birth birth = {0};
+    if (!by || !by[strspn(by, " \t")]) {
+        return fault_set(fault, FAULT_INPUT, "say who is loading, by name and role, such as --by \"A. Reader, data manager\"");
+    }
+    data_name = file_part(data_name);
+    plan_name = file_part(plan_name);
+    arena_init(&birth.arena);
+    const char *plan_text = arena_bytes(&birth.arena, plan, plan_length);
+    bool done = cells_read(&birth.cells, data, data_length, data_name, fault);
+    done = done && plan_read(&birth.plan, plan, plan_length, plan_name, fault);
+    done = done && plan_fits(&birth.plan, &birth.cells, data_name, plan_name, fault);
+    done = done && write_birth(&birth, path, data_name, data, data_length, plan_text, by, account, fault);
+    frame_release(birth.frame);
+    plan_release(&birth.plan);
+    cells_release(&birth.cells);
+    arena_release(&birth.arena);
+    return done;
+}
+
+/* ---- opening ---- */
+
+static struct decision *record_push(struct record *record) {
+    if (record->count == record->capacity) {
+        record->capacity = record->capacity ? record->capacity * 2 : 64;
+        record->decisions = memory_grow(record->decisions, record->capacity, sizeof *record->decisions);
+    }
+    return &record->decisions[record->count++];
+}
+
+/* Takes decisions that the file has and the record has not. */
+static bool take_decisions(struct study *study, struct fault *fault) {
+    struct stored_decision *stored = NULL;
+    size_t count = 0;
+    if (!store_decisions(study->store, &study->record.arena, (uint32_t)study->record.count, &stored, &count, fault)) {
+        return false;
+    }
+    for (size_t i = 0; i < count; i++) {
+        int kind = decision_kind_of(stored[i].kind);
+        if (kind == NOWHERE) {
+            return fault_set(fault, FAULT_INPUT, "%s: decision %u is of the kind \"%.40s\", which this version does not know; use a newer one",
+                store_path(study->store), stored[i].number, stored[i].kind);
+        }
+        struct decision *decision = record_push(&study->record);
+        *decision = (struct decision){.number = stored[i].number, .kind = (enum decision_kind)kind, .at = stored[i].at,
+            .by = stored[i].by, .account = stored[i].account, .participant = stored[i].participant, .column = stored[i].column,
+            .from = stored[i].from, .to = stored[i].to, .reason = stored[i].reason, .evidence = stored[i].evidence,
+            .discrepancy = stored[i].discrepancy, .blinding = stored[i].blinding, .body = stored[i].body,
+            .state = stored[i].state_sha256, .hash = arena_text(&study->record.arena, stored[i].hash)};
+        if (!decision_unpack(&study->record.arena, decision, fault)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+static size_t planned_count(const struct record *record) {
+    size_t count = 0;
+    while (count < record->count && record->decisions[count].planned) {
+        count++;
+    }
+    return count;
+}
+
+static struct frame *build(struct study *study, size_t count, struct frame *previous, struct fault *fault) {
+    return frame_build(&study->plan, &study->cells, study->facts.data_sha256, study->letters, study->record.decisions, count,
+        previous, false, fault);
+}
+
+static bool take_letters(struct study *study, struct fault *fault) {
+    const char *letters = NULL;
+    if (!store_value(study->store, &study->arena, "letters", &letters, fault)) {
+        return false;
+    }
+    size_t count = study->plan.arm_count;
+    bool fits = letters && strlen(letters) == count;
+    for (size_t i = 0; fits && i < count; i++) {
+        fits = letters[i] >= 'A' && letters[i] < 'A' + (int)count;
+        study->letters[i] = (unsigned char)(letters[i] - 'A');
+    }
+    return fits || fault_set(fault, FAULT_INPUT, "%s: the letters of the arms cannot be read; ask for an earlier copy of the file",
+                       store_path(study->store));
+}
+
+static bool take_file(struct study *study, struct fault *fault) {
+    struct arena scratch;
+    arena_init(&scratch);
+    struct store_file file = {0};
+    const char *plan = NULL;
+    bool done = store_received(study->store, &scratch, 0, &file, fault) && store_plan(study->store, &study->arena, &plan, fault) &&
+                cells_read(&study->cells, file.bytes, file.length, file.name, fault) &&
+                plan_read(&study->plan, plan, strlen(plan), "the study's plan", fault);
+    if (done) {
+        study->facts = (struct study_facts){.data_name = arena_text(&study->arena, file.name),
+            .received_at = arena_text(&study->arena, file.at), .data_sha256 = arena_text(&study->arena, file.sha256),
+            .encoding = study->cells.encoding, .delimiter = study->cells.delimiter_word, .data_length = file.length};
+    }
+    arena_release(&scratch);
+    return done && plan_fits(&study->plan, &study->cells, study->facts.data_name, "the study's plan", fault);
+}
+
+struct study *study_open(const char *path, struct fault *fault) {
+    struct study *study = memory_new(1, sizeof *study);
+    pthread_mutex_init(&study->mutex, NULL);
+    arena_init(&study->arena);
+    arena_init(&study->record.arena);
+    study->store = store_open(path, false, fault);
+    const char *zero = NULL;
+    bool done = study->store && take_file(study, fault) && take_letters(study, fault) && take_decisions(study, fault) &&
+                store_value(study->store, &study->arena, "entry_zero", &zero, fault);
+    if (done) {
+        snprintf(study->entry_zero, sizeof study->entry_zero, "%s", zero ? zero : "");
+        study->received = build(study, planned_count(&study->record), NULL, fault);
+        study->frame = study->received ? build(study, study->record.count, study->received, fault) : NULL;
+    }
+    if (!study->frame) {
+        study_close(study);
+        return NULL;
+    }
+    return study;
+}
+
+void study_close(struct study *study) {
+    if (!study) {
+        return;
+    }
+    frame_release(study->frame);
+    frame_release(study->received);
+    store_close(study->store);
+    plan_release(&study->plan);
+    cells_release(&study->cells);
+    memory_free(study->record.decisions);
+    arena_release(&study->record.arena);
+    arena_release(&study->arena);
+    pthread_mutex_destroy(&study->mutex);
+    memory_free(study);
+}
+
+const char *study_path(const struct study *study) {
+    return store_path(study->store);
+}
+
+const struct plan *study_plan(const struct study *study) {
+    return &study->plan;
+}
+
+/* With the mutex held: brings the frame to the file's last decision, where another process has decided. */
+static bool refresh(struct study *study, struct fault *fault) {
+    if (!store_changed(study->store)) {
+        return true;
+    }
+    if (!take_decisions(study, fault)) {
+        return false;
+    }
+    if (study->record.count == study->frame->version) {
+        return true;
+    }
+    struct frame *next = build(study, study->record.count, study->frame, fault);
+    if (next) {
+        frame_release(study->frame);
+        study->frame = next;
+    }
+    return next != NULL;
+}
+
+struct frame *study_frame(struct study *study, struct fault *fault) {
+    pthread_mutex_lock(&study->mutex);
+    struct frame *frame = refresh(study, fault) ? frame_retain(study->frame) : NULL;
+    pthread_mutex_unlock(&study->mutex);
+    return frame;
+}
+
+struct frame *study_received_frame(struct study *study) {
+    return frame_retain(study->received);
+}
+
+/* ---- deciding ---- */
+
+/* With the mutex held: one try at recording a batch that has been read. */
+static bool append(struct study *study, const char *by, struct decision *batch, size_t count, struct fault *fault) {
+    struct arena *arena = &study->record.arena;
+    size_t before = study->record.count;
+    const char *account = account_name(arena), *blinding = blinding_name(study->frame->blinding);
+    char at[CLOCK_SIZE];
+    clock_utc(at);
+    for (size_t i = 0; i < count; i++) {
+        struct decision *decision = record_push(&study->record);
+        *decision = batch[i];
+        decision->number = (uint32_t)(before + i + 1);
+        decision->at = arena_text(arena, at);
+        decision->by = arena_text(arena, by);
+        decision->account = account;
+        decision->blinding = blinding;
+    }
+    struct frame *next = frame_build(&study->plan, &study->cells, study->facts.data_sha256, study->letters,
+        study->record.decisions, study->record.count, study->frame, true, fault);
+    bool done = next != NULL;
+    if (done) {
+        struct stored_decision *stored = ARENA_NEW(arena, count, struct stored_decision);
+        for (size_t i = 0; i < count; i++) {
+            struct decision *decision = &study->record.decisions[before + i];
+            decision->state = arena_text(arena, next->state_sha256);
+            to_stored(decision, &stored[i]);
+        }
+        done = store_append(study->store, arena, (uint32_t)before, stored, count, fault);
+        for (size_t i = 0; done && i < count; i++) {
+            study->record.decisions[before + i].hash = stored[i].hash;
+            next->decisions[before + i] = study->record.decisions[before + i]; /* not shared yet */
+        }
+    }
+    if (done) {
+        frame_release(study->frame);
+        study->frame = next;
+    } else {
+        frame_release(next);
+        study->record.count = before;
+    }
+    return done;
+}
+
+static bool decide(struct study *study, const char *by, struct decision *batch, size_t count, uint32_t version_seen,
+    struct fault *fault) {
+    enum { TRIES = 3 };
+    for (int attempt = 0; attempt < TRIES; attempt++) {
+        if (!refresh(study, fault)) {
+            return false;
+        }
+        if (version_seen != ANY_VERSION && version_seen != study->frame->version) {
+            return fault_set(fault, FAULT_CONFLICT, "the study has moved on: it is after decision %u, and this page last saw %u; look at what "
+                "happened meanwhile and decide again", study->frame->version, version_seen);
+        }
+        struct fault tried;
+        fault_init(&tried);
+        if (append(study, by, batch, count, &tried)) {
+            return true;
+        }
+        /* Another process was quicker by a moment: see what it did and try once more. */
+        if (tried.code != FAULT_CONFLICT || attempt + 1 == TRIES) {
+            *fault = tried;
+            return false;
+        }
+        if (!take_decisions(study, fault)) {
+            return false;
+        }
+        struct frame *next = build(study, study->record.count, study->frame, fault);
+        if (!next) {
+            return false;
+        }
+        frame_release(study->frame);
+        study->frame = next;
+    }
+    return false;
+}
+
+bool study_decide(struct study *study, const char *by, const char *json, size_t length, const char *name,
+    uint32_t version_seen, uint32_t *version, struct fault *fault) {
+    if (!by || !by[strspn(by, " \t")]) {
+        return fault_set(fault, FAULT_INPUT, "say who is deciding, by name and role, such as \"A. Reader, data manager\"");
+    }
+    pthread_mutex_lock(&study->mutex);
+    struct decision *batch = NULL;
+    size_t count = 0;
+    uint32_t said = ANY_VERSION;
+    bool done = decisions_read(&study->record.arena, json, length, name, &batch, &count, &said, fault) &&
+                decide(study, by, batch, count, version_seen != ANY_VERSION ? version_seen : said, fault);
+    if (version) {
+        *version = study->frame->version;
+    }
+    pthread_mutex_unlock(&study->mutex);
+    return done;
+}
+
+bool study_look(struct study *study, const struct frame *frame, const char *exhibit, const char *arguments, const char *by,
+    struct fault *fault) {
+    pthread_mutex_lock(&study->mutex);
+    bool done = false;
+    for (const struct look *look = study->looks; look && !done; look = look->next) {
+        done = look->version == frame->version && strcmp(look->exhibit, exhibit) == 0 &&
+               strcmp(look->arguments, arguments) == 0 && strcmp(look->by, by) == 0;
+    }
+    if (!done) {
+        struct stored_look stored = {.by = by, .exhibit = exhibit, .arguments = arguments, .version = frame->version};
+        done = store_append_look(study->store, &study->arena, &stored, fault);
+        struct look *look = ARENA_NEW(&study->arena, 1, struct look);
+        *look = (struct look){study->looks, arena_text(&study->arena, exhibit), arena_text(&study->arena, arguments),
+            arena_text(&study->arena, by), frame->version};
+        study->looks = done ? look : study->looks;
+    }
+    pthread_mutex_unlock(&study->mutex);
+    return done;
+}
+
+void study_facts(struct study *study, struct study_facts *facts) {
+    *facts = study->facts;
+}
+
+void study_head(struct study *study, uint32_t version, char head[HASH_SIZE]) {
+    pthread_mutex_lock(&study->mutex);
+    bool there = version > 0 && version <= study->record.count;
+    snprintf(head, HASH_SIZE, "%s", there ? study->record.decisions[version - 1].hash : study->entry_zero);
+    pthread_mutex_unlock(&study->mutex);
+}
