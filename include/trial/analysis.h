@@ -45,7 +45,7 @@ void grouping_take(struct grouping *grouping, const struct frame *frame, int cov
  * baseline): intercept, arm indicators (all but the reference, in shown order), baseline, adjust_for. */
 struct design {
     size_t rows, columns;
-    double *x;              /* [columns][rows], column-major */
+    double **column;        /* [columns][rows] */
     double *y;              /* [rows] follow-up */
     size_t *member;         /* [rows] index into the analysis */
     size_t *n_of_arm;       /* [arms] */

@@ -106,18 +106,18 @@ static double *add_column(struct filling *filling, const char *name) {
     struct design *design = filling->design;
     if (design->columns == filling->room) {
         size_t room = filling->room ? filling->room * 2 : 8;
-        double *x = ARENA_NEW(filling->arena, room * design->rows, double);
+        double **columns = ARENA_NEW(filling->arena, room, double *);
         const char **names = ARENA_NEW(filling->arena, room, const char *);
         if (design->columns) {
-            memcpy(x, design->x, design->columns * design->rows * sizeof *x);
+            memcpy(columns, design->column, design->columns * sizeof *columns);
             memcpy(names, design->name, design->columns * sizeof *names);
         }
-        design->x = x;
+        design->column = columns;
         design->name = names;
         filling->room = room;
     }
     design->name[design->columns] = name;
-    return design->x + design->rows * design->columns++;
+    return design->column[design->columns++] = ARENA_NEW(filling->arena, design->rows, double);
 }
 
 static void add_arms(struct filling *filling) {
