@@ -8,8 +8,7 @@
 #include <stdbool.h>
 #include <stdio.h>
 
-static inline bool near_holds(double got, double want, double relative, double absolute)
-{
+static inline bool near_holds(double got, double want, double relative, double absolute) {
     if (isnan(got) || isnan(want))
         return isnan(got) && isnan(want);
     if (isinf(got) || isinf(want))
@@ -17,26 +16,24 @@ static inline bool near_holds(double got, double want, double relative, double a
     return fabs(got - want) <= fmax(relative * fabs(want), absolute);
 }
 
-static inline void near_at(double got, double want, double relative, double absolute, const char *label,
-                           const char *file, int line)
-{
+static inline void near_at(
+    double got, double want, double relative, double absolute, const char *label, const char *file, int line) {
     if (near_holds(got, want, relative, absolute))
         return;
     print_error("%s: got %.17g, wanted %.17g (gap %.3g; relative %g, absolute %g allowed)\n", label, got, want,
-                fabs(got - want), relative, absolute);
+        fabs(got - want), relative, absolute);
     _fail(file, line);
 }
 
-#define near(got, want, relative, absolute, label) \
+#define near(got, want, relative, absolute, label)                                                                     \
     near_at((got), (want), (relative), (absolute), (label), __FILE__, __LINE__)
 
 /* The gap of statistics: |got - want| / max(|want|, standard error) at most `tolerance`. */
-#define near_estimate(got, want, standard_error, tolerance, label) \
+#define near_estimate(got, want, standard_error, tolerance, label)                                                     \
     near_at((got), (want), (tolerance), (tolerance) * (standard_error), (label), __FILE__, __LINE__)
 
 /* Significant digits on which two numbers agree, as NIST counts them (log relative error), 0 to 15. */
-static inline double digits_agreed(double got, double want)
-{
+static inline double digits_agreed(double got, double want) {
     double gap = want == 0.0 ? fabs(got) : fabs(got - want) / fabs(want);
     if (isnan(gap) || gap >= 1.0)
         return 0.0;

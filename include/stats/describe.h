@@ -11,7 +11,7 @@ double *sorted_copy(struct arena *arena, const double *values, size_t n); /* nev
 
 /* NaN where undefined: all at n = 0; sd at n = 1; skewness where nothing varies.
  * sd has divisor n - 1; skewness is m3 / m2^1.5 (divisor n); quartiles are type 7.
- * Two compensated passes over values scaled by a power of two: no overflow up to 1e300. */
+ * Two passes with sums in extended precision: no overflow up to 1e300. */
 struct description {
     size_t n;
     double mean, sd, minimum, lower_quartile, median, upper_quartile, maximum, skewness;
@@ -47,7 +47,7 @@ double median_absolute_deviation(const double *sorted, size_t n);
 double robust_z(double value, double median, double deviation);
 
 /* Shapiro-Wilk by Royston 1995 (Appl Stat 44:547, AS R94); n = 3 exactly. Status too-few below 3, beyond-method above
- * 5,000, no-variance for constants (a range below 1e-10 of the largest size included). */
+ * 5,000, no-variance for constants (a range within rounding of the largest size included). */
 struct shapiro_wilk {
     enum status status;
     double w, p;

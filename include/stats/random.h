@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Random numbers that depend on the plan's seed and the task's name alone: one generator per task, the same digits on any
- * machine and any number of threads. xoshiro256** (Blackman & Vigna 2021, ACM Trans Math Softw 47:36), its 256 bits of
- * state the SHA-256 of seed and name. Not for secrets. */
+/* Random numbers that depend on the plan's seed and the task's name alone: one generator per task, the same digits on
+ * any machine and any number of threads. xoshiro256** (Blackman & Vigna 2021, ACM Trans Math Softw 47:36), its 256 bits
+ * of state the SHA-256 of seed and name. Not for secrets. */
 #ifndef EVENHAND_STATS_RANDOM_H
 #define EVENHAND_STATS_RANDOM_H
 #include <stddef.h>
