@@ -24,8 +24,8 @@ struct reader {
 enum field_end { FIELD_FOLLOWS, RECORD_ENDS, FIELD_BAD };
 
 static bool refuse(struct reader *reader, size_t line, size_t column, const char *what) {
-    return fault_at(reader->fault, FAULT_INPUT, line, column, "%s, line %zu, column %zu: %s", reader->name, line, column,
-        what);
+    return fault_at(reader->fault, FAULT_INPUT, line, column, "%s, line %zu, column %zu: %s", reader->name, line,
+        column, what);
 }
 
 static void reader_init(struct reader *reader, const char *name, const char *bytes, size_t length, char delimiter,

@@ -141,8 +141,8 @@ static int fill(sqlite3 *database, const struct store_birth *birth, const char *
         code = insert_file(database, file, at, birth->by);
         code = code == SQLITE_OK ? insert_table(database, file->number, &birth->tables[f]) : code;
     }
-    code = code == SQLITE_OK ? insert_texts(database, "INSERT INTO plan(number, version, entered_at, text) VALUES(1, 0, "
-        "?1, ?2)", plan, 2) : code;
+    code = code == SQLITE_OK ? insert_texts(database, "INSERT INTO plan(number, version, entered_at, text) VALUES(1, "
+        "0, ?1, ?2)", plan, 2) : code;
     code = code == SQLITE_OK ? insert_values(database, birth, at) : code;
     return code == SQLITE_OK ? insert_record(database, birth, at, arena) : code;
 }
@@ -173,8 +173,8 @@ static bool write_out(sqlite3 *database, const char *path, struct fault *fault) 
     sqlite3_int64 length;
     unsigned char *bytes = sqlite3_serialize(database, "main", &length, 0);
     if (!bytes) {
-        return fault_set(fault, FAULT_SYSTEM, "%s would be larger than this machine's memory or 2 GB; load fewer columns "
-            "or records", path);
+        return fault_set(fault, FAULT_SYSTEM, "%s would be larger than this machine's memory or 2 GB; load fewer "
+            "columns or records", path);
     }
     bool done = newfile_write(path, bytes, (size_t)length, fault);
     sqlite3_free(bytes);

@@ -14,12 +14,13 @@ static bool make_folder(char folder[64], struct fault *fault) {
     snprintf(folder, 64, "/tmp/evenhand-%u", (unsigned)getuid());
     struct stat there;
     if (mkdir(folder, 0700) != 0 && errno != EEXIST) {
-        return fault_set(fault, FAULT_SYSTEM, "%s, the folder for locks, cannot be made (%s); see to /tmp and try again",
+        return fault_set(fault, FAULT_SYSTEM,
+            "%s, the folder for locks, cannot be made (%s); see to /tmp and try again",
             folder, strerror(errno));
     }
     if (lstat(folder, &there) != 0 || !S_ISDIR(there.st_mode) || there.st_uid != getuid() || there.st_mode & 077) {
-        return fault_set(fault, FAULT_SYSTEM, "%s, the folder for locks, is not a folder of this account alone; remove it "
-            "and try again", folder);
+        return fault_set(fault, FAULT_SYSTEM, "%s, the folder for locks, is not a folder of this account alone; remove "
+            "it and try again", folder);
     }
     return true;
 }
@@ -28,8 +29,8 @@ static bool refuse_held(const char *path, int file, struct fault *fault) {
     char holder[32];
     ssize_t length = pread(file, holder, sizeof holder - 1, 0);
     holder[length > 0 ? length : 0] = '\0';
-    return fault_set(fault, FAULT_REFUSED, "%s is open already in another Evenhand (process %s); use its page, or close "
-        "it and try again", path, *holder ? holder : "unknown");
+    return fault_set(fault, FAULT_REFUSED, "%s is open already in another Evenhand (process %s); use its page, or "
+        "close it and try again", path, *holder ? holder : "unknown");
 }
 
 /* The descriptor stays open on purpose: the system lets go of the lock when the process ends, however it ends. */
@@ -46,8 +47,8 @@ bool store_lock(const char *path, struct fault *fault) {
         (unsigned long long)there.st_ino);
     int file = open(name, O_RDWR | O_CREAT | O_CLOEXEC | O_NOFOLLOW, 0600);
     if (file < 0) {
-        return fault_set(fault, FAULT_SYSTEM, "%s, the lock on %s, cannot be made (%s); see to /tmp and try again", name,
-            path, strerror(errno));
+        return fault_set(fault, FAULT_SYSTEM, "%s, the lock on %s, cannot be made (%s); see to /tmp and try again",
+            name, path, strerror(errno));
     }
     if (flock(file, LOCK_EX | LOCK_NB) != 0) {
         refuse_held(path, file, fault);

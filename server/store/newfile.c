@@ -10,7 +10,8 @@
 #include <unistd.h>
 
 bool newfile_refuse_existing(const char *path, struct fault *fault) {
-    return fault_set(fault, FAULT_REFUSED, "%s is there already and stays as it is; choose another name or move it away",
+    return fault_set(fault, FAULT_REFUSED,
+        "%s is there already and stays as it is; choose another name or move it away",
         path);
 }
 

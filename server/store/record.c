@@ -49,8 +49,8 @@ static int add_decision(sqlite3_stmt *statement, const struct stored_decision *d
 int record_add(sqlite3 *database, struct arena *arena, uint32_t last, const char *hash,
     struct stored_decision *decisions, size_t count) {
     sqlite3_stmt *statement = NULL;
-    int code = sqlite3_prepare_v2(database, "INSERT INTO decisions(" DECISION_COLUMNS ") VALUES(?1, ?2, ?3, ?4, ?5, ?6, "
-        "?7, ?8, ?9, ?10, ?11, ?12, ?13, ?14, ?15, ?16)", -1, &statement, NULL);
+    int code = sqlite3_prepare_v2(database, "INSERT INTO decisions(" DECISION_COLUMNS ") VALUES(?1, ?2, ?3, ?4, ?5, "
+        "?6, ?7, ?8, ?9, ?10, ?11, ?12, ?13, ?14, ?15, ?16)", -1, &statement, NULL);
     for (size_t i = 0; i < count && code == SQLITE_OK; i++) {
         struct stored_decision *decision = &decisions[i];
         BUG_IF(!decision->by || !decision->kind || !decision->blinding || !decision->body);

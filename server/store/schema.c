@@ -9,7 +9,7 @@ struct object {
 };
 
 #define REFUSE(action, table)                                                                                          \
-    {"no_" action "_" table, "CREATE TRIGGER no_" action "_" table " BEFORE " action " ON " table                       \
+    {"no_" action "_" table, "CREATE TRIGGER no_" action "_" table " BEFORE " action " ON " table                      \
         " BEGIN SELECT RAISE(ABORT, 'rows of " table " are kept as they are'); END"}
 /* An INSERT OR REPLACE would take a row away without a DELETE: only the next number may come. */
 #define NEXT_ONLY(table)                                                                                               \

@@ -43,11 +43,11 @@ static bool check_marks(struct store *store, struct fault *fault) {
         return inner_fault(store->database, code, store->path, fault);
     }
     if (application != APPLICATION || format < 1) {
-        return fault_set(fault, FAULT_INPUT, "%s: this SQLite file belongs to another program and is no study; a study is "
-            "made by `evenhand load`", store->path);
+        return fault_set(fault, FAULT_INPUT, "%s: this SQLite file belongs to another program and is no study; a study "
+            "is made by `evenhand load`", store->path);
     }
-    return format <= FORMAT || fault_set(fault, FAULT_INPUT, "%s: a newer Evenhand made this study (format %lld, this one "
-        "reads up to %d); open it with that", store->path, (long long)format, FORMAT);
+    return format <= FORMAT || fault_set(fault, FAULT_INPUT, "%s: a newer Evenhand made this study (format %lld, this "
+        "one reads up to %d); open it with that", store->path, (long long)format, FORMAT);
 }
 
 static bool settle(struct store *store, struct fault *fault) {
@@ -63,12 +63,13 @@ static bool check_inside(struct store *store, off_t size, struct fault *fault) {
     char differs[64];
     int code = schema_check(store->database, differs);
     if (code == SQLITE_OK && *differs) {
-        return fault_set(fault, FAULT_INPUT, "%s: the study was altered: %s is not as this program makes it; take a copy "
-            "kept elsewhere", store->path, differs);
+        return fault_set(fault, FAULT_INPUT, "%s: the study was altered: %s is not as this program makes it; take a "
+            "copy kept elsewhere", store->path, differs);
     }
     sqlite3_int64 wrong = 0;
     if (code == SQLITE_OK && size <= QUICK_CHECK_BYTES) {
-        code = inner_number(store->database, "SELECT count(*) FROM pragma_quick_check WHERE quick_check <> 'ok'", &wrong);
+        code = inner_number(store->database, "SELECT count(*) FROM pragma_quick_check WHERE quick_check <> 'ok'",
+            &wrong);
     }
     code = code == SQLITE_OK && wrong ? SQLITE_CORRUPT : code;
     return code == SQLITE_OK || inner_fault(store->database, code, store->path, fault);
@@ -77,7 +78,8 @@ static bool check_inside(struct store *store, off_t size, struct fault *fault) {
 static bool open_database(struct store *store, struct fault *fault) {
     char *real = realpath(store->path, NULL); /* also keeps SQLite's special names out */
     if (!real) {
-        return fault_set(fault, FAULT_SYSTEM, "%s cannot be reached (%s); check its folder", store->path, strerror(errno));
+        return fault_set(fault, FAULT_SYSTEM, "%s cannot be reached (%s); check its folder", store->path,
+            strerror(errno));
     }
     /* Read-write even for readers, so that a journal left by a kill can be rolled back; without permission to write
      * SQLite opens read-only by itself. */
@@ -234,8 +236,8 @@ static int take_received(struct store *store, sqlite3_stmt *statement, void *res
 bool store_received(struct store *store, struct arena *arena, uint32_t number, struct store_file *file,
     struct fault *fault) {
     struct rows rows = {.arena = arena, .size = sizeof *file};
-    bool done = query(store, "SELECT " FILE_COLUMNS " FROM received WHERE ?1 IN (0, number) ORDER BY number DESC LIMIT 1",
-        number, NULL, take_received, &rows, fault);
+    bool done = query(store, "SELECT " FILE_COLUMNS " FROM received WHERE ?1 IN (0, number) ORDER BY number DESC "
+        "LIMIT 1", number, NULL, take_received, &rows, fault);
     size_t count;
     struct store_file *found = hand_over(&rows, &count);
     if (done && !count) {
@@ -256,8 +258,8 @@ static int take_decision(struct store *store, sqlite3_stmt *statement, void *res
 bool store_decisions(struct store *store, struct arena *arena, uint32_t after, struct stored_decision **decisions,
     size_t *count, struct fault *fault) {
     struct rows rows = {.arena = arena, .size = sizeof **decisions};
-    bool done = query(store, "SELECT " DECISION_COLUMNS " FROM decisions WHERE number > ?1 ORDER BY number", after, NULL,
-        take_decision, &rows, fault);
+    bool done = query(store, "SELECT " DECISION_COLUMNS " FROM decisions WHERE number > ?1 ORDER BY number", after,
+        NULL, take_decision, &rows, fault);
     *decisions = hand_over(&rows, count);
     return done;
 }
@@ -289,7 +291,8 @@ bool store_version(struct store *store, uint32_t *version, char head[HASH_SIZE],
 bool store_changed(struct store *store) {
     sqlite3_int64 seen;
     pthread_mutex_lock(&store->mutex);
-    bool changed = inner_number(store->database, "PRAGMA data_version", &seen) == SQLITE_OK && seen != store->data_version;
+    int code = inner_number(store->database, "PRAGMA data_version", &seen);
+    bool changed = code == SQLITE_OK && seen != store->data_version;
     if (changed) {
         store->data_version = seen;
     }

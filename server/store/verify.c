@@ -73,8 +73,8 @@ static int check_entry_zero(struct store *store, struct store_verdict *verdict) 
     char zero[HASH_SIZE];
     int code = chain_entry_zero(store->database, zero);
     sqlite3_stmt *statement = NULL;
-    code = code == SQLITE_OK ? sqlite3_prepare_v2(store->database, "SELECT count(*) FROM study WHERE key = 'entry_zero' "
-        "AND value = ?1", -1, &statement, NULL) : code;
+    code = code == SQLITE_OK ? sqlite3_prepare_v2(store->database, "SELECT count(*) FROM study WHERE key = "
+        "'entry_zero' AND value = ?1", -1, &statement, NULL) : code;
     if (code == SQLITE_OK) {
         inner_bind(statement, 1, zero);
         code = sqlite3_step(statement);
@@ -137,8 +137,8 @@ static int check_decisions(struct store *store, struct store_verdict *verdict) {
 
 static int check_looks(struct store *store, struct store_verdict *verdict) {
     int code = check_chain(store, "SELECT " LOOK_COLUMNS " FROM looks ORDER BY number", check_look, &verdict->look);
-    return code == SQLITE_OK && verdict->look ? differs(verdict, "look %u does not fit its hash: it or the one before it "
-        "was altered, added or taken away", verdict->look) : code;
+    return code == SQLITE_OK && verdict->look ? differs(verdict, "look %u does not fit its hash: it or the one before "
+        "it was altered, added or taken away", verdict->look) : code;
 }
 
 bool store_verify(struct store *store, struct store_verdict *verdict, struct fault *fault) {

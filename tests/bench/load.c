@@ -117,7 +117,8 @@ int main(int count, char **words) {
         time_shell(csv, database, &times);
     }
     unlink(csv);
-    printf("load %d x %d: %.3f s (reading %.3f, making the study %.3f); sqlite3 .import %.3f s; ratio %.2f (at most 1.00 "
-        "wanted)\n", records, columns, times.total, times.read, times.make, times.shell, times.total / times.shell);
+    printf("load %d x %d: %.3f s (reading %.3f, making the study %.3f); sqlite3 .import %.3f s; ratio %.2f (at most "
+        "1.00 wanted)\n", records, columns, times.total, times.read, times.make, times.shell,
+        times.total / times.shell);
     return times.total <= times.shell ? 0 : 1;
 }

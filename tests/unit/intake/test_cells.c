@@ -30,7 +30,8 @@ static const struct good goods[] = {
     {"header alone", BYTES("pid,sex"), "pid|sex", "comma", "UTF-8", 0},
     {"header alone, with newline", BYTES("pid,sex\n"), "pid|sex", "comma", "UTF-8", 0},
     {"one column", BYTES("pid\n1\n2\n"), "pid/2:1/3:2", "none (one column)", "UTF-8", 0},
-    {"one column, a blank that is meant", BYTES("pid\n1\n\"\"\n2\n"), "pid/2:1/3:/4:2", "none (one column)", "UTF-8", 0},
+    {"one column, a blank that is meant", BYTES("pid\n1\n\"\"\n2\n"), "pid/2:1/3:/4:2", "none (one column)", "UTF-8",
+        0},
     {"RFC 4180 2.6: comma, newline and quote in quotes", BYTES("a,b\n\"x,\r\ny\",\"say \"\"so\"\"\"\n3,4\n"),
         "a|b/2:x,\r\ny|say \"so\"/4:3|4", "comma", "UTF-8", 0},
     {"quotes around everything", BYTES("\"a\",\"b\"\n\"1\",\"2\"\n"), "a|b/2:1|2", "comma", "UTF-8", 0},
@@ -39,11 +40,13 @@ static const struct good goods[] = {
     {"empty fields, the last too", BYTES("a,b,c\n,,\n1,,"), "a|b|c/2:||/3:1||", "comma", "UTF-8", 0},
     {"empty quoted field", BYTES("a,b\n\"\",\"\"\n"), "a|b/2:|", "comma", "UTF-8", 0},
     {"spaces are kept in cells, not around names", BYTES(" a ,\tb\n F , \n"), "a|b/2: F | ", "comma", "UTF-8", 0},
-    {"a quote inside a plain field is text", BYTES("a,b\n5\" pipe,it\"s\n"), "a|b/2:5\" pipe|it\"s", "comma", "UTF-8", 0},
+    {"a quote inside a plain field is text", BYTES("a,b\n5\" pipe,it\"s\n"), "a|b/2:5\" pipe|it\"s", "comma", "UTF-8",
+        0},
     {"blank lines at every place", BYTES("\n\r\na,b\n\n1,2\n  \n3,4\n\n"), "a|b/5:1|2/7:3|4", "comma", "UTF-8", 5},
     {"blank lines by CR", BYTES("a,b\r\r1,2\r"), "a|b/3:1|2", "comma", "UTF-8", 1},
     {"space at the very end", BYTES("a,b\n1,2\n  "), "a|b/2:1|2", "comma", "UTF-8", 1},
-    {"semicolon, decimal comma", BYTES("pid;bmi\n1;27,5\n2;31,0\n"), "pid|bmi/2:1|27,5/3:2|31,0", "semicolon", "UTF-8", 0},
+    {"semicolon, decimal comma", BYTES("pid;bmi\n1;27,5\n2;31,0\n"), "pid|bmi/2:1|27,5/3:2|31,0", "semicolon", "UTF-8",
+        0},
     {"semicolon, commas in a quoted name", BYTES("\"a,b,c\";d\n1;2\n"), "a,b,c|d/2:1|2", "semicolon", "UTF-8", 0},
     {"tab", BYTES("pid\tname\n1\tx, y\n2\t\n"), "pid|name/2:1|x, y/3:2|", "tab", "UTF-8", 0},
     {"a line of one tab is a record of two blanks", BYTES("a\tb\n\t\n"), "a|b/2:|", "tab", "UTF-8", 0},
@@ -55,8 +58,8 @@ static const struct good goods[] = {
         "semicolon", "UTF-8", 0},
     {"UTF-8 with its mark", BYTES("\xEF\xBB\xBFpid,n\n1,\xC3\xA9\n"), "pid|n/2:1|\xC3\xA9", "comma", "UTF-8", 0},
     {"UTF-8 without", BYTES("pid,n\n1,\xE2\x82\xAC\n"), "pid|n/2:1|\xE2\x82\xAC", "comma", "UTF-8", 0},
-    {"Windows-1252", BYTES("pid,n\n1,Ren\xE9\n2,\x80\x99\n"), "pid|n/2:1|Ren\xC3\xA9/3:2|\xE2\x82\xAC\xE2\x84\xA2", "comma",
-        "Windows-1252", 0},
+    {"Windows-1252", BYTES("pid,n\n1,Ren\xE9\n2,\x80\x99\n"), "pid|n/2:1|Ren\xC3\xA9/3:2|\xE2\x82\xAC\xE2\x84\xA2",
+        "comma", "Windows-1252", 0},
     {"UTF-16 LE with its mark", BYTES("\xFF\xFE" "a\0,\0b\0\n\0" "1\0,\0\xE9\0"), "a|b/2:1|\xC3\xA9", "comma",
         "UTF-16, little-endian", 0},
     {"UTF-16 BE with its mark, a pair", BYTES("\xFE\xFF\0a\0,\0b\0\n\0" "1\0,\xD8\x3D\xDE\x00"),
@@ -126,12 +129,14 @@ static const struct bad bads[] = {
     {"empty", BYTES(""), 1, 1, "export.csv, line 1, column 1: the file is empty; export it again and load that"},
     {"blank lines alone", BYTES("\n \n\r\n"), 1, 1, "export.csv, line 1, column 1: no header, only blank lines; the "
         "first line must name the columns; export the file again and load that"},
-    {"a mark alone", BYTES("\xEF\xBB\xBF"), 1, 1, "export.csv, line 1, column 1: no header, only blank lines; the first "
-        "line must name the columns; export the file again and load that"},
+    {"a mark alone", BYTES("\xEF\xBB\xBF"), 1, 1, "export.csv, line 1, column 1: no header, only blank lines; the "
+        "first line must name the columns; export the file again and load that"},
     {"numbers for a header", BYTES("1,2.5,3\n4,5,6\n"), 1, 1, "export.csv, line 1, column 1: no header: the first line "
         "holds only numbers; put a line with the columns' names above it and load again"},
-    {"too few", BYTES("a,b,c\n1,2,3\n4,5\n"), 3, 2, "export.csv, line 3, column 2: 2 fields where the header has 3" AGAIN},
-    {"too many", BYTES("a,b\n1,2\n4,5,6,7\n"), 3, 3, "export.csv, line 3, column 3: 4 fields where the header has 2" AGAIN},
+    {"too few", BYTES("a,b,c\n1,2,3\n4,5\n"), 3, 2,
+        "export.csv, line 3, column 2: 2 fields where the header has 3" AGAIN},
+    {"too many", BYTES("a,b\n1,2\n4,5,6,7\n"), 3, 3,
+        "export.csv, line 3, column 3: 4 fields where the header has 2" AGAIN},
     {"one field", BYTES("a,b\nx\n"), 2, 1, "export.csv, line 2, column 1: 1 field where the header has 2" AGAIN},
     {"a comma where the header has one column", BYTES("pid\n\"a\"\nx\ny,z\n"), 4, 2,
         "export.csv, line 4, column 2: 2 fields where the header has 1" AGAIN},
@@ -143,12 +148,12 @@ static const struct bad bads[] = {
         "never closed; close it or take it out and load again"},
     {"unclosed quote in the header", BYTES("\"a,b\n1,2\n"), 1, 1, "export.csv, line 1, column 1: the quote opened here "
         "is never closed; close it or take it out and load again"},
-    {"a quote as the last byte", BYTES("a,b\n1,\""), 2, 2, "export.csv, line 2, column 2: the quote opened here is never "
-        "closed; close it or take it out and load again"},
+    {"a quote as the last byte", BYTES("a,b\n1,\""), 2, 2, "export.csv, line 2, column 2: the quote opened here is "
+        "never closed; close it or take it out and load again"},
     {"text after a closing quote", BYTES("a,b\n1,\"x\"y\n"), 2, 2, "export.csv, line 2, column 2: text after a closing "
         "quote; a quote inside a quoted field is written twice; mend the line and load again"},
-    {"space after a closing quote", BYTES("a,b\n\"x\" ,1\n"), 2, 1, "export.csv, line 2, column 1: text after a closing "
-        "quote; a quote inside a quoted field is written twice; mend the line and load again"},
+    {"space after a closing quote", BYTES("a,b\n\"x\" ,1\n"), 2, 1, "export.csv, line 2, column 1: text after a "
+        "closing quote; a quote inside a quoted field is written twice; mend the line and load again"},
     {"NUL in a cell", BYTES("a,b\n1,2\n1,x\0y\n"), 3, 2, "export.csv, line 3, column 2: " NUL_END},
     {"NUL in a quoted cell", BYTES("a,b\n\"x\n\0\",2\n"), 3, 1, "export.csv, line 3, column 1: " NUL_END},
     {"NUL in the header", BYTES("a,b\0\n1,2\n"), 1, 2, "export.csv, line 1, column 2: " NUL_END},
@@ -157,14 +162,14 @@ static const struct bad bads[] = {
         "give it one and load again"},
     {"name of spaces", BYTES("\n\na,  \n1,2\n"), 3, 2, "export.csv, line 3, column 2: this column has no name in the "
         "header; give it one and load again"},
-    {"comma at the header's end", BYTES("a,b,\n1,2,\n"), 1, 3, "export.csv, line 1, column 3: this column has no name in "
-        "the header; give it one and load again"},
+    {"comma at the header's end", BYTES("a,b,\n1,2,\n"), 1, 3, "export.csv, line 1, column 3: this column has no name "
+        "in the header; give it one and load again"},
     {"name twice", BYTES("pid,sbp,sbp\n1,2,3\n"), 1, 3, "export.csv, line 1, column 3: the name sbp stands in column 2 "
         "already; give each column a name of its own and load again"},
     {"name twice once trimmed", BYTES("sbp, sbp\n1,2\n"), 1, 2, "export.csv, line 1, column 2: the name sbp stands in "
         "column 1 already; give each column a name of its own and load again"},
-    {"not UTF-8 after its mark", BYTES("\xEF\xBB\xBFpid\n1\xE9\n"), 2, 2, "export.csv, line 2, byte 2: the file's first "
-        "bytes say UTF-8, but this byte is not UTF-8; save the file as UTF-8 and load that"},
+    {"not UTF-8 after its mark", BYTES("\xEF\xBB\xBFpid\n1\xE9\n"), 2, 2, "export.csv, line 2, byte 2: the file's "
+        "first bytes say UTF-8, but this byte is not UTF-8; save the file as UTF-8 and load that"},
     {"neither UTF-8 nor Windows-1252", BYTES("a,b\r\n1,\xE9\x81\n"), 2, 4, "export.csv, line 2, byte 4: a byte that "
         "neither UTF-8 nor Windows-1252 explains; save the file as UTF-8 and load that"},
     {"UTF-16, odd", BYTES("\xFF\xFE" "a\0\n\0b"), 2, 1, "export.csv, line 2, byte 1: half a character of UTF-16 at the "

@@ -72,7 +72,8 @@ static bool create(const char *path, struct fault *fault) {
     struct store_file file = {.name = "export.csv", .bytes = csv, .length = sizeof csv - 1};
     struct store_table table = {cells.records, cells.columns, cells.names, cells.bytes, cells.start};
     const struct store_value values[] = {{"letters", "L=A W=B"}, {"seed", "20261201"}};
-    struct stored_decision decisions[] = {decision_of(NULL, "code for missing"), decision_of("Q2", "caf\xC3\xA9 \"'\n")};
+    struct stored_decision decisions[] = {decision_of(NULL, "code for missing"),
+        decision_of("Q2", "caf\xC3\xA9 \"'\n")};
     decisions[0].kind = "missing-code";
     decisions[0].from = decisions[0].to = NULL;
     decisions[1].at = "2026-12-01T10:00:00Z";
@@ -188,7 +189,8 @@ static void can_be_read_with_sql(void **state) {
     sqlite3 *database;
     sqlite3_stmt *statement;
     sqlite3_open_v2(path, &database, SQLITE_OPEN_READONLY, NULL);
-    assert_int_equal(sqlite3_prepare_v2(database, "SELECT group_concat(record || c1 || c2 || '[' || c3 || ']') FROM cells",
+    assert_int_equal(sqlite3_prepare_v2(database,
+        "SELECT group_concat(record || c1 || c2 || '[' || c3 || ']') FROM cells",
         -1, &statement, NULL), SQLITE_OK);
     assert_int_equal(sqlite3_step(statement), SQLITE_ROW);
     assert_string_equal(sqlite3_column_text(statement, 0), "1Q1L[142],2Q2W[ 999],3Q3L[]");
@@ -230,7 +232,8 @@ static void overwrites_nothing(void **state) {
     fclose(file);
     assert_false(create(path, &fault));
     assert_int_equal(fault.code, FAULT_REFUSED);
-    snprintf(wanted, sizeof wanted, "%s is there already and stays as it is; choose another name or move it away", path);
+    snprintf(wanted, sizeof wanted, "%s is there already and stays as it is; choose another name or move it away",
+        path);
     assert_string_equal(fault.message, wanted);
     char kept[16] = "";
     file = fopen(path, "r");
@@ -253,7 +256,8 @@ static void lets_rows_only_be_added(void **state) {
         {"INSERT OR REPLACE INTO study VALUES('letters', 'x')", "rows of study are kept as they are"},
         {"UPDATE received SET name = 'x'", "rows of received are kept as they are"},
         {"DELETE FROM received", "rows of received are kept as they are"},
-        {"INSERT OR REPLACE INTO received VALUES(1, 0, 'x', 'x', 'x', 'x', x'00')", "rows of received are numbered one by one"},
+        {"INSERT OR REPLACE INTO received VALUES(1, 0, 'x', 'x', 'x', 'x', x'00')",
+            "rows of received are numbered one by one"},
         {"UPDATE plan SET text = '{}'", "rows of plan are kept as they are"},
         {"DELETE FROM plan", "rows of plan are kept as they are"},
         {"REPLACE INTO plan VALUES(1, 0, 'x', 'x')", "rows of plan are numbered one by one"},
@@ -266,7 +270,8 @@ static void lets_rows_only_be_added(void **state) {
         {"REPLACE INTO cells VALUES(1, 'x', 'x', 'x')", "rows of cells are kept as they are"},
         {"UPDATE decisions SET reason = 'x'", "rows of decisions are kept as they are"},
         {"DELETE FROM decisions WHERE number = 2", "rows of decisions are kept as they are"},
-        {"REPLACE INTO decisions SELECT * FROM decisions WHERE number = 2", "rows of decisions are numbered one by one"},
+        {"REPLACE INTO decisions SELECT * FROM decisions WHERE number = 2",
+            "rows of decisions are numbered one by one"},
         {"INSERT INTO decisions(number, entered_at, entered_by, kind, blinding, body, hash) "
             "VALUES(9, 'x', 'x', 'x', 'x', 'x', 'x')", "rows of decisions are numbered one by one"},
         {"INSERT INTO looks VALUES(2, 'x', 'x', 'x', 'x', 1, 'x')", "rows of looks are numbered one by one"},
@@ -316,8 +321,8 @@ static void appends_all_or_none(void **state) {
 
     assert_false(store_append(reader, &arena, 5, &late, 1, &fault));
     assert_int_equal(fault.code, FAULT_REFUSED);
-    snprintf(wanted, sizeof wanted, "%s: the study may not be written and nothing was changed; allow writing to the file "
-        "and its folder and try again", path);
+    snprintf(wanted, sizeof wanted, "%s: the study may not be written and nothing was changed; allow writing to the "
+        "file and its folder and try again", path);
     assert_string_equal(fault.message, wanted);
 
     fault_init(&fault);
@@ -494,16 +499,16 @@ static const struct refusal {
         ": this SQLite file belongs to another program and is no study" NO_STUDY},
     {"newer", make_newer, FAULT_INPUT,
         ": a newer Evenhand made this study (format 2, this one reads up to 1); open it with that"},
-    {"trigger dropped", drop_trigger, FAULT_INPUT, ": the study was altered: no_UPDATE_decisions is not as this program "
-        "makes it; take a copy kept elsewhere"},
+    {"trigger dropped", drop_trigger, FAULT_INPUT, ": the study was altered: no_UPDATE_decisions is not as this "
+        "program makes it; take a copy kept elsewhere"},
     {"table dropped", drop_table, FAULT_INPUT, ": the study was altered: looks is not as this program makes it; take a "
         "copy kept elsewhere"},
-    {"table widened", widen_table, FAULT_INPUT, ": the study was altered: decisions is not as this program makes it; take "
-        "a copy kept elsewhere"},
-    {"trigger of somebody else's", add_trigger, FAULT_INPUT, ": the study was altered: a trigger that is not its own is "
-        "not as this program makes it; take a copy kept elsewhere"},
-    {"cells without their trigger", soften_cells, FAULT_INPUT, ": the study was altered: no_UPDATE_cells is not as this "
-        "program makes it; take a copy kept elsewhere"},
+    {"table widened", widen_table, FAULT_INPUT, ": the study was altered: decisions is not as this program makes it; "
+        "take a copy kept elsewhere"},
+    {"trigger of somebody else's", add_trigger, FAULT_INPUT, ": the study was altered: a trigger that is not its own "
+        "is not as this program makes it; take a copy kept elsewhere"},
+    {"cells without their trigger", soften_cells, FAULT_INPUT, ": the study was altered: no_UPDATE_cells is not as "
+        "this program makes it; take a copy kept elsewhere"},
     {"cut off", cut_off, FAULT_INPUT, DAMAGED},
     {"scribbled over", scribble, FAULT_INPUT, DAMAGED},
 };
@@ -603,7 +608,8 @@ static void alter_behind(const char *path, const char *table, const char *sql) {
     sqlite3_open(path, &database);
     struct text kept;
     text_init(&kept);
-    char *query = sqlite3_mprintf("SELECT name, sql FROM sqlite_schema WHERE type = 'trigger' AND tbl_name = %Q", table);
+    char *query = sqlite3_mprintf("SELECT name, sql FROM sqlite_schema WHERE type = 'trigger' AND tbl_name = %Q",
+        table);
     sqlite3_stmt *statement;
     sqlite3_prepare_v2(database, query, -1, &statement, NULL);
     struct text drops;
@@ -636,14 +642,16 @@ static const struct alteration {
     {"decisions", "UPDATE decisions SET kind = 'note' WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "UPDATE decisions SET participant = 'Q1' WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "UPDATE decisions SET column_name = 'x' WHERE number = 2", 2, 0, DECISION_2},
-    {"decisions", "UPDATE decisions SET value_from = value_to, value_to = value_from WHERE number = 2", 2, 0, DECISION_2},
+    {"decisions", "UPDATE decisions SET value_from = value_to, value_to = value_from WHERE number = 2", 2, 0,
+        DECISION_2},
     {"decisions", "UPDATE decisions SET reason = '' WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "UPDATE decisions SET evidence = '' WHERE number = 2", 2, 0, DECISION_2}, /* NULL is not "" */
     {"decisions", "UPDATE decisions SET discrepancy = 'd' WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "UPDATE decisions SET blinding = 'coded' WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "UPDATE decisions SET body = '{}' WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "UPDATE decisions SET state_sha256 = 'x' WHERE number = 2", 2, 0, DECISION_2},
-    {"decisions", "UPDATE decisions SET hash = replace(hash, substr(hash, 1, 1), 'g') WHERE number = 2", 2, 0, DECISION_2},
+    {"decisions", "UPDATE decisions SET hash = replace(hash, substr(hash, 1, 1), 'g') WHERE number = 2", 2, 0,
+        DECISION_2},
     {"decisions", "UPDATE decisions SET number = 7 WHERE number = 2", 2, 0, DECISION_2},
     {"decisions", "DELETE FROM decisions WHERE number = 2", 2, 0, DECISION_2},
     {"looks", "UPDATE looks SET exhibit = 'flow' WHERE number = 1", 0, 1, LOOK_1},
@@ -786,7 +794,8 @@ static void keeps_what_it_acknowledged(void **state) {
             arena_init(&arena);
             struct store *store = store_open(path, false, &fault);
             while (store && store_version(store, &version, NULL, &fault)) {
-                struct stored_decision batch[] = {decision_of("Q1", "a"), decision_of("Q2", "b"), decision_of("Q3", "c")};
+                struct stored_decision batch[] = {decision_of("Q1", "a"), decision_of("Q2", "b"), decision_of("Q3",
+                    "c")};
                 if (!store_append(store, &arena, version, batch, 3, &fault) ||
                     write(ends[1], &batch[2].number, sizeof batch[2].number) < 0) {
                     break;
@@ -927,8 +936,8 @@ static void locks_one_server_per_study(void **state) {
     assert_int_equal(ready, 'y');
     assert_false(store_lock(path, &fault));
     assert_int_equal(fault.code, FAULT_REFUSED);
-    snprintf(wanted, sizeof wanted, "%s is open already in another Evenhand (process %ld); use its page, or close it and "
-        "try again", path, (long)child);
+    snprintf(wanted, sizeof wanted, "%s is open already in another Evenhand (process %ld); use its page, or close it "
+        "and try again", path, (long)child);
     assert_string_equal(fault.message, wanted);
     fault_init(&fault);
     assert_true(store_lock(other, &fault)); /* another study is another lock */
