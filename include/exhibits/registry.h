@@ -71,6 +71,7 @@ struct view {
     struct frame *frame, *received; /* borrowed */
     struct arms arms;
     struct study_facts facts;
+    char head[HASH_SIZE]; /* of the chain at the frame's version */
     const struct asked *asked;
     size_t asked_count;
     int outcome, visit, covariate, variable, arm; /* NOWHERE where the exhibit takes none; visit indexes the outcome's */

@@ -1,0 +1,194 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+#include "exhibits/words.h"
+#include "draw/number.h"
+#include <ctype.h>
+#include <math.h>
+#include <stdio.h>
+#include <string.h>
+
+/* ---- decisions and the chain ---- */
+
+const char *head_of(const struct view *view) {
+    return view->head;
+}
+
+static bool hidden(const struct view *view, const struct decision *decision) {
+    return decision->column && arms_hide_column(view->frame, decision->column);
+}
+
+static const char *or_nothing(const char *text) {
+    return text ? *text ? text : "blank" : "nothing";
+}
+
+static const char *label_of(const struct view *view, const char *column) {
+    int variable = column ? plan_variable(view->frame->plan, column) : NOWHERE;
+    return variable != NOWHERE ? view->frame->plan->variables[variable].label : column ? column : "";
+}
+
+const char *decision_words(const struct view *view, const struct decision *decision) {
+    struct arena *arena = view->arena;
+    const char *label = label_of(view, decision->column), *who = decision->participant ? decision->participant : "";
+    if (hidden(view, decision)) {
+        return "About a column whose texts are not shown while blinded";
+    }
+    switch (decision->kind) {
+    case DECISION_READ_AS:
+        return arena_format(arena, "%s: \"%s\" is read as \"%s\"", label, or_nothing(decision->from), or_nothing(decision->to));
+    case DECISION_MISSING_CODE:
+        return arena_format(arena, "%s: %s is a code for missing%s%s", label, decision->value, decision->meaning ? ", " : "",
+            decision->meaning ? decision->meaning : "");
+    case DECISION_NUMBER_FORMAT:
+        return arena_format(arena, "%s: decimal %s", label, decision->decimal[0] == ',' ? "comma" : "point");
+    case DECISION_CORRECT:
+    case DECISION_SET_MISSING:
+        return arena_format(arena, "%s of %s: %s becomes %s", label, who, or_nothing(decision->from),
+            decision->kind == DECISION_CORRECT ? or_nothing(decision->to) : "missing");
+    case DECISION_CONFIRM:
+        return arena_format(arena, "%s%s%s: %s is right as recorded", label, *who ? " of " : "", who, or_nothing(decision->value));
+    case DECISION_KEEP_RECORD:
+        return arena_format(arena, "%s: record %u stands", who, decision->row);
+    case DECISION_QUERY:
+        return arena_format(arena, "%s%s%s%s%s", label, *label && *who ? " of " : "", who, *label || *who ? ": " : "",
+            decision->text ? decision->text : "");
+    case DECISION_RESPONSE:
+        return arena_format(arena, "To decision %u: %s", decision->reverses, decision->text ? decision->text : "");
+    case DECISION_EXCLUDE:
+        return arena_format(arena, "%s is left out of the %s set", who, decision->set);
+    case DECISION_FLAG:
+        return arena_format(arena, "%s is shown with and without in %s", who, decision->outcome);
+    case DECISION_SCALE:
+        return arena_format(arena, "%s is analysed on the %s scale", decision->outcome, decision->scale);
+    case DECISION_NOTE:
+        return arena_format(arena, "%s: %s", decision->exhibit, decision->text);
+    case DECISION_UNBLIND:
+        return arena_format(arena, "The study is %s from here on", decision->to);
+    case DECISION_LOCK:
+        return "Data stand still from here on";
+    case DECISION_UNLOCK:
+        return "Data may change again";
+    case DECISION_SIGN:
+        return decision->meaning;
+    case DECISION_REVERSE:
+        return arena_format(arena, "Decision %u is taken back", decision->reverses);
+    default:
+        return decision_rules[decision->kind].says;
+    }
+}
+
+void decision_json(const struct view *view, const struct decision *decision, bool stands, struct json *json) {
+    bool hide = hidden(view, decision);
+    json_object(json);
+    json_field_integer(json, "number", decision->number);
+    json_field_string(json, "at", decision->at);
+    json_field_string(json, "by", decision->by);
+    json_field_string(json, "account", decision->account);
+    json_field_string(json, "kind", decision_rules[decision->kind].name);
+    json_field_string(json, "column", hide ? NULL : decision->column);
+    json_field_string(json, "participant", decision->participant);
+    json_field_string(json, "from", hide ? NULL : decision->from);
+    json_field_string(json, "to", hide ? NULL : decision->to);
+    json_field_string(json, "value", hide ? NULL : decision->value);
+    json_field_string(json, "reason", hide ? NULL : decision->reason);
+    json_field_string(json, "evidence", hide ? NULL : decision->evidence);
+    json_field_string(json, "discrepancy", hide ? NULL : decision->discrepancy);
+    json_field_string(json, "exhibit", decision->exhibit);
+    json_field_string(json, "text", decision->text);
+    json_field_string(json, "words", decision_words(view, decision));
+    json_field_bool(json, "stands", stands);
+    json_field_bool(json, "reversible", stands && decision_rules[decision->kind].reversible);
+    json_field_bool(json, "hidden", hide);
+    json_field_string(json, "blinding", decision->blinding);
+    json_field_string(json, "state_sha256", decision->state);
+    json_field_string(json, "hash", decision->hash);
+    json_close(json);
+}
+
+/* ---- arms and groups ---- */
+
+const struct palette_mark *mark_of(const struct view *view, size_t arm) {
+    return view->arms.pooled ? palette_pooled() : palette_arm(view->arms.coded, view->arms.arm[arm].palette);
+}
+
+const char *contrast_words(const struct view *view, size_t arm) {
+    return arena_format(view->arena, "%s minus %s", view->arms.arm[arm].label, view->arms.arm[view->arms.reference].label);
+}
+
+void arm_json(const struct view *view, size_t arm, struct json *json) {
+    json_field_string(json, "arm", view->arms.arm[arm].code);
+    json_field_string(json, "label", view->arms.arm[arm].label);
+}
+
+const char *grouping_words(const struct view *view, const struct covariate *covariate) {
+    return covariate->number ? arena_format(view->arena, "%s band", covariate->label) : covariate->label;
+}
+
+/* ---- numbers ---- */
+
+int decimals_of(const struct view *view, const struct outcome *outcome, enum scale scale) {
+    enum { LOG_DECIMALS = 3, MOST = 6 };
+    int most = 0;
+    for (size_t i = 0; i < outcome->visit_count; i++) {
+        int here = view->frame->columns[outcome->visits[i].variable]->decimals;
+        most = here > most ? here : most;
+    }
+    return scale == SCALE_LOG10 ? LOG_DECIMALS : most + 1 < MOST ? most + 1 : MOST;
+}
+
+const char *decimal_words(const struct view *view, double value, int decimals) {
+    struct text text;
+    text_init(&text);
+    text_decimal(&text, value, decimals);
+    const char *copy = arena_text(view->arena, text.data);
+    text_release(&text);
+    return copy;
+}
+
+const char *signed_words(const struct view *view, double value, int decimals) {
+    struct text text;
+    text_init(&text);
+    text_signed(&text, value, decimals);
+    const char *copy = arena_text(view->arena, text.data);
+    text_release(&text);
+    return copy;
+}
+
+const char *interval_words(const struct view *view, double low, double high, int decimals) {
+    return arena_format(view->arena, "%s to %s", decimal_words(view, low, decimals), decimal_words(view, high, decimals));
+}
+
+const char *percent_words(const struct view *view, double confidence) {
+    return arena_format(view->arena, "%.15g%%", 100 * confidence);
+}
+
+const char *unit_after(const struct view *view, const char *unit) {
+    return unit && *unit ? arena_format(view->arena, " %s", unit) : "";
+}
+
+const char *lower_first(const struct view *view, const char *text) {
+    char *copy = arena_text(view->arena, text);
+    bool word = isupper((unsigned char)copy[0]) && islower((unsigned char)copy[1]);
+    copy[0] = word ? (char)tolower((unsigned char)copy[0]) : copy[0];
+    return copy;
+}
+
+void direction_words(const struct outcome *outcome, const char **lower, const char **upper) {
+    *lower = outcome->lower_is_better ? "better: it fell" : "worse: it fell";
+    *upper = outcome->lower_is_better ? "worse: it rose" : "better: it rose";
+}
+
+void interval_json(struct json *json, const char *key, double low, double high) {
+    json_key_array(json, key);
+    json_number(json, low);
+    json_number(json, high);
+    json_close(json);
+}
+
+size_t keep_finite(const double *values, size_t count, double *kept) {
+    size_t n = 0;
+    for (size_t i = 0; i < count; i++) {
+        if (!isnan(values[i])) {
+            kept[n++] = values[i];
+        }
+    }
+    return n;
+}
