@@ -42,22 +42,34 @@ struct grouping {
 void grouping_take(struct grouping *grouping, const struct frame *frame, int covariate, struct arena *arena);
 
 /* The design of the one linear model over the members with a follow-up (and, where the plan drops a missing baseline, a
- * baseline): intercept, arm indicators (all but the reference, in shown order), baseline, adjust_for. */
+ * baseline): intercept, arm indicators (all but the reference, in shown order), baseline, adjust_for. With a grouping its levels
+ * stand in the model (once, also where adjust_for names it), members without a level are out, and with `interaction` each
+ * arm has an indicator within each level instead of one over all. */
+struct design_request {
+    const int *adjust; /* indices of covariates */
+    size_t adjust_count;
+    const bool *without; /* [participants] true leaves one out; may be NULL */
+    const struct grouping *by; /* may be NULL */
+    bool interaction;
+};
 struct design {
     size_t rows, columns;
     double **column;        /* [columns][rows] */
     double *y;              /* [rows] follow-up */
     size_t *member;         /* [rows] index into the analysis */
-    size_t *n_of_arm;       /* [arms] */
-    int *arm_column;        /* [arms] column of the arm's indicator, NOWHERE for the reference */
+    size_t *n_of_arm;       /* [arms] rows */
+    int *arm_column;        /* [arms] column of the arm's indicator; NOWHERE: the reference, an arm without rows, interaction */
+    size_t *n_of_cell;      /* [groups * arms] rows; NULL without a grouping */
+    int *cell_column;       /* [groups * arms] interaction: indicator of the arm in the level; NOWHERE where it or the
+                               reference has no rows there */
     int baseline_column;    /* NOWHERE without a baseline */
     size_t baseline_filled; /* rows whose missing baseline took the mean */
     size_t baseline_dropped;
     size_t covariate_filled; /* rows with a missing number in adjust_for that took the mean of the set */
     size_t blank_category;   /* rows where a blank category is its own level */
+    size_t no_level;         /* members with a follow-up whose level in the grouping is missing */
     const char **name;       /* [columns] words: "baseline", "Sex: Male" */
 };
-/* adjust: indices of covariates. without[participant] true leaves one out (may be NULL). */
-void design_take(struct design *design, const struct analysis *analysis, const int *adjust, size_t adjust_count,
-    const bool *without, struct arena *arena);
+void design_take(
+    struct design *design, const struct analysis *analysis, const struct design_request *request, struct arena *arena);
 #endif

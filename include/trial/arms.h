@@ -15,7 +15,7 @@ struct arms {
     size_t count;     /* 1 while pooled or where the plan has no arms */
     size_t reference; /* contrasts are every other arm minus this one: the plan's, or A */
     bool pooled, coded;
-    const int *of;    /* [participants] shown arm, or NOWHERE (no arm or an unlisted one); pooled: 0 for everyone */
+    const int *of;    /* [participants] shown arm (pooled: 0), or NOWHERE for no arm or an unlisted one */
 };
 
 void arms_shown(const struct frame *frame, struct arena *arena, struct arms *arms);

@@ -98,6 +98,7 @@ static double mean_of(const double *values, size_t count) {
 struct filling { /* a design on the way: columns are appended */
     struct design *design;
     const struct analysis *analysis;
+    const struct design_request *request;
     struct arena *arena;
     size_t room;
 };
@@ -120,19 +121,57 @@ static double *add_column(struct filling *filling, const char *name) {
     return design->column[design->columns++] = ARENA_NEW(filling->arena, design->rows, double);
 }
 
+static int group_of_row(const struct filling *filling, size_t row) {
+    const struct grouping *by = filling->request->by;
+    return by ? by->of[filling->analysis->participant[filling->design->member[row]]] : 0;
+}
+
+/* One indicator of an arm, over all rows (group NOWHERE) or within one group; returns its column. */
+static int add_arm(struct filling *filling, size_t arm, int group) {
+    struct design *design = filling->design;
+    const struct arms *arms = filling->analysis->arms;
+    double *x = add_column(filling, arena_format(filling->arena, "%s minus %s%s%s", arms->arm[arm].label,
+        arms->arm[arms->reference].label, group == NOWHERE ? "" : " in ",
+        group == NOWHERE ? "" : filling->request->by->level[group].label));
+    for (size_t r = 0; r < design->rows; r++) {
+        bool here = filling->analysis->arm[design->member[r]] == (int)arm && (group == NOWHERE || group_of_row(filling, r) == group);
+        x[r] = here ? 1 : 0;
+    }
+    return (int)design->columns - 1;
+}
+
 static void add_arms(struct filling *filling) {
     struct design *design = filling->design;
     const struct arms *arms = filling->analysis->arms;
     for (size_t a = 0; a < arms->count; a++) {
-        design->arm_column[a] = NOWHERE;
-        if (a == arms->reference || design->n_of_arm[a] == 0) {
-            continue;
+        bool needed = a != arms->reference && design->n_of_arm[a] > 0 && !filling->request->interaction;
+        design->arm_column[a] = needed ? add_arm(filling, a, NOWHERE) : NOWHERE;
+    }
+}
+
+/* Levels of the grouping (all present but the first), and each arm within each level where asked. */
+static void add_groups(struct filling *filling) {
+    struct design *design = filling->design;
+    const struct grouping *by = filling->request->by;
+    size_t arms = filling->analysis->arms->count, reference = filling->analysis->arms->reference;
+    bool first = true;
+    for (size_t g = 0; by && g < by->count; g++) {
+        size_t here = 0;
+        for (size_t a = 0; a < arms; a++) {
+            here += design->n_of_cell[g * arms + a];
+            design->cell_column[g * arms + a] = NOWHERE;
         }
-        double *x = add_column(filling, arena_format(filling->arena, "%s minus %s", arms->arm[a].label,
-            arms->arm[arms->reference].label));
-        design->arm_column[a] = (int)design->columns - 1;
-        for (size_t r = 0; r < design->rows; r++) {
-            x[r] = filling->analysis->arm[design->member[r]] == (int)a ? 1 : 0;
+        if (here && !first) {
+            double *x = add_column(filling, by->level[g].label);
+            for (size_t r = 0; r < design->rows; r++) {
+                x[r] = group_of_row(filling, r) == (int)g ? 1 : 0;
+            }
+        }
+        first = first && !here;
+        for (size_t a = 0; a < arms && filling->request->interaction; a++) {
+            if (a != reference && design->n_of_cell[g * arms + a] && design->n_of_cell[g * arms + reference]) {
+                design->cell_column[g * arms + a] = add_arm(filling, a, (int)g);
+            }
         }
     }
 }
@@ -200,39 +239,54 @@ static void add_category(struct filling *filling, const struct covariate *covari
     }
 }
 
-static void take_rows(struct filling *filling, const bool *without) {
+static void take_rows(struct filling *filling) {
     struct design *design = filling->design;
     const struct analysis *analysis = filling->analysis;
+    const struct grouping *by = filling->request->by;
+    const bool *without = filling->request->without;
     bool drop = analysis->frame->plan->drop_missing_baseline && analysis->has_baseline;
+    size_t arms = analysis->arms->count;
     design->y = ARENA_NEW(filling->arena, analysis->count, double);
     design->member = ARENA_NEW(filling->arena, analysis->count, size_t);
-    design->n_of_arm = ARENA_NEW(filling->arena, analysis->arms->count, size_t);
-    design->arm_column = ARENA_NEW(filling->arena, analysis->arms->count, int);
+    design->n_of_arm = ARENA_NEW(filling->arena, arms, size_t);
+    design->arm_column = ARENA_NEW(filling->arena, arms, int);
+    design->n_of_cell = by ? ARENA_NEW(filling->arena, by->count * arms, size_t) : NULL;
+    design->cell_column = by ? ARENA_NEW(filling->arena, by->count * arms, int) : NULL;
     for (size_t i = 0; i < analysis->count; i++) {
+        int group = by ? by->of[analysis->participant[i]] : 0;
         bool out = isnan(analysis->follow_up[i]) || (without && without[analysis->participant[i]]);
         bool dropped = !out && drop && isnan(analysis->baseline[i]);
-        design->baseline_dropped += dropped;
-        if (!out && !dropped) {
-            design->member[design->rows] = i;
-            design->y[design->rows++] = analysis->follow_up[i];
-            design->n_of_arm[analysis->arm[i]]++;
+        design->baseline_dropped += dropped ? 1 : 0;
+        design->no_level += !out && !dropped && group == NOWHERE ? 1 : 0;
+        if (out || dropped || group == NOWHERE) {
+            continue;
+        }
+        design->member[design->rows] = i;
+        design->y[design->rows++] = analysis->follow_up[i];
+        design->n_of_arm[analysis->arm[i]]++;
+        if (by) {
+            design->n_of_cell[(size_t)group * arms + (size_t)analysis->arm[i]]++;
         }
     }
 }
 
-void design_take(struct design *design, const struct analysis *analysis, const int *adjust, size_t adjust_count,
-    const bool *without, struct arena *arena) {
+void design_take(
+    struct design *design, const struct analysis *analysis, const struct design_request *request, struct arena *arena) {
     *design = (struct design){.baseline_column = NOWHERE};
-    struct filling filling = {design, analysis, arena, 0};
-    take_rows(&filling, without);
+    struct filling filling = {design, analysis, request, arena, 0};
+    take_rows(&filling);
     double *one = add_column(&filling, "intercept");
     for (size_t r = 0; r < design->rows; r++) {
         one[r] = 1;
     }
     add_arms(&filling);
+    add_groups(&filling);
     add_baseline(&filling);
-    for (size_t i = 0; i < adjust_count; i++) {
-        const struct covariate *covariate = &analysis->frame->plan->covariates[adjust[i]];
+    for (size_t i = 0; i < request->adjust_count; i++) {
+        const struct covariate *covariate = &analysis->frame->plan->covariates[request->adjust[i]];
+        if (request->by && request->by->covariate == covariate) {
+            continue; /* stands in the model as its levels already */
+        }
         if (covariate->number) {
             add_number(&filling, covariate);
         } else {

@@ -2,8 +2,17 @@
 #include "trial/arms.h"
 #include <string.h>
 
+/* Who has no arm that the plan lists is out of exhibits by arm in every state of blinding, so that counts agree. */
+static bool has_arm(const struct frame *frame, size_t participant) {
+    return !frame->arm || (frame->arm->level[participant] != NOWHERE &&
+                              (size_t)frame->arm->level[participant] < frame->plan->arm_count);
+}
+
 static void show_pooled(const struct frame *frame, struct arena *arena, struct arms *arms) {
     int *of = ARENA_NEW(arena, frame->participant_count, int);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        of[p] = has_arm(frame, p) ? 0 : NOWHERE;
+    }
     *arms = (struct arms){.arm = ARENA_NEW(arena, 1, struct shown_arm), .count = 1, .pooled = true, .of = of};
     arms->arm[0] = (struct shown_arm){"all", "All participants", 0};
 }
