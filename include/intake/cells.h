@@ -26,7 +26,8 @@ struct cells {
 
 /* Reads `length` received bytes; `name` is how sentences call the file. On failure `cells` is empty and the fault is
  * FAULT_INPUT with row = physical line and column = field of the record (for bytes that no encoding explains: the
- * byte of the line), both also in the sentence. Borrows `bytes` only during the call. At most 512 MiB. */
+ * byte of the line), both also in the sentence. Borrows `bytes` only during the call. At most 512 MiB
+ * and 1,999 columns. */
 bool cells_read(struct cells *cells, const char *bytes, size_t length, const char *name, struct fault *fault);
 void cells_release(struct cells *cells);
 

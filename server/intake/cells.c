@@ -5,7 +5,7 @@
 #include "server/intake/encoding.h"
 #include <string.h>
 
-enum { LENGTH_LIMIT = 512 << 20, TIE_RECORDS = 20 };
+enum { LENGTH_LIMIT = 512 << 20, COLUMN_LIMIT = 1999, TIE_RECORDS = 20 };
 
 /* The characters that end a run of plain bytes; all else is copied as it stands. */
 enum special { PLAIN, QUOTE, DELIMITER, LINE_FEED, CARRIAGE_RETURN, NUL_BYTE };
@@ -248,6 +248,10 @@ static bool read_header(struct reader *reader, struct cells *cells) {
     }
     reader->record_line = reader->line;
     for (enum field_end end = FIELD_FOLLOWS; end == FIELD_FOLLOWS;) {
+        if (cells->columns == COLUMN_LIMIT) {
+            return refuse(reader, reader->record_line, COLUMN_LIMIT + 1,
+                "more than 1999 columns, the most a study takes; take out what the plan does not need and load again");
+        }
         char *name = reader->out;
         end = read_field(reader, cells->columns + 1);
         if (end == FIELD_BAD) {

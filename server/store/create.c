@@ -151,8 +151,8 @@ static int make(sqlite3 *database, const struct store_birth *birth, const char *
     char marks[128];
     snprintf(marks, sizeof marks, "PRAGMA application_id=%d; PRAGMA user_version=%d; PRAGMA journal_mode=OFF; BEGIN",
         APPLICATION, FORMAT);
-    int code = inner_settle(database);
-    code = code == SQLITE_OK ? inner_run(database, marks) : code;
+    int code = inner_run(database, marks); /* first: a defensive connection keeps its rollback journal */
+    code = code == SQLITE_OK ? inner_settle(database) : code;
     code = code == SQLITE_OK ? fill(database, birth, at, arena) : code;
     return code == SQLITE_OK ? inner_run(database, "COMMIT") : code;
 }

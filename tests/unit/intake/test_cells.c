@@ -209,6 +209,49 @@ static void stands_any_prefix(void **state) {
     }
 }
 
+/* Any byte of any good file replaced by each byte with a meaning: read or refused with its place, never read beyond. */
+static void stands_any_byte(void **state) {
+    (void)state;
+    static const unsigned char bytes[] = {0, '"', ',', ';', '\t', '\n', '\r', ' ', '7', 0x80,
+        0x81, 0xC3, 0xD8, 0xFE, 0xFF};
+    for (size_t i = 0; i < sizeof goods / sizeof *goods; i++) {
+        char *copy = memory_grow(NULL, goods[i].length, 1);
+        memcpy(copy, goods[i].bytes, goods[i].length);
+        for (size_t at = 0; at < goods[i].length; at++) {
+            for (size_t b = 0; b < sizeof bytes; b++) {
+                struct cells cells;
+                struct fault fault;
+                copy[at] = (char)bytes[b];
+                if (!read_exact(&cells, copy, goods[i].length, &fault)) {
+                    assert_true(fault.row > 0 && fault.column > 0 && strstr(fault.message, "export.csv, line "));
+                } else if (cells.records) {
+                    assert_int_equal(strlen(cells_at(&cells, cells.records - 1, cells.columns - 1)) + 1,
+                        cells.start[cells.records * cells.columns] - cells.start[cells.records * cells.columns - 1]);
+                }
+                cells_release(&cells);
+            }
+            copy[at] = goods[i].bytes[at];
+        }
+        memory_free(copy);
+    }
+}
+
+/* A text on one endless line is no table: 3,000 names. */
+static void refuses_too_many_columns(void **state) {
+    (void)state;
+    struct text text;
+    text_init(&text);
+    for (int c = 0; c < 3000; c++) {
+        text_format(&text, "%sv%d", c ? "," : "", c);
+    }
+    struct cells cells;
+    struct fault fault;
+    assert_false(read_exact(&cells, text.data, text.length, &fault));
+    assert_string_equal(fault.message, "export.csv, line 1, column 2000: more than 1999 columns, the most a study takes; "
+        "take out what the plan does not need and load again");
+    text_release(&text);
+}
+
 /* What is written by RFC 4180 reads back as it was, whatever it holds. */
 static void reads_back_what_was_written(void **state) {
     (void)state;
@@ -249,6 +292,8 @@ int main(void) {
         cmocka_unit_test(reads_what_can_be_read),
         cmocka_unit_test(refuses_with_its_sentence),
         cmocka_unit_test(stands_any_prefix),
+        cmocka_unit_test(stands_any_byte),
+        cmocka_unit_test(refuses_too_many_columns),
         cmocka_unit_test(reads_back_what_was_written),
     };
     return cmocka_run_group_tests_name("intake/cells", tests, NULL, NULL);
