@@ -247,8 +247,8 @@ static void refuses_too_many_columns(void **state) {
     struct cells cells;
     struct fault fault;
     assert_false(read_exact(&cells, text.data, text.length, &fault));
-    assert_string_equal(fault.message, "export.csv, line 1, column 2000: more than 1999 columns, the most a study takes; "
-        "take out what the plan does not need and load again");
+    assert_string_equal(fault.message, "export.csv, line 1, column 2000: more than 1999 columns, the most a study "
+        "takes; take out what the plan does not need and load again");
     text_release(&text);
 }
 
