@@ -22,6 +22,9 @@ bool server_open_study(struct server_state *state, const char *path, struct faul
 /* Waits for requests that use the study, then closes it. FAULT_MISSING where none is open. */
 bool server_close_study(struct server_state *state, struct fault *fault);
 
+/* The name of the operating system's account that runs this, as it stands in records; "not said" where it has none. */
+void account_name(char *name, size_t size);
+
 struct listener;
 /* Serves on 127.0.0.1 alone, from threads of its own; port 0 takes a free one. Tells the state the port. FAULT_SYSTEM, with
  * the way out, where the port is taken. */

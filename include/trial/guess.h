@@ -35,10 +35,12 @@ struct guess_column {
     size_t filled, blank, distinct; /* filled: cells with more than space in them; distinct texts among them */
     size_t numbers, unreadable;     /* filled cells that are numbers or limits; those that are neither */
     double low, median, high;       /* of the numbers that are no suspected codes; NaN where there are none */
-    double skewness;                /* of the same, NaN below 3 */
+    double skewness;                /* of the same, from the outer tenths: (q90 - 2 q50 + q10) / (q90 - q10), in -1..1; a wild
+                                     * value or two do not move it (Hinkley 1975, Biometrika 62:101); NaN where undefined */
+    double spread;                  /* q90 / q10 of the same where all are positive, else NaN */
     int decimals;
     bool positive;                  /* every one of them is above zero */
-    struct guess_value *values;     /* the most frequent, at most GUESS_VALUES, then suspected codes beyond them */
+    struct guess_value *values;     /* the most frequent first: all of a category's, else GUESS_VALUES and the suspected codes */
     size_t value_count;
     int series;                     /* index, or NOWHERE */
 };

@@ -1,0 +1,53 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* The inside of struct server_state, for http/ alone: sessions, drafts and the open study behind their locks. */
+#ifndef EVENHAND_HTTP_STATE_H
+#define EVENHAND_HTTP_STATE_H
+#include "http/server.h"
+#include <pthread.h>
+
+enum { KEY_SIZE = 33, SESSIONS = 32, DRAFTS = 4, BY_SIZE = 256 };
+
+struct session {
+    char token[KEY_SIZE]; /* "" where the place is free */
+    char by[BY_SIZE];     /* who is deciding, as last said; "" before */
+    uint64_t used;        /* for throwing out the one unused for longest */
+};
+
+struct draft {
+    uint64_t id; /* 0 where the place is free */
+    char *name, *bytes;
+    size_t length;
+};
+
+struct server_state {
+    char key[KEY_SIZE];
+    char cookie_name[32]; /* "evenhand-PORT" */
+    unsigned port;
+    char *folder;
+    pthread_mutex_t mutex; /* sessions and drafts */
+    struct session sessions[SESSIONS];
+    struct draft drafts[DRAFTS];
+    uint64_t tick, last_draft;
+    pthread_rwlock_t study_lock; /* readers use the study, the writer opens and closes it */
+    struct study *study;
+};
+
+/* 128 bits of the system's randomness as 32 hexadecimal digits. */
+bool key_make(char key[KEY_SIZE], struct fault *fault);
+/* Compares without telling by its time where two texts differ. */
+bool key_same(const char *given, const char *wanted);
+
+/* Opens a session and copies its token out. */
+bool session_new(struct server_state *state, char token[KEY_SIZE], struct fault *fault);
+/* Is there a session for the Cookie header? */
+bool session_known(struct server_state *state, const char *cookie);
+void session_by(struct server_state *state, const char *cookie, const char *by); /* remembers who is deciding */
+const char *session_who(struct server_state *state, const char *cookie, char by[BY_SIZE]); /* or "not said" */
+
+/* Keeps a copy of the bytes; the oldest drafts make room. */
+uint64_t draft_keep(struct server_state *state, const char *name, const char *bytes, size_t length);
+/* Takes the draft out of the state (the caller gives it back or releases it), so that nobody pushes it out meanwhile. */
+bool draft_take(struct server_state *state, uint64_t id, struct draft *draft);
+void draft_give_back(struct server_state *state, struct draft *draft);
+void draft_release(struct draft *draft);
+#endif
