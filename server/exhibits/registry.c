@@ -7,6 +7,7 @@
 
 /* In agenda order. To add an exhibit: its file beside this one, its line in list.h, its row here. */
 const struct exhibit *const exhibits[] = {
+    &exhibit_baseline,
     &exhibit_decisions,
     NULL,
 };
