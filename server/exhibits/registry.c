@@ -8,6 +8,7 @@
 /* In agenda order. To add an exhibit: its file beside this one, its line in list.h, its row here. */
 const struct exhibit *const exhibits[] = {
     &exhibit_baseline,
+    &exhibit_missing_by_arm,
     &exhibit_decisions,
     NULL,
 };
