@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Axes: which values get a tick and where a value lies. Linear ticks step by 1, 2 or 5 times a power of ten; ticks of
- * log axes stand at 1, 2 and 5 times powers of ten (powers alone, or every second or third, when there are too many).
+ * log axes stand at 1, 2 and 5 times powers of ten, with labels at the powers alone when room is short; over more than
+ * seven powers, at every second or third power.
  * Pure arithmetic, thread-safe. */
 #ifndef EVENHAND_DRAW_AXIS_H
 #define EVENHAND_DRAW_AXIS_H
@@ -31,6 +32,7 @@ struct axis {
     double ticks[AXIS_TICKS];
     int decimals; /* of a linear axis' labels */
     bool with_sign;
+    bool powers; /* of a log axis: powers of ten alone are labelled, for want of room */
 };
 
 /* Takes in [low, high] and widens it to whole ticks, about `wanted` of them (>= 2). low = high is widened too; not
@@ -42,5 +44,6 @@ void axis_init_exact(
     struct axis *axis, enum axis_scale scale, double low, double high, double from, double to, size_t wanted);
 double axis_place(const struct axis *axis, double value); /* held within from and to */
 int axis_beyond(const struct axis *axis, double value);   /* -1 below the axis, 1 above, 0 on it */
+bool axis_labelled(const struct axis *axis, double tick);
 void axis_label(const struct axis *axis, double tick, struct text *out);
 #endif

@@ -1,6 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Box plots lying on their side, one row for each arm within each group, over one axis. Above the box its median; in
- * it a hollow mark at the mean; below it every participant's point at its exact value, stacked so that none hides
+ * it a cross at the mean; below it every participant's point at its exact value, stacked so that none hides
  * another; outliers filled and named. Rows of more than BOXES_POINTS points become a density strip with the outliers
  * drawn. The difference between arms stands at the right of its group. */
 #ifndef EVENHAND_DRAW_BOXES_H

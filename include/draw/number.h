@@ -16,6 +16,7 @@ int number_decimals(double step);
 
 /* Columns a terminal needs for a UTF-8 string (libunistring's uniwidth; broken bytes count one each). */
 size_t number_columns(const char *string);
-/* An upper estimate of the width of a string set in a sans-serif at `size` units: 0.6 em for each column. */
-double number_width(const char *string, double size);
+/* An upper estimate of the width of a string set at `size` units in the widest of the usual sans-serif fonts,
+ * never less than 0.6 em for each column. */
+double number_width(const char *string, double size, bool bold);
 #endif

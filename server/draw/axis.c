@@ -62,9 +62,10 @@ static double log_nice(double value, bool above) {
 
 static void log_ticks(struct axis *axis, size_t wanted) {
     double decades = log10(axis->high) - log10(axis->low);
-    bool all = decades * 3.0 <= (double)wanted * 1.7;
-    int every = 1; /* powers between labelled powers */
-    while (decades / every > (double)wanted * 1.7) {
+    bool all = decades <= (double)AXIS_TICKS / 3.0 - 1.0;
+    axis->powers = decades * 3.0 > (double)wanted * 1.7;
+    int every = 1; /* powers between ticks */
+    while (!all && decades / every > (double)wanted * 1.7) {
         every++;
     }
     int first = (int)floor(log10(axis->low) - 1e-9), last = (int)ceil(log10(axis->high) + 1e-9);
@@ -79,6 +80,11 @@ static void log_ticks(struct axis *axis, size_t wanted) {
             }
         }
     }
+}
+
+bool axis_labelled(const struct axis *axis, double tick) {
+    double power = log10(fabs(tick));
+    return axis->scale != AXIS_LOG10 || !axis->powers || fabs(power - round(power)) < 1e-9;
 }
 
 static void logarithmic(struct axis *axis, size_t wanted, bool exact) {

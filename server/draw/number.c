@@ -61,6 +61,33 @@ size_t number_columns(const char *string) {
     return columns;
 }
 
-double number_width(const char *string, double size) {
-    return string ? 0.6 * size * (double)number_columns(string) : 0.0;
+/* Widths in em, measured once on DejaVu Sans, the widest font a browser is likely to choose. */
+static double em(unsigned char byte) {
+    if (byte >= '0' && byte <= '9') {
+        return 0.637;
+    }
+    if (strchr("ijlI.,:;'|! ()[]-/ftr", byte)) {
+        return 0.415;
+    }
+    if (strchr("mwMWQO%@", byte)) {
+        return 0.98;
+    }
+    return byte >= 'A' && byte <= 'Z' ? 0.74 : 0.635;
+}
+
+double number_width(const char *string, double size, bool bold) {
+    if (!string) {
+        return 0.0;
+    }
+    double width = 0.0;
+    size_t ascii = 0;
+    for (const char *at = string; *at; at++) {
+        if ((unsigned char)*at < 128) {
+            width += em((unsigned char)*at);
+            ascii++;
+        }
+    }
+    size_t columns = number_columns(string);
+    width += 0.84 * (double)(columns - ascii); /* minus signs and dashes; a wide character counts two */
+    return size * fmax(width * (bold ? 1.1 : 1.0), 0.6 * (double)columns);
 }

@@ -45,8 +45,10 @@ static void test_ticks(void **state) {
         struct text out;
         text_init(&out);
         for (size_t t = 0; t < axis.tick_count; t++) {
-            text_string(&out, t ? " " : "");
-            axis_label(&axis, axis.ticks[t], &out);
+            if (axis_labelled(&axis, axis.ticks[t])) {
+                text_string(&out, out.length ? " " : "");
+                axis_label(&axis, axis.ticks[t], &out);
+            }
         }
         assert_string_equal(out.data, cases[i].labels);
         text_release(&out);
@@ -76,6 +78,19 @@ static void test_any_range(void **state) {
     }
 }
 
+/* Log axes keep ticks at 2 and 5 where only the powers are labelled. */
+static void test_log_ticks(void **state) {
+    (void)state;
+    struct axis axis;
+    axis_init(&axis, AXIS_LOG10, 0.02, 100.0, 0.0, 400.0, 4);
+    static const double ticks[] = {0.02, 0.05, 0.1, 0.2, 0.5, 1, 2, 5, 10, 20, 50, 100};
+    assert_int_equal(axis.tick_count, 12);
+    for (size_t t = 0; t < axis.tick_count; t++) {
+        assert_true(fabs(axis.ticks[t] - ticks[t]) < 1e-12);
+        assert_int_equal(axis_labelled(&axis, axis.ticks[t]), t % 3 == 2);
+    }
+}
+
 static void test_places(void **state) {
     (void)state;
     struct axis axis;
@@ -94,6 +109,7 @@ int main(void) {
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_ticks),
         cmocka_unit_test(test_any_range),
+        cmocka_unit_test(test_log_ticks),
         cmocka_unit_test(test_places),
     };
     return cmocka_run_group_tests_name("draw/axis", tests, NULL, NULL);
