@@ -79,11 +79,20 @@ double beta_lower(double x, double a, double b) {
     return beta_both((wide)x, 1.0L - (wide)x, (wide)a, (wide)b);
 }
 
+/* Hill 1970 (Algorithm 395, Commun ACM 13:617): a normal deviate with Student's tail, the better the larger df. */
+static double normal_deviate(double t, double df) {
+    double a = df - 0.5, b = 48.0 * a * a, y = a * log1p(t / df * t);
+    double correction = (((-0.4 * y - 3.3) * y - 24.0) * y - 85.5) / (0.8 * y * y + 100.0 + b) + y + 3.0;
+    return (correction / b + 1.0) * sqrt(y);
+}
+
 double student_two_sided(double t, double df) {
     if (isnan(t) || !(df > 0.0))
         return (double)NAN;
-    if (isinf(df))
+    if (isinf(df) || isinf(t))
         return normal_two_sided(t);
+    if (df > 1e6) /* the fraction would take thousands of terms */
+        return normal_two_sided(normal_deviate(t, df));
     wide size = fabsl((wide)t), ratio = size / (wide)df * size; /* t^2 / df */
     wide y = isinf(ratio) ? 1.0L : ratio / (1.0L + ratio);
     return beta_both(1.0L / (1.0L + ratio), y, (wide)df / 2.0L, 0.5L);

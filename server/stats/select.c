@@ -108,11 +108,28 @@ double select_smallest(const struct staircase *matrix, uint64_t k) {
     return value;
 }
 
+/* The entry of rank k - 1, given that of rank k: the same where more than one is equal, else the largest below it. */
+static double before(const struct staircase *matrix, uint64_t k, double upper) {
+    uint64_t less = 0;
+    double largest = upper;
+    size_t edge = matrix->columns;
+    for (size_t row = 0; row < matrix->rows; row++) {
+        while (edge > 0 && matrix->value(matrix->context, row, edge - 1) >= upper)
+            edge--;
+        if (edge > 0) {
+            double value = matrix->value(matrix->context, row, edge - 1);
+            largest = less == 0 || value > largest ? value : largest;
+        }
+        less += edge;
+    }
+    return less < k ? upper : largest;
+}
+
 double select_median(const struct staircase *matrix) {
     uint64_t n = (uint64_t)matrix->rows * matrix->columns;
     double upper = select_smallest(matrix, n / 2);
     if (n % 2 == 1)
         return upper;
-    double lower = select_smallest(matrix, n / 2 - 1);
+    double lower = before(matrix, n / 2, upper);
     return lower + (upper - lower) / 2.0;
 }
