@@ -98,8 +98,8 @@ double student_two_sided(double t, double df) {
     return beta_both(1.0L / (1.0L + ratio), y, (wide)df / 2.0L, 0.5L);
 }
 
-static double student_density(double t, double df) {
-    return exp(-0.5 * (df + 1.0) * log1p(t / df * t) - (double)log_beta((wide)df / 2.0L, 0.5L)) / sqrt(df);
+static double student_log_density(double t, double df) {
+    return -0.5 * (df + 1.0) * log1p(t / df * t) - (double)log_beta((wide)df / 2.0L, 0.5L) - 0.5 * log(df);
 }
 
 double student_quantile(double probability, double df) {
@@ -113,10 +113,13 @@ double student_quantile(double probability, double df) {
     double t = gsl_cdf_tdist_Qinv(tail, df);
     if (!isfinite(t) || t <= 0.0)
         t = gsl_cdf_ugaussian_Qinv(tail);
-    for (int step = 0; step < 50; step++) { /* Newton: the tail is convex and falling, so it does not overshoot far */
-        double change = (0.5 * student_two_sided(t, df) - tail) / student_density(t, df);
-        double next = fmax(t + change, t / 2.0);
-        if (!isfinite(next) || fabs(next - t) <= 1e-15 * fabs(t))
+    for (int step = 0; step < 200;
+         step++) { /* Newton's steps; far out on logarithms, where the tail is a straight line */
+        double now = 0.5 * student_two_sided(t, df), density = student_log_density(t, df);
+        double next = tail > 0.05 ? t + (now - tail) / exp(density)
+                                  : t * exp((log(now) - log(tail)) * exp(log(now) - log(t) - density));
+        next = fmax(next, t / 2.0);
+        if (!isfinite(next) || fabs(next - t) <= 1e-15 * t)
             break;
         t = next;
     }

@@ -15,7 +15,8 @@ btheb <- HSAUR3::BtheB
 names(btheb) <- c("drug", "length", "treatment", "before", "month2", "month3", "month5", "month8")
 btheb$length <- ifelse(btheb$length == "<6m", "short", "long")
 export("btheb", btheb, "Depression scores in a randomised trial of a computer-delivered therapy;",
-       "Proudfoot et al. 2003, Psychological Medicine 33:217; from R's package HSAUR3 (BtheB). Licence of the package: GPL-2.")
+       "Proudfoot et al. 2003, Psychological Medicine 33:217; from R's package HSAUR3 (BtheB).",
+       "Licence of the package: GPL-2.")
 export("polyps", HSAUR3::polyps3, "Numbers of colonic polyps at baseline and 3 months in a randomised trial;",
        "Giardiello et al. 1993, N Engl J Med 328:1313; from R's package HSAUR3 (polyps3).",
        "Licence of the package: GPL-2.")
