@@ -35,6 +35,8 @@ const char *lower_first(const struct view *view, const char *text); /* "Systolic
 void direction_words(const struct outcome *outcome, const char **lower, const char **upper);
 /* "low" and "high" */
 void interval_json(struct json *json, const char *key, double low, double high); /* "key": [low, high] */
+/* The fields estimate, standard_error, df, low, high, p, status of an object that is open. */
+void estimate_json(struct json *json, const struct estimate *estimate);
 
 /* ---- numbers as a person reads them, sorted out of NaN ---- */
 /* The finite values among `count`, in `kept` (room for all of them); how many. */

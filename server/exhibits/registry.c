@@ -9,6 +9,8 @@
 const struct exhibit *const exhibits[] = {
     &exhibit_baseline,
     &exhibit_missing_by_arm,
+    &exhibit_change_by_arm,
+    &exhibit_effect,
     &exhibit_decisions,
     NULL,
 };

@@ -183,6 +183,16 @@ void interval_json(struct json *json, const char *key, double low, double high) 
     json_close(json);
 }
 
+void estimate_json(struct json *json, const struct estimate *estimate) {
+    json_field_number(json, "estimate", estimate->estimate);
+    json_field_number(json, "standard_error", estimate->standard_error);
+    json_field_number(json, "df", estimate->df);
+    json_field_number(json, "low", estimate->low);
+    json_field_number(json, "high", estimate->high);
+    json_field_number(json, "p", estimate->p);
+    json_field_string(json, "status", status_name(estimate->status));
+}
+
 size_t keep_finite(const double *values, size_t count, double *kept) {
     size_t n = 0;
     for (size_t i = 0; i < count; i++) {
