@@ -33,6 +33,7 @@ void json_number(struct json *json, double value);      /* NaN and infinities wr
 void json_integer(struct json *json, int64_t value);
 void json_bool(struct json *json, bool value);
 void json_null(struct json *json);
+void json_raw(struct json *json, const char *written); /* a whole value that this writer made before */
 
 void json_key_object(struct json *json, const char *key);
 void json_key_array(struct json *json, const char *key);

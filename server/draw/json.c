@@ -130,6 +130,11 @@ void json_null(struct json *json) {
     text_literal(json->out, "null");
 }
 
+void json_raw(struct json *json, const char *written) {
+    begin_value(json);
+    text_string(json->out, written);
+}
+
 void json_key_object(struct json *json, const char *key) {
     json_key(json, key);
     json_object(json);

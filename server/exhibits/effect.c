@@ -251,11 +251,11 @@ static const char *terms_words(const struct view *view, const struct effect_resu
     text_init(&text);
     text_string(&text, "arm");
     if (result->model.design.baseline_column != NOWHERE) {
-        text_string(&text, ", baseline");
+        text_string(&text, result->adjust_count ? ", baseline" : " and baseline");
     }
-    const struct plan *plan = view->frame->plan;
     for (size_t i = 0; i < result->adjust_count; i++) {
-        text_format(&text, ", %s", lower_first(view, plan->covariates[result->adjust[i]].label));
+        const char *label = view->frame->plan->covariates[result->adjust[i]].label;
+        text_format(&text, "%s%s", i + 1 == result->adjust_count ? " and " : ", ", lower_first(view, label));
     }
     const char *copy = arena_text(view->arena, text.data);
     text_release(&text);

@@ -7,11 +7,15 @@
 
 /* In agenda order. To add an exhibit: its file beside this one, its line in list.h, its row here. */
 const struct exhibit *const exhibits[] = {
+    &exhibit_columns,
+    &exhibit_flow,
     &exhibit_baseline,
+    &exhibit_discrepancies,
     &exhibit_missing_by_arm,
     &exhibit_change_by_arm,
     &exhibit_effect,
     &exhibit_decisions,
+    &exhibit_participant,
     NULL,
 };
 

@@ -1,0 +1,262 @@
+/* SPDX-License-Identifier: GPL-3.0-or-later */
+/* One participant: every value as received and as now current, what is doubtful, what was decided, where they count. */
+#include "exhibits/doubtful.h"
+#include "exhibits/list.h"
+#include "exhibits/words.h"
+#include <math.h>
+#include <string.h>
+
+struct value {
+    const struct variable *variable;
+    const struct column *column;
+    const char *received, *current; /* NULL: set missing, or several records and none kept */
+    enum cell_state state;
+    uint32_t origin;
+    bool doubtful, hidden;
+};
+
+struct analysis_of {
+    const struct outcome *outcome;
+    const char *visit, *why; /* why not, NULL where the participant counts */
+};
+
+struct participant_result {
+    size_t participant;
+    size_t *records;
+    size_t record_count;
+    const char *arm; /* shown arm's label, NULL while pooled or without one */
+    struct value *values;
+    size_t value_count;
+    struct discrepancies found;
+    bool *concerned; /* [found.count] */
+    struct analysis_of *analyses;
+    size_t analysis_count;
+};
+
+static bool is_doubtful(const struct participant_result *result, const char *column) {
+    for (size_t i = 0; i < result->found.count; i++) {
+        const struct discrepancy *discrepancy = &result->found.list[i];
+        if (result->concerned[i] && discrepancy->state != DISCREPANCY_SETTLED && discrepancy->column &&
+            strcmp(discrepancy->column, column) == 0) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static void take_values(struct view *view, struct participant_result *result) {
+    const struct frame *frame = view->frame;
+    size_t record = frame->participants[result->participant].record;
+    for (size_t v = 0; v < frame->plan->variable_count; v++) {
+        struct value *value = &result->values[result->value_count++];
+        const struct column *column = frame->columns[v];
+        *value = (struct value){.variable = &frame->plan->variables[v], .column = column, .state = (enum cell_state)column->state[result->participant]};
+        value->hidden = arms_hide_column(frame, value->variable->column);
+        if (record != NO_RECORD && !value->hidden) {
+            value->received = cells_at(frame->cells, record, column->index);
+            value->current = column->text[record];
+            value->origin = column->origin ? column->origin[record] : 0;
+            value->doubtful = is_doubtful(result, value->variable->column);
+        }
+    }
+}
+
+static const char *why_not(const struct view *view, const struct outcome *outcome, size_t p, size_t visit) {
+    const struct frame *frame = view->frame;
+    const struct column *column = frame->columns[outcome->visits[visit].variable];
+    const struct column *baseline = frame->columns[outcome->visits[0].variable];
+    enum scale scale = frame->scales[outcome - frame->plan->outcomes];
+    const struct participant *who = &frame->participants[p];
+    return who->record == NO_RECORD                                       ? "several records, and none kept yet" :
+        view->arms.of[p] == NOWHERE                                       ? "no arm that the plan lists" :
+        who->excluded_full                                                ? "left out of the full analysis set by a decision" :
+        column->state[p] != CELL_OBSERVED                                 ? cell_state_words((enum cell_state)column->state[p]) :
+        scale == SCALE_LOG10 && !(column->number[p] > 0)                  ? "the logarithmic scale cannot take the value" :
+        frame->plan->drop_missing_baseline && visit > 0 && baseline->state[p] != CELL_OBSERVED ? "no baseline, dropped as the plan says" :
+                                                                                                 NULL;
+}
+
+static void take_analyses(struct view *view, struct participant_result *result) {
+    const struct plan *plan = view->frame->plan;
+    size_t room = 0;
+    for (size_t o = 0; o < plan->outcome_count; o++) {
+        room += plan->outcomes[o].visit_count;
+    }
+    result->analyses = ARENA_NEW(view->arena, room, struct analysis_of);
+    for (size_t o = 0; o < plan->outcome_count; o++) {
+        const struct outcome *outcome = &plan->outcomes[o];
+        for (size_t v = outcome->visit_count > 1; v < outcome->visit_count; v++) {
+            result->analyses[result->analysis_count++] = (struct analysis_of){outcome, outcome->visits[v].label,
+                why_not(view, outcome, result->participant, v)};
+        }
+    }
+}
+
+static bool compute(struct view *view, struct fault *fault) {
+    (void)fault;
+    enum { SHOWN_RECORDS = 32 };
+    const struct frame *frame = view->frame;
+    struct participant_result *result = ARENA_NEW(view->arena, 1, struct participant_result);
+    result->participant = (size_t)frame_participant(frame, view_asked(view, "participant"));
+    result->records = ARENA_NEW(view->arena, SHOWN_RECORDS, size_t);
+    size_t all = frame_records(frame, result->participant, result->records, SHOWN_RECORDS);
+    result->record_count = all < SHOWN_RECORDS ? all : SHOWN_RECORDS;
+    checks_run(frame, view->received, view->arena, &result->found);
+    result->concerned = ARENA_NEW(view->arena, result->found.count, bool);
+    for (size_t i = 0; i < result->found.count; i++) {
+        result->concerned[i] = discrepancy_concerns(&result->found.list[i], frame->participants[result->participant].id);
+    }
+    result->values = ARENA_NEW(view->arena, frame->plan->variable_count, struct value);
+    take_values(view, result);
+    take_analyses(view, result);
+    int arm = view->arms.of[result->participant];
+    result->arm = frame->blinding != BLINDING_UNBLINDED || arm == NOWHERE ? NULL : view->arms.arm[arm].label;
+    view->result = result;
+    return true;
+}
+
+static void value_json(const struct value *value, struct json *json) {
+    static const char *const kinds[] = {"number", "category", "event"};
+    json_object(json);
+    json_field_string(json, "column", value->variable->column);
+    json_field_string(json, "label", value->variable->label);
+    json_field_string(json, "unit", value->variable->unit);
+    json_field_string(json, "kind", kinds[value->variable->kind]);
+    json_field_string(json, "received", value->received);
+    json_field_string(json, "current", value->current);
+    json_field_string(json, "state", value->hidden ? NULL : cell_state_name(value->state));
+    json_field_string(json, "words", value->hidden ? "hidden while blinded: its levels tell the arms apart" : cell_state_words(value->state));
+    json_field_integer(json, "origin", value->origin);
+    json_field_bool(json, "doubtful", value->doubtful);
+    json_key_array(json, "levels");
+    for (size_t l = 0; value->variable->kind == VARIABLE_CATEGORY && !value->hidden && l < value->column->level_count; l++) {
+        json_object(json);
+        json_field_string(json, "code", value->column->levels[l].code);
+        json_field_string(json, "label", value->column->levels[l].label);
+        json_field_bool(json, "listed", l < value->column->listed_count);
+        json_close(json);
+    }
+    json_close(json);
+    json_close(json);
+}
+
+/* Decisions about this participant, or about a code of a column that made one of their values what it is. */
+static bool about(const struct participant_result *result, const struct decision *decision, const char *id) {
+    if (decision->participant) {
+        return strcmp(decision->participant, id) == 0;
+    }
+    for (size_t i = 0; i < result->value_count; i++) {
+        const struct value *value = &result->values[i];
+        bool code = decision->kind == DECISION_MISSING_CODE && decision->column && value->state == CELL_MISSING_CODE &&
+                    strcmp(value->variable->column, decision->column) == 0 && value->current && decision->value &&
+                    strcmp(value->current, decision->value) == 0;
+        bool format = decision->kind == DECISION_NUMBER_FORMAT && decision->column && value->current &&
+                      strcmp(value->variable->column, decision->column) == 0 && strchr(value->current, ',');
+        if (value->origin == decision->number || code || format) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static void json(const struct view *view, struct json *json) {
+    const struct participant_result *result = view->result;
+    const struct frame *frame = view->frame;
+    const char *id = frame->participants[result->participant].id;
+    json_field_string(json, "participant", id);
+    json_field_string(json, "arm", result->arm);
+    json_field_bool(json, "held_aside", frame->participants[result->participant].record == NO_RECORD);
+    json_key_array(json, "records");
+    for (size_t i = 0; i < result->record_count; i++) {
+        json_integer(json, (int64_t)result->records[i] + 1);
+    }
+    json_close(json);
+    json_key_array(json, "values");
+    for (size_t i = 0; i < result->value_count; i++) {
+        value_json(&result->values[i], json);
+    }
+    json_close(json);
+    json_key_array(json, "discrepancies");
+    for (size_t i = 0; i < result->found.count; i++) {
+        if (result->concerned[i]) {
+            discrepancy_json(&result->found.list[i], json);
+        }
+    }
+    json_close(json);
+    json_key_array(json, "decisions");
+    for (size_t i = 0; i < frame->version; i++) {
+        if (about(result, &frame->decisions[i], id)) {
+            decision_json(view, &frame->decisions[i], frame->stands[i], json);
+        }
+    }
+    json_close(json);
+    json_key_array(json, "analyses");
+    for (size_t i = 0; i < result->analysis_count; i++) {
+        const struct analysis_of *analysis = &result->analyses[i];
+        json_object(json);
+        json_field_string(json, "outcome", analysis->outcome->id);
+        json_field_string(json, "label", analysis->outcome->label);
+        json_field_string(json, "visit", analysis->visit);
+        json_field_bool(json, "counts", !analysis->why);
+        json_field_string(json, "why", analysis->why);
+        json_close(json);
+    }
+    json_close(json);
+}
+
+static void tables(const struct view *view, struct table **tables, size_t *count) {
+    const struct participant_result *result = view->result;
+    struct table *values = table_new(view->arena, "Values");
+    table_column(values, "variable", "Variable", NULL, TABLE_WORDS);
+    table_column(values, "received", "Received", NULL, TABLE_WORDS);
+    table_column(values, "current", "Current", NULL, TABLE_WORDS);
+    table_column(values, "state", "State", NULL, TABLE_WORDS);
+    for (size_t i = 0; i < result->value_count; i++) {
+        const struct value *value = &result->values[i];
+        table_row(values);
+        table_put_header(values, value->variable->label);
+        table_put_text(values, value->received);
+        table_put_text(values, value->current);
+        table_put_text(values, value->hidden ? "hidden while blinded" : cell_state_words(value->state));
+    }
+    tables[(*count)++] = values;
+    struct table *analyses = table_new(view->arena, "Analyses");
+    table_column(analyses, "outcome", "Outcome", NULL, TABLE_WORDS);
+    table_column(analyses, "visit", "Visit", NULL, TABLE_WORDS);
+    table_column(analyses, "counts", "Counts", NULL, TABLE_WORDS);
+    table_column(analyses, "why", "Why not", NULL, TABLE_WORDS);
+    for (size_t i = 0; i < result->analysis_count; i++) {
+        const struct analysis_of *analysis = &result->analyses[i];
+        table_row(analyses);
+        table_put_header(analyses, analysis->outcome->label);
+        table_put_text(analyses, analysis->visit);
+        table_put_text(analyses, analysis->why ? "no" : "yes");
+        table_put_text(analyses, analysis->why);
+    }
+    tables[(*count)++] = analyses;
+}
+
+static void title_of(const struct view *view, struct text *title) {
+    text_format(title, "What is recorded of %s?", view_asked(view, "participant"));
+}
+
+static const struct argument_rule arguments[] = {
+    {"participant", ARGUMENT_PARTICIPANT, "The participant's identifier as the file has it", NULL, false},
+    {0},
+};
+
+const struct exhibit exhibit_participant = {
+    .name = "participant",
+    .item = 0,
+    .title = "What is recorded of this participant?",
+    .tab = "Participant",
+    .says = "One participant's values as received and as now current, discrepancies, decisions, and the analyses they count in",
+    .pooled = SHOWN,
+    .table_first = true,
+    .method = "Received: the text of the file, kept for ever. Current: after every decision that stands. No arm is shown while blinded.",
+    .arguments = arguments,
+    .compute = compute,
+    .json = json,
+    .tables = tables,
+    .title_of = title_of,
+};
