@@ -614,7 +614,9 @@ static uint32_t settler(const struct frame *frame, const struct discrepancy *wha
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
         bool keeps = decision->kind == DECISION_KEEP_RECORD && same(decision->participant, what->participant);
-        bool column = decision->kind <= DECISION_SET_MISSING && same(decision->column, what->column) &&
+        bool other_code = (decision->kind == DECISION_READ_AS && !same(decision->from, what->value)) ||
+                          (decision->kind == DECISION_MISSING_CODE && !same(decision->value, what->value));
+        bool column = decision->kind <= DECISION_SET_MISSING && !other_code && same(decision->column, what->column) &&
                       (!decision->participant || same(decision->participant, what->participant));
         if (frame->stands[i] && (keeps || column || same(decision->discrepancy, what->id))) {
             by = decision->number;

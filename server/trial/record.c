@@ -172,6 +172,17 @@ static const char *body_of(struct arena *arena, const cJSON *entry) {
     return body;
 }
 
+static const char *list_text(struct arena *arena, const cJSON *list) {
+    struct text text;
+    text_init(&text);
+    struct json json;
+    json_init(&json, &text);
+    write_item(&json, list);
+    const char *copy = arena_text(arena, text.data);
+    text_release(&text);
+    return copy;
+}
+
 /* Takes the fields an object has out into the decision. */
 static void take_fields(struct arena *arena, const cJSON *object, struct decision *decision) {
     for (const cJSON *item = object->child; item; item = item->next) {
@@ -180,6 +191,8 @@ static void take_fields(struct arena *arena, const cJSON *object, struct decisio
             put_text(decision, field->place, arena_text(arena, item->valuestring));
         }
     }
+    const cJSON *people = cJSON_GetObjectItemCaseSensitive(object, "people");
+    decision->people = people ? list_text(arena, people) : NULL;
     const cJSON *row = cJSON_GetObjectItemCaseSensitive(object, "row");
     const cJSON *number = cJSON_GetObjectItemCaseSensitive(object, "number");
     decision->row = row ? (uint32_t)row->valuedouble : 0;
