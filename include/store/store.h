@@ -151,4 +151,7 @@ bool store_compare(struct store *store, uint32_t number, const struct store_tabl
 /* Takes the lock on the study at `path`, held until the process ends, in a folder of this account outside the study's
  * own. FAULT_REFUSED with a sentence that names the study where another process holds it. */
 bool store_lock(const char *path, struct fault *fault);
+/* The same for a lock that is given back before the process ends: what store_unlock takes, or -1. */
+int store_lock_take(const char *path, struct fault *fault);
+void store_unlock(int lock);
 #endif

@@ -195,12 +195,18 @@ struct server_state *server_new(const char *folder, struct fault *fault) {
     return state;
 }
 
+static void close_study(struct server_state *state) {
+    study_close(state->study);
+    store_unlock(state->study_hold);
+    state->study = NULL;
+}
+
 void server_free(struct server_state *state) {
     if (!state) {
         return;
     }
     if (state->study) {
-        study_close(state->study);
+        close_study(state);
     }
     for (size_t i = 0; i < DRAFTS; i++) {
         draft_release(&state->drafts[i]);
@@ -229,11 +235,13 @@ bool server_open_study(struct server_state *state, const char *path, struct faul
     bool done = true;
     if (state->study) {
         done = fault_set(fault, FAULT_CONFLICT, "the study %s is open already; close it first", study_path(state->study));
-    } else if (!store_lock(path, fault)) {
-        done = false;
     } else {
-        state->study = study_open(path, fault);
+        state->study_hold = store_lock_take(path, fault);
+        state->study = state->study_hold < 0 ? NULL : study_open(path, fault);
         done = state->study != NULL;
+        if (!done && state->study_hold >= 0) {
+            store_unlock(state->study_hold);
+        }
     }
     pthread_rwlock_unlock(&state->study_lock);
     return done;
@@ -243,8 +251,7 @@ bool server_close_study(struct server_state *state, struct fault *fault) {
     pthread_rwlock_wrlock(&state->study_lock);
     bool done = true;
     if (state->study) {
-        study_close(state->study);
-        state->study = NULL;
+        close_study(state);
     } else {
         done = fault_set(fault, FAULT_MISSING, "no study is open, so there is none to close");
     }

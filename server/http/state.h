@@ -30,6 +30,7 @@ struct server_state {
     uint64_t tick, last_draft;
     pthread_rwlock_t study_lock; /* readers use the study, the writer opens and closes it */
     struct study *study;
+    int study_hold; /* the lock on the open study's file */
 };
 
 /* 128 bits of the system's randomness as 32 hexadecimal digits. */

@@ -33,32 +33,42 @@ static bool refuse_held(const char *path, int file, struct fault *fault) {
         "close it and try again", path, *holder ? holder : "unknown");
 }
 
-/* The descriptor stays open on purpose: the system lets go of the lock when the process ends, however it ends. */
-bool store_lock(const char *path, struct fault *fault) {
+/* The system lets go of the lock when the process ends, however it ends. */
+int store_lock_take(const char *path, struct fault *fault) {
     char folder[64], name[160], holder[32];
     struct stat there;
     if (stat(path, &there) != 0) {
-        return fault_set(fault, FAULT_MISSING, "%s cannot be reached (%s); check the name", path, strerror(errno));
+        fault_set(fault, FAULT_MISSING, "%s cannot be reached (%s); check the name", path, strerror(errno));
+        return -1;
     }
     if (!make_folder(folder, fault)) {
-        return false;
+        return -1;
     }
     snprintf(name, sizeof name, "%s/%u-%u-%llu.lock", folder, major(there.st_dev), minor(there.st_dev),
         (unsigned long long)there.st_ino);
     int file = open(name, O_RDWR | O_CREAT | O_CLOEXEC | O_NOFOLLOW, 0600);
     if (file < 0) {
-        return fault_set(fault, FAULT_SYSTEM, "%s, the lock on %s, cannot be made (%s); see to /tmp and try again",
-            name, path, strerror(errno));
+        fault_set(fault, FAULT_SYSTEM, "%s, the lock on %s, cannot be made (%s); see to /tmp and try again", name, path,
+            strerror(errno));
+        return -1;
     }
     if (flock(file, LOCK_EX | LOCK_NB) != 0) {
         refuse_held(path, file, fault);
         close(file);
-        return false;
+        return -1;
     }
     int length = snprintf(holder, sizeof holder, "%ld", (long)getpid());
     /* Only a courtesy to the next reader: the lock holds without it. */
     if (ftruncate(file, 0) != 0 || pwrite(file, holder, (size_t)length, 0) != length) {
         ftruncate(file, 0);
     }
-    return true;
+    return file;
+}
+
+bool store_lock(const char *path, struct fault *fault) {
+    return store_lock_take(path, fault) >= 0; /* the descriptor stays open on purpose */
+}
+
+void store_unlock(int lock) {
+    close(lock);
 }
