@@ -28,6 +28,7 @@ const char *decimal_words(const struct view *view, double value, int decimals); 
 const char *signed_words(const struct view *view, double value, int decimals);  /* "+7.6" */
 const char *interval_words(const struct view *view, double low, double high, int decimals); /* "4.0 to 11.2" */
 const char *percent_words(const struct view *view, double confidence); /* "95%" */
+const char *p_words(const struct view *view, double p);                 /* "0.31", "<0.001" */
 const char *unit_after(const struct view *view, const char *unit);     /* " mmHg", "" */
 /* The outcome's own words for an axis: "Change in systolic blood pressure, mmHg". */
 const char *lower_first(const struct view *view, const char *text); /* "Systolic" -> "systolic"; "BMI" stays */

@@ -131,14 +131,6 @@ static void arm_columns(const struct view *view, const struct missing_result *re
     }
 }
 
-static void put_p(const struct view *view, struct table *table, double p) {
-    struct text text;
-    text_init(&text);
-    text_p_value(&text, p);
-    table_put_text(table, arena_text(view->arena, text.data));
-    text_release(&text);
-}
-
 static struct table *missing_table(const struct view *view, const struct missing_result *result) {
     struct table *table = table_new(view->arena,
         view->arms.count > 1 ? "Without an observed value, n (%), by arm" : "Without an observed value, n (%)");
@@ -155,7 +147,7 @@ static struct table *missing_table(const struct view *view, const struct missing
             table_put_text(table, part_words(view, row->arms[a].missing, row->arms[a].n));
         }
         if (view->arms.count > 1) {
-            put_p(view, table, row->fisher.p);
+            table_put_text(table, p_words(view, row->fisher.p));
         }
         if (i == result->primary) {
             table_row_emphasise(table);

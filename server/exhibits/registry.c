@@ -12,6 +12,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_baseline,
     &exhibit_discrepancies,
     &exhibit_missing_by_arm,
+    &exhibit_distribution,
     &exhibit_change_by_arm,
     &exhibit_effect,
     &exhibit_decisions,

@@ -160,6 +160,15 @@ const char *percent_words(const struct view *view, double confidence) {
     return arena_format(view->arena, "%.15g%%", 100 * confidence);
 }
 
+const char *p_words(const struct view *view, double p) {
+    struct text text;
+    text_init(&text);
+    text_p_value(&text, p);
+    const char *copy = arena_text(view->arena, text.data);
+    text_release(&text);
+    return copy;
+}
+
 const char *unit_after(const struct view *view, const char *unit) {
     return unit && *unit ? arena_format(view->arena, " %s", unit) : "";
 }

@@ -57,16 +57,11 @@ static void shuffle(const struct strata *strata, double *values, struct generato
     }
 }
 
-/* Four sums side by side: the additions need not wait for each other. The order of adding is fixed, so digits are too. */
 static double dot(const double *a, const double *b, size_t n) {
-    double sum[4] = {0.0, 0.0, 0.0, 0.0};
-    size_t i = 0;
-    for (; i + 4 <= n; i += 4)
-        for (size_t k = 0; k < 4; k++)
-            sum[k] += a[i + k] * b[i + k];
-    for (; i < n; i++)
-        sum[0] += a[i] * b[i];
-    return (sum[0] + sum[1]) + (sum[2] + sum[3]);
+    double sum = 0.0;
+    for (size_t i = 0; i < n; i++)
+        sum += a[i] * b[i];
+    return sum;
 }
 
 /* |t| of each arm coefficient for the outcome `fitted without the arm + values`: the first part lies in the span of the

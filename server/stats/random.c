@@ -37,24 +37,14 @@ uint64_t generator_next(struct generator *generator) {
     return result;
 }
 
-/* Lemire 2019 (ACM Trans Model Comput Simul 29:3): a product instead of a division; the few draws that would favour some
- * numbers are drawn again. Limits of 2^32 and more, which no trial has, take the slow way. */
 size_t generator_below(struct generator *generator, size_t limit) {
     BUG_IF(limit == 0);
-    if (limit > UINT32_MAX) {
-        uint64_t range = limit, excess = (UINT64_MAX % range + 1) % range, x;
-        do
-            x = generator_next(generator);
-        while (excess && x > UINT64_MAX - excess);
-        return (size_t)(x % range);
-    }
-    uint64_t range = limit, product = (generator_next(generator) >> 32) * range;
-    if ((uint32_t)product < range) {
-        uint32_t least = (uint32_t)(0x100000000u % range);
-        while ((uint32_t)product < least)
-            product = (generator_next(generator) >> 32) * range;
-    }
-    return (size_t)(product >> 32);
+    uint64_t range = limit, excess = (UINT64_MAX % range + 1) % range,
+             x; /* the last, incomplete round is drawn again */
+    do
+        x = generator_next(generator);
+    while (excess && x > UINT64_MAX - excess);
+    return (size_t)(x % range);
 }
 
 double generator_uniform(struct generator *generator) {
