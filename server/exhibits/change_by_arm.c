@@ -235,6 +235,37 @@ static const char *interaction_words(const struct view *view, const struct chang
     return words;
 }
 
+/* The axis holds every box and whatever lies within twice Tukey's outer fences of all values together; what is further out stands
+ * at the edge as an arrow with its value, so that one slip of the pen does not squash every box. */
+static void limit_axis(const struct view *view, const struct change_result *result, struct axis_plan *axis) {
+    enum { ENOUGH = 8 };
+    size_t room = result->model.analysis.count, n = 0;
+    double *all = ARENA_NEW(view->arena, room, double), low = INFINITY, high = -(double)INFINITY;
+    for (size_t i = 0; i < result->cell_count; i++) {
+        for (size_t p = 0; p < result->cells[i].n; p++) {
+            all[n++] = result->cells[i].points[p].value;
+        }
+    }
+    const double *sorted = sorted_copy(view->arena, all, n);
+    struct description s = describe(sorted, n);
+    double reach = 6 * (s.upper_quartile - s.lower_quartile);
+    if (n < ENOUGH || !(reach > 0)) {
+        return;
+    }
+    for (size_t i = 0; i < n; i++) {
+        bool within = sorted[i] >= s.lower_quartile - reach && sorted[i] <= s.upper_quartile + reach;
+        low = within && sorted[i] < low ? sorted[i] : low;
+        high = within && sorted[i] > high ? sorted[i] : high;
+    }
+    for (size_t i = 0; i < result->cell_count; i++) {
+        const struct cell *cell = &result->cells[i];
+        low = cell->n && cell->whiskers.low < low && cell->n >= ENOUGH ? cell->whiskers.low : low;
+        high = cell->n && cell->whiskers.high > high && cell->n >= ENOUGH ? cell->whiskers.high : high;
+    }
+    axis->low = low;
+    axis->high = high;
+}
+
 static void figure(const struct view *view, const struct figure *figure, struct html *html) {
     const struct change_result *result = view->result;
     const struct outcome *outcome = &view->frame->plan->outcomes[view->outcome];
@@ -269,6 +300,7 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     bool log10_scale = view->scale == SCALE_LOG10;
     boxes.axis = (struct axis_plan){.scale = AXIS_LINEAR, .low = NAN, .high = NAN, .with_sign = result->has_change,
         .null_line = result->has_change ? 0 : (double)NAN};
+    limit_axis(view, result, &boxes.axis);
     boxes.axis.title = arena_format(view->arena, "%s%s%s%s", result->has_change ? "Change in " : "", what_words(view),
         log10_scale ? ", log10 of the ratio" : *outcome->unit ? ", " : "", log10_scale ? "" : outcome->unit);
     if (result->has_change) {

@@ -428,7 +428,8 @@ static void interpret_category(const struct frame *frame, struct column *column,
     map_release(&map);
     for (size_t i = 0; i < column->listed_count + unlisted; i++) {
         if (i >= column->listed_count) {
-            levels[i] = (struct level){extra[i - column->listed_count], extra[i - column->listed_count]};
+            const char *code = extra[i - column->listed_count];
+            levels[i] = (struct level){code, column->listed_count ? arena_format(&column->arena, "\"%s\", not listed", code) : code};
         }
         map_put(&map, levels[i].code, (int32_t)i);
     }
