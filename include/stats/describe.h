@@ -54,9 +54,10 @@ struct shapiro_wilk {
 };
 struct shapiro_wilk shapiro_wilk(const double *sorted, size_t n);
 
-/* Histogram bins [from + i width, from + (i + 1) width), the last one closed; width is 1, 2 or 5 times a power of ten
- * and limits are its multiples. As many as Freedman & Diaconis' rule asks (1981, 2 IQR n^(-1/3)), at least
- * Sturges' number, at most BINS_MAX; where all values are equal one bin about them; none at n = 0. */
+/* Histogram bins [limit i, limit i + 1), the last one closed; width is 1, 2 or 5 times a power of ten and limits are
+ * its multiples. As many as Freedman & Diaconis' rule asks (1981, Z Wahrscheinlichkeitstheorie 57:453, 2 IQR n^(-1/3))
+ * or Sturges' (1926), whichever are more, but at most BINS_MAX, and where most values repeat no bin is narrower than
+ * the smallest step between values. Where all values are equal, one bin about them; none at n = 0. */
 enum { BINS_MAX = 60 };
 struct bins {
     size_t count;

@@ -282,6 +282,31 @@ static struct bins one_bin(const double *sorted, size_t n) {
     return bins;
 }
 
+/* Bins first .. first + count - 1, in widths, that cover low to high. */
+struct cover {
+    double first, count;
+};
+
+static struct cover cover(struct nice_width width, double low, double high) {
+    double unit = nice_multiple(width, 1.0), first = floor(low / unit);
+    while (nice_multiple(width, first) > low) /* the division was rounded */
+        first -= 1.0;
+    while (nice_multiple(width, first + 1.0) <= low)
+        first += 1.0;
+    double count = fmax(1.0, ceil((high - nice_multiple(width, first)) / unit - 1e-9));
+    while (nice_multiple(width, first + count) < high)
+        count += 1.0;
+    return (struct cover){first, count};
+}
+
+static void count_values(struct bins *bins, const double *sorted, size_t n) {
+    for (size_t i = 0, bin = 0; i < n; i++) {
+        while (bin + 1 < bins->count && sorted[i] >= bins->limits[bin + 1])
+            bin++;
+        bins->counts[bin]++;
+    }
+}
+
 struct bins nice_bins(const double *sorted, size_t n) {
     struct bins bins = {0};
     if (n == 0)
@@ -289,29 +314,16 @@ struct bins nice_bins(const double *sorted, size_t n) {
     double low = sorted[0], high = sorted[n - 1], range = high - low;
     if (!(range > 1e-12 * fmax(fabs(low), fabs(high))))
         return one_bin(sorted, n);
-    double step = scale_step(sorted, n);
+    double least = scale_step(sorted, n) * (1.0 - 1e-9);
     struct nice_width width = nice_below(range / wanted_bins(sorted, n));
-    double first, needed;
-    for (;; width = wider(width)) {
-        double unit = nice_multiple(width, 1.0);
-        first = floor(low / unit);
-        while (nice_multiple(width, first) > low) /* rounding of the division */
-            first -= 1.0;
-        while (nice_multiple(width, first + 1.0) <= low)
-            first += 1.0;
-        needed = fmax(1.0, ceil((high - nice_multiple(width, first)) / unit - 1e-9));
-        while (nice_multiple(width, first + needed) < high)
-            needed += 1.0;
-        if (needed <= (double)BINS_MAX && unit >= step * (1.0 - 1e-9))
-            break;
+    struct cover chosen = cover(width, low, high);
+    while (chosen.count > (double)BINS_MAX || nice_multiple(width, 1.0) < least) {
+        width = wider(width);
+        chosen = cover(width, low, high);
     }
-    bins.count = (size_t)needed;
+    bins.count = (size_t)chosen.count;
     for (size_t i = 0; i <= bins.count; i++)
-        bins.limits[i] = nice_multiple(width, first + (double)i);
-    for (size_t i = 0, bin = 0; i < n; i++) {
-        while (bin + 1 < bins.count && sorted[i] >= bins.limits[bin + 1])
-            bin++;
-        bins.counts[bin]++;
-    }
+        bins.limits[i] = nice_multiple(width, chosen.first + (double)i);
+    count_values(&bins, sorted, n);
     return bins;
 }

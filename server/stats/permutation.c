@@ -57,6 +57,19 @@ static void shuffle(const struct strata *strata, double *values, struct generato
     }
 }
 
+/* What the shuffles need of the full model. An outcome is `fitted without the arm + shuffled residuals`; the first part
+ * lies in the span of the columns without touching the arm's coefficients, so only the residuals count, through their
+ * parts along an orthonormal basis. */
+enum { LANES = 4 };
+struct projector {
+    size_t n, p, lanes;     /* lanes: p rounded up */
+    double *rows;           /* n x lanes: the basis, row by row, filled up with zeros */
+    double *parts;          /* lanes */
+    const double *weights;  /* arms x p: each arm coefficient from the parts */
+    const double *unscaled; /* arms: its variance per unit of sigma squared */
+    double df;
+};
+
 static double dot(const double *a, const double *b, size_t n) {
     double sum = 0.0;
     for (size_t i = 0; i < n; i++)
@@ -64,21 +77,43 @@ static double dot(const double *a, const double *b, size_t n) {
     return sum;
 }
 
-/* |t| of each arm coefficient for the outcome `fitted without the arm + values`: the first part lies in the span of the
- * columns without touching the arm's, so only `values` counts. */
-static void t_of_arms(
-    const struct permutation_task *task, const struct linear_fit *full, const double *values, double *t) {
-    size_t n = task->n, p = task->p;
-    double rest = dot(values, values, n);
-    for (size_t k = 0; k < p; k++) {
-        double part = dot(full->basis + k * n, values, n);
-        rest -= part * part;
-    }
-    double sigma = fmax(sqrt(fmax(rest, 0.0) / full->df), 1e-300); /* a shuffle may fit by chance: |t| is then huge */
+static struct projector projector_of(
+    const struct permutation_task *task, const struct linear_fit *full, struct arena *arena) {
+    size_t n = task->n, p = task->p, lanes = (p + LANES - 1) / LANES * LANES;
+    double *rows = ARENA_NEW(arena, n * lanes, double), *weights = ARENA_NEW(arena, task->arms * p, double);
+    double *unscaled = ARENA_NEW(arena, task->arms, double);
+    for (size_t k = 0; k < p; k++)
+        for (size_t i = 0; i < n; i++)
+            rows[i * lanes + k] = full->basis[k * n + i];
     for (size_t a = 0; a < task->arms; a++) {
         size_t j = task->first_arm + a;
-        t[a] = fabs(dot(full->gain + j * n, values, n)) / (sigma * sqrt(full->unscaled[j * p + j]));
+        unscaled[a] = full->unscaled[j * p + j];
+        for (size_t k = 0; k < p; k++)
+            weights[a * p + k] = dot(full->gain + j * n, full->basis + k * n, n);
     }
+    return (struct projector){n, p, lanes, rows, ARENA_NEW(arena, lanes, double), weights, unscaled, full->df};
+}
+
+/* Several sums side by side: each in the order of the rows, so the digits do not depend on how they are grouped. */
+static void project(const struct projector *projector, const double *values) {
+    for (size_t from = 0; from < projector->lanes; from += LANES) {
+        double sums[LANES] = {0.0};
+        const double *row = projector->rows + from;
+        for (size_t i = 0; i < projector->n; i++, row += projector->lanes)
+            for (size_t k = 0; k < LANES; k++)
+                sums[k] += row[k] * values[i];
+        memcpy(projector->parts + from, sums, sizeof sums);
+    }
+}
+
+/* |t| of each arm coefficient; `squares` is the values' sum of squares, which no shuffle changes. */
+static void t_of_arms(const struct projector *projector, size_t arms, const double *values, double squares, double *t) {
+    project(projector, values);
+    double rest = squares - dot(projector->parts, projector->parts, projector->p);
+    double sigma = fmax(sqrt(fmax(rest, 0.0) / projector->df), 1e-300); /* a shuffle may fit by chance: |t| is huge */
+    for (size_t a = 0; a < arms; a++)
+        t[a] = fabs(dot(projector->weights + a * projector->p, projector->parts, projector->p)) /
+               (sigma * sqrt(projector->unscaled[a]));
 }
 
 static void finish(
@@ -102,10 +137,12 @@ static void run(const struct permutation_task *task, const struct linear_fit *fu
     double *values = ARENA_NEW(arena, task->n, double);
     double *observed = ARENA_NEW(arena, task->arms, double), *t = ARENA_NEW(arena, task->arms, double);
     memcpy(values, reduced->residuals, task->n * sizeof *values);
-    t_of_arms(task, full, values, observed);
+    struct projector projector = projector_of(task, full, arena);
+    double squares = dot(values, values, task->n);
+    t_of_arms(&projector, task->arms, values, squares, observed);
     for (size_t m = 0; m < task->permutations; m++) {
         shuffle(&strata, values, &generator);
-        t_of_arms(task, full, values, t);
+        t_of_arms(&projector, task->arms, values, squares, t);
         for (size_t a = 0; a < task->arms; a++)
             results[a].as_extreme += !(t[a] < observed[a] * (1.0 - 1e-9));
     }

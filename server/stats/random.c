@@ -37,14 +37,16 @@ uint64_t generator_next(struct generator *generator) {
     return result;
 }
 
+/* Lemire 2019 (ACM Trans Model Comput Simul 29:3): the high half of a product, with no division but in rare cases. */
 size_t generator_below(struct generator *generator, size_t limit) {
     BUG_IF(limit == 0);
-    uint64_t range = limit, excess = (UINT64_MAX % range + 1) % range,
-             x; /* the last, incomplete round is drawn again */
-    do
-        x = generator_next(generator);
-    while (excess && x > UINT64_MAX - excess);
-    return (size_t)(x % range);
+    __extension__ typedef unsigned __int128 product;
+    uint64_t range = limit;
+    product x = (product)generator_next(generator) * range;
+    if ((uint64_t)x < range)
+        for (uint64_t bias = (UINT64_MAX - range + 1) % range; (uint64_t)x < bias;)
+            x = (product)generator_next(generator) * range;
+    return (size_t)(x >> 64);
 }
 
 double generator_uniform(struct generator *generator) {

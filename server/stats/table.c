@@ -115,6 +115,23 @@ static void insert_total(struct enumeration *e, size_t total) {
     e->totals[place] = total;
 }
 
+/* The probability of the observed table, with its slack, and room for a row. */
+static void prepare(struct enumeration *e, const size_t *with, const size_t *without, size_t k, struct arena *arena) {
+    wide *factorial = ARENA_NEW(arena, e->all + 1, wide);
+    int sign;
+    for (size_t i = 2; i <= e->all; i++)
+        factorial[i] = lgammal_r((wide)i + 1.0L, &sign);
+    e->factorial = factorial;
+    e->ways = ln_choose(factorial, e->all, e->drawn);
+    e->bound = log1pl(1e-7L);
+    for (size_t j = 0; j < k; j++)
+        e->bound += ln_choose(factorial, with[j] + without[j], with[j]);
+    size_t width = e->totals[e->columns - 2] + 1;
+    e->row = ARENA_NEW(arena, width, wide);
+    e->from_left = ARENA_NEW(arena, width, wide);
+    e->from_right = ARENA_NEW(arena, width, wide);
+}
+
 struct exact_test fisher_exact(const size_t *with, const size_t *without, size_t k) {
     BUG_IF(k < 2);
     struct arena arena;
@@ -134,19 +151,7 @@ struct exact_test fisher_exact(const size_t *with, const size_t *without, size_t
         if (work_of(&e, prefix_capacity) > FISHER_LIMIT) {
             result = (struct exact_test){STATUS_BEYOND_METHOD, (double)NAN};
         } else {
-            wide *factorial = ARENA_NEW(&arena, e.all + 1, wide);
-            int sign;
-            for (size_t i = 2; i <= e.all; i++)
-                factorial[i] = lgammal_r((wide)i + 1.0L, &sign);
-            e.factorial = factorial;
-            e.ways = ln_choose(factorial, e.all, e.drawn);
-            e.bound = log1pl(1e-7L);
-            for (size_t j = 0; j < k; j++)
-                e.bound += ln_choose(factorial, with[j] + without[j], with[j]);
-            size_t width = e.totals[e.columns - 2] + 1;
-            e.row = ARENA_NEW(&arena, width, wide);
-            e.from_left = ARENA_NEW(&arena, width, wide);
-            e.from_right = ARENA_NEW(&arena, width, wide);
+            prepare(&e, with, without, k, &arena);
             result.p = enumerate(&e, prefix_capacity);
         }
     }
