@@ -11,6 +11,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_flow,
     &exhibit_baseline,
     &exhibit_discrepancies,
+    &exhibit_missing_grid,
     &exhibit_missing_by_arm,
     &exhibit_distribution,
     &exhibit_change_by_arm,
@@ -448,6 +449,9 @@ static const char *band_label(struct arena *arena, const struct covariate *covar
 static void tabs_of_words(const struct view *view, struct html *html, const struct argument_rule *rule) {
     for (const char *at = rule->words; *at; at += strcspn(at, " "), at += *at == ' ') {
         char *word = arena_bytes(view->arena, at, strcspn(at, " ")), *label = arena_text(view->arena, word);
+        if (strcmp(word, "arm") == 0 && view->arms.pooled) {
+            continue; /* it would only be refused */
+        }
         for (char *p = label; *p; p++) {
             *p = *p == '-' ? ' ' : *p;
         }
