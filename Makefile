@@ -39,7 +39,7 @@ endif
 .SECONDARY:
 
 build/evenhand: build/release/evenhand
-	$(QUIET)cp $< $@
+	$(QUIET)cp --remove-destination $< $@
 
 $(OUT)/evenhand: $(OUT)/server/main.o $(OUT)/libevenhand.a
 	$(call say,LD,$@)

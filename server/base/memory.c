@@ -64,14 +64,14 @@ void *arena_new(struct arena *arena, size_t count, size_t size) {
     size_t wanted = (count * size + alignof(max_align_t) - 1) / alignof(max_align_t) * alignof(max_align_t);
     if (!arena->block || arena->block->size - arena->used < wanted) {
         size_t room = wanted > BLOCK_SIZE ? wanted : BLOCK_SIZE;
-        struct arena_block *block = or_stop(malloc(sizeof *block + room));
+        struct arena_block *block = or_stop(calloc(1, sizeof *block + room)); /* zeroed once, handed out once */
         *block = (struct arena_block){.next = arena->block, .size = room};
         arena->block = block;
         arena->used = 0;
     }
     void *memory = arena->block->bytes + arena->used;
     arena->used += wanted;
-    return memset(memory, 0, wanted);
+    return memory;
 }
 
 char *arena_bytes(struct arena *arena, const char *bytes, size_t length) {

@@ -287,8 +287,23 @@ static void suspect_code(struct finding *finding, const struct column *column, c
     new->proposal_words = arena_format(finding->arena, "Treat %s as a code for missing", text);
 }
 
+/* Most columns have none, and need no sorting. */
+static bool any_sentinel(const struct frame *frame, const struct column *column, const struct range *plausible) {
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        double value = column->number[p];
+        bool inside = plausible->given && value >= plausible->low && value <= plausible->high;
+        if (!isnan(value) && !inside && is_sentinel(value)) {
+            return true;
+        }
+    }
+    return false;
+}
+
 static void suspect_codes(struct finding *finding, const struct column *column, const struct variable *variable) {
     const struct frame *frame = finding->frame;
+    if (!any_sentinel(frame, column, &variable->plausible)) {
+        return;
+    }
     double *sorted = ARENA_NEW(finding->arena, frame->participant_count, double);
     size_t n = 0;
     for (size_t p = 0; p < frame->participant_count; p++) {
