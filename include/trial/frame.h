@@ -30,10 +30,10 @@ struct column {
     struct arena arena;
     size_t index; /* column of the cells */
     enum variable_kind kind;
-    const char **text;    /* [records] current text; NULL: set missing; points into the cells or this arena */
-    uint32_t *origin;     /* [records] number of the decision that made it, 0: as received; NULL: none changed */
+    const char **changed; /* [records] current text (NULL: set missing), where any cell has changed; else NULL: as received */
+    uint32_t *origin;     /* [records] number of the decision that made it, 0: as received; NULL like changed */
     double *number;       /* [participants] numbers: the value, NaN unless observed */
-    double *limit;        /* [participants] numbers: the limit where below or above one, else NaN */
+    double *limit;        /* [participants] numbers: the limit where below or above one, else NaN; NULL where there is none */
     int32_t *level;       /* [participants] categories, events (0 no, 1 yes), arm: index of the level, NOWHERE if missing */
     unsigned char *state; /* [participants] enum cell_state */
     struct level *levels; /* categories and arm: the plan's, then unlisted codes as they stand, in byte order */
@@ -85,6 +85,10 @@ void frame_release(struct frame *frame); /* NULL is fine */
 
 /* The participant's index by binary search, or NOWHERE. */
 int frame_participant(const struct frame *frame, const char *id);
+/* Current text of a column in a 0-based record: NULL where set missing. */
+static inline const char *column_text(const struct frame *frame, const struct column *column, size_t record) {
+    return column->changed ? column->changed[record] : cells_at(frame->cells, record, column->index);
+}
 /* Current text of a column for a participant: NULL where set missing or held aside. */
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant);
 /* The frame's column of that name (variable, arm, identifier) or NULL. */

@@ -54,7 +54,7 @@ static void take_values(struct view *view, struct participant_result *result) {
         value->hidden = arms_hide_column(frame, value->variable->column);
         if (record != NO_RECORD && !value->hidden) {
             value->received = cells_at(frame->cells, record, column->index);
-            value->current = column->text[record];
+            value->current = column_text(frame, column, record);
             value->origin = column->origin ? column->origin[record] : 0;
             value->doubtful = is_doubtful(result, value->variable->column);
         }

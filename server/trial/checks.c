@@ -192,7 +192,7 @@ static void check_no_identifier(struct finding *finding) {
     const struct frame *frame = finding->frame;
     size_t blank = 0, first = 0;
     for (size_t r = 0; r < frame->cells->records; r++) {
-        const char *id = frame->identifier->text[r];
+        const char *id = column_text(frame, frame->identifier, r);
         if (!id || id[strspn(id, " \t\r\n\f\v")] == '\0') {
             first = blank++ == 0 ? r + 1 : first;
         }

@@ -77,7 +77,7 @@ static void build_roster(struct build *build) {
     size_t records = frame->cells->records, used = 0;
     struct roster_row *rows = memory_new(records, sizeof *rows);
     for (size_t r = 0; r < records; r++) {
-        const char *id = frame->identifier->text[r];
+        const char *id = column_text(frame, frame->identifier, r);
         if (id && !is_blank(id)) {
             rows[used++] = (struct roster_row){id, r};
         }
@@ -112,7 +112,7 @@ static bool apply_keep(struct build *build, size_t i) {
     const struct decision *decision = &frame->decisions[i];
     int who = frame_participant(frame, decision->participant);
     size_t record = decision->row - 1;
-    const char *there = record < frame->cells->records ? frame->identifier->text[record] : NULL;
+    const char *there = record < frame->cells->records ? column_text(frame, frame->identifier, record) : NULL;
     if (who == NOWHERE || !there || strcmp(there, decision->participant) != 0) {
         return !is_new(build, i) || refuse(build, i,
             who == NOWHERE ? "names a participant who is not in the file" : "names a row that is not one of the participant's records");
@@ -151,7 +151,7 @@ size_t frame_records(const struct frame *frame, size_t participant, size_t *reco
     }
     size_t found = 0;
     for (size_t r = 0; r < frame->cells->records && found < who->record_count; r++) {
-        const char *id = frame->identifier->text[r];
+        const char *id = column_text(frame, frame->identifier, r);
         if (id && strcmp(id, who->id) == 0) {
             if (found < room) {
                 records[found] = r;
@@ -190,10 +190,15 @@ static bool roster_touched(const struct build *build) {
 }
 
 static void put_cell(struct build *build, struct column *column, size_t record, const char *text, uint32_t number) {
+    size_t records = build->frame->cells->records;
     if (!column->origin) {
-        column->origin = ARENA_NEW(&column->arena, build->frame->cells->records, uint32_t);
+        column->origin = ARENA_NEW(&column->arena, records, uint32_t);
+        column->changed = ARENA_NEW(&column->arena, records, const char *);
+        for (size_t r = 0; r < records; r++) {
+            column->changed[r] = cells_at(build->frame->cells, r, column->index);
+        }
     }
-    column->text[record] = text;
+    column->changed[record] = text;
     column->origin[record] = number;
 }
 
@@ -205,20 +210,21 @@ static bool same_text(const char *a, const char *b) {
 static size_t count_text(const struct build *build, const struct column *column, const char *text) {
     size_t count = 0;
     for (size_t r = 0; r < build->frame->cells->records; r++) {
-        count += same_text(column->text[r], text);
+        count += same_text(column_text(build->frame, column, r), text);
     }
     return count;
 }
 
 /* An identifier's own correction is addressed by the identifier as it reads at that point of the record. */
-static size_t record_of_identifier(const struct column *column, size_t records, const char *id, const char **why) {
+static size_t record_of_identifier(
+    const struct frame *frame, const struct column *column, const char *id, const char **why) {
     size_t found = NO_RECORD;
-    for (size_t r = 0; r < records; r++) {
-        if (same_text(column->text[r], id) && found != NO_RECORD) {
+    for (size_t r = 0; r < frame->cells->records; r++) {
+        if (same_text(column_text(frame, column, r), id) && found != NO_RECORD) {
             *why = "is about an identifier that several records bear; say which one with \"row\"";
             return NO_RECORD;
         }
-        found = same_text(column->text[r], id) ? r : found;
+        found = same_text(column_text(frame, column, r), id) ? r : found;
     }
     *why = "names a participant who is not in the file";
     return found;
@@ -232,10 +238,10 @@ static size_t record_meant(
     if (decision->row) {
         size_t record = decision->row - 1;
         *why = "names a row that is not one of the participant's records";
-        return record < frame->cells->records && same_text(identifier->text[record], decision->participant) ? record : NO_RECORD;
+        return record < frame->cells->records && same_text(column_text(frame, identifier, record), decision->participant) ? record : NO_RECORD;
     }
     if (column->kind == VARIABLE_PARTICIPANT) {
-        return record_of_identifier(column, frame->cells->records, decision->participant, why);
+        return record_of_identifier(frame, column, decision->participant, why);
     }
     int who = frame_participant(frame, decision->participant);
     *why = who == NOWHERE ? "names a participant who is not in the file" :
@@ -261,11 +267,11 @@ static bool apply_to_cell(struct build *build, size_t i, struct column *column) 
         return !is_new(build, i) || refuse(build, i, why);
     }
     if (decision->kind == DECISION_CONFIRM) {
-        return !is_new(build, i) || same_text(column->text[record], decision->value) ||
+        return !is_new(build, i) || same_text(column_text(build->frame, column, record), decision->value) ||
                refuse(build, i, "confirms a value that is not the text now current");
     }
-    if (is_new(build, i) && !same_text(column->text[record], decision->from)) {
-        return from_differs(build, i, column, column->text[record]);
+    if (is_new(build, i) && !same_text(column_text(build->frame, column, record), decision->from)) {
+        return from_differs(build, i, column, column_text(build->frame, column, record));
     }
     put_cell(build, column, record, decision->kind == DECISION_CORRECT ? decision->to : NULL, decision->number);
     return true;
@@ -277,7 +283,7 @@ static bool apply_read_as(struct build *build, size_t i, struct column *column) 
         return refuse(build, i, "reads a code as another, but no value of the column now reads so");
     }
     for (size_t r = 0; r < build->frame->cells->records; r++) {
-        if (same_text(column->text[r], decision->from)) {
+        if (same_text(column_text(build->frame, column, r), decision->from)) {
             put_cell(build, column, r, decision->to, decision->number);
         }
     }
@@ -356,7 +362,19 @@ static char decimal_sign(const struct build *build, const char *name) {
     return sign;
 }
 
-static void interpret_number(struct column *column, size_t p, const char *text, const struct codes *codes, char sign) {
+/* Limits are rare: their array is made with the first one. */
+static void note_limit(struct column *column, size_t participants, size_t p, double limit) {
+    if (!column->limit) {
+        column->limit = ARENA_NEW(&column->arena, participants, double);
+        for (size_t i = 0; i < participants; i++) {
+            column->limit[i] = NAN;
+        }
+    }
+    column->limit[p] = limit;
+}
+
+static void interpret_number(const struct frame *frame, struct column *column, size_t p, const char *text,
+    const struct codes *codes, char sign) {
     static const unsigned char state_of[] = {[NUMBER_READ] = CELL_OBSERVED, [NUMBER_BLANK] = CELL_BLANK,
         [NUMBER_UNREADABLE] = CELL_UNREADABLE, [NUMBER_BELOW_LIMIT] = CELL_BELOW_LIMIT, [NUMBER_ABOVE_LIMIT] = CELL_ABOVE_LIMIT};
     double value;
@@ -369,7 +387,7 @@ static void interpret_number(struct column *column, size_t p, const char *text, 
         column->number[p] = value;
         column->decimals = decimals > column->decimals ? decimals : column->decimals;
     } else if (reading == NUMBER_BELOW_LIMIT || reading == NUMBER_ABOVE_LIMIT) {
-        column->limit[p] = value;
+        note_limit(column, frame->participant_count, p, value);
     }
 }
 
@@ -455,7 +473,7 @@ static void interpret_cell(const struct frame *frame, struct column *column, siz
         column->level[p] = event_level(event, text);
         column->state[p] = column->level[p] != NOWHERE ? CELL_OBSERVED : is_blank(text) ? CELL_BLANK : CELL_UNREADABLE;
     } else {
-        interpret_number(column, p, text, codes, sign);
+        interpret_number(frame, column, p, text, codes, sign);
     }
 }
 
@@ -485,9 +503,8 @@ static void interpret(struct build *build, struct column *column, const char *na
     column->state = ARENA_NEW(&column->arena, n, unsigned char);
     if (column->kind == VARIABLE_NUMBER) {
         column->number = ARENA_NEW(&column->arena, n, double);
-        column->limit = ARENA_NEW(&column->arena, n, double);
         for (size_t p = 0; p < n; p++) {
-            column->number[p] = column->limit[p] = NAN;
+            column->number[p] = NAN;
         }
     } else {
         column->level = ARENA_NEW(&column->arena, n, int32_t);
@@ -512,10 +529,6 @@ static struct column *column_new(const struct frame *frame, const char *name, en
     arena_init(&column->arena);
     column->index = cells_column(frame->cells, name);
     column->kind = kind;
-    column->text = ARENA_NEW(&column->arena, frame->cells->records, const char *);
-    for (size_t r = 0; r < frame->cells->records; r++) {
-        column->text[r] = cells_at(frame->cells, r, column->index);
-    }
     return column;
 }
 
@@ -795,7 +808,7 @@ void frame_release(struct frame *frame) {
 
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant) {
     size_t record = frame->participants[participant].record;
-    return record == NO_RECORD ? NULL : column->text[record];
+    return record == NO_RECORD ? NULL : column_text(frame, column, record);
 }
 
 const struct column *frame_column(const struct frame *frame, const char *name) {
