@@ -37,16 +37,23 @@ uint64_t generator_next(struct generator *generator) {
     return result;
 }
 
-/* Lemire 2019 (ACM Trans Model Comput Simul 29:3): the high half of a product, with no division but in rare cases. */
+/* Lemire 2019 (ACM Trans Model Comput Simul 29:3): a product instead of a division; the few draws that would favour
+ * some numbers are drawn again. Limits of 2^32 and more, which no trial has, take the slow way. */
 size_t generator_below(struct generator *generator, size_t limit) {
     BUG_IF(limit == 0);
-    __extension__ typedef unsigned __int128 product;
     uint64_t range = limit;
-    product x = (product)generator_next(generator) * range;
-    if ((uint64_t)x < range)
-        for (uint64_t bias = (UINT64_MAX - range + 1) % range; (uint64_t)x < bias;)
-            x = (product)generator_next(generator) * range;
-    return (size_t)(x >> 64);
+    if (range > UINT32_MAX) {
+        uint64_t excess = (UINT64_MAX % range + 1) % range, x; /* the last, incomplete round */
+        do
+            x = generator_next(generator);
+        while (excess && x > UINT64_MAX - excess);
+        return (size_t)(x % range);
+    }
+    uint64_t product = (generator_next(generator) >> 32) * range;
+    if ((uint32_t)product < range)
+        for (uint32_t least = (uint32_t)(0x100000000u % range); (uint32_t)product < least;)
+            product = (generator_next(generator) >> 32) * range;
+    return (size_t)(product >> 32);
 }
 
 double generator_uniform(struct generator *generator) {

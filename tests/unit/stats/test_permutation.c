@@ -159,6 +159,10 @@ static void draws_are_even(void **state) {
     assert_true(chi_square < 30); /* p about 4e-5 at 6 df; the seed is fixed */
     near(sum / 70000, 0.5, 0, 0.005, "mean of uniform draws");
     assert_int_equal(generator_below(&g, 1), 0);
+    double large = 0;
+    for (int i = 0; i < 10000; i++)
+        large += (double)generator_below(&g, SIZE_MAX - 5) / (double)SIZE_MAX / 10000;
+    near(large, 0.5, 0, 0.015, "mean of draws below a large limit");
 }
 
 /* First outputs of xoshiro256** from the state 1, 2, 3, 4, by hand from its definition: rotl(2 * 5, 7) * 9 = 11520,
