@@ -1,9 +1,11 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* What all figures share. A figure is one <svg class="figure" role="img"> with title and description, complete as a
- * file: its colours, sizes and fonts are attributes, its footer says which trial, version and blinding it was drawn
- * from. Every mark of a participant carries data-participant, tabindex, role="button" and an aria-label "Q2400,
- * −41.2". Units are pixels at the figure's own width. No text is smaller than 13 units (25 in the meeting view), none
- * overlaps another, and a value beyond the axis is an arrow at the edge with the value written beside it. */
+/* What all figures share. A figure is one <svg class="figure"> with title and description, complete as a file: its
+ * colours, sizes and fonts are attributes, its footer says which trial, version and blinding it was drawn from. Its
+ * role is "img", or "group" when marks in it can be opened (what is within an image is hidden from screen readers).
+ * Marks of arms (struct palette_mark) are needed where not said otherwise. Every mark of a participant carries
+ * data-participant, tabindex, role="button" and an aria-label "Q2400, −41.2". Units are pixels at the figure's own
+ * width. No text is smaller than 13 units (25 in the meeting view), none overlaps another, and a value beyond the axis
+ * is an arrow at the edge with the value written beside it. */
 #ifndef EVENHAND_DRAW_FIGURE_H
 #define EVENHAND_DRAW_FIGURE_H
 #include "draw/html.h"

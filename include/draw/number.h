@@ -9,8 +9,11 @@
 /* 15, 16 or 17 significant digits, the fewest that read back as the same double, trailing zeros dropped ("%.17g" at
  * worst); whole numbers below 2^53 without exponent; the minus is the ASCII hyphen. value must be finite. */
 void number_exact(struct text *out, double value);
-/* For a person: fixed decimals, true minus, and when with_sign a plus before positive numbers. NaN gives an en dash. */
+/* For a person: fixed decimals, true minus, and when with_sign a plus before positive numbers. NaN gives an en dash;
+ * from 1e12 on it is number_powers. */
 void number_shown(struct text *out, double value, int decimals, bool with_sign);
+/* "2×10⁹", up to six digits before the power; value finite and not 0. */
+void number_powers(struct text *out, double value, bool with_sign);
 /* Decimals that show every digit of a step or of data recorded to that step: 5 -> 0, 0.25 -> 2; at most 8. */
 int number_decimals(double step);
 

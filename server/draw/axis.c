@@ -3,9 +3,6 @@
 #include "base/memory.h"
 #include "draw/number.h"
 #include <math.h>
-#include <stdio.h>
-#include <stdlib.h>
-#include <string.h>
 
 static double nice_step(double span, size_t wanted) {
     double rough = span / (double)wanted;
@@ -63,7 +60,8 @@ static double log_nice(double value, bool above) {
 static void log_ticks(struct axis *axis, size_t wanted) {
     double decades = log10(axis->high) - log10(axis->low);
     bool all = decades <= (double)AXIS_TICKS / 3.0 - 1.0;
-    axis->powers = decades * 3.0 > (double)wanted * 1.7;
+    double within = floor(log10(axis->high) + 1e-9) - ceil(log10(axis->low) - 1e-9) + 1.0; /* powers on the axis */
+    axis->powers = decades * 3.0 > (double)wanted * 1.7 && within >= 2.0;
     int every = 1; /* powers between ticks */
     while (!all && decades / every > (double)wanted * 1.7) {
         every++;
@@ -143,32 +141,13 @@ double axis_place(const struct axis *axis, double value) {
     return axis->from + share * (axis->to - axis->from);
 }
 
-/* "2×10⁻⁹", for what would need too many zeros. */
-static void powers(struct text *out, double tick, bool with_sign) {
-    static const char *const raised[] = {
-        "\u2070", "\u00b9", "\u00b2", "\u00b3", "\u2074", "\u2075", "\u2076", "\u2077", "\u2078", "\u2079"};
-    int power = (int)floor(log10(fabs(tick)) + 1e-9);
-    double multiple = fabs(tick) / pow(10.0, power);
-    char digits[32];
-    text_string(out, tick < 0.0 ? "\u2212" : with_sign ? "+" : "");
-    snprintf(digits, sizeof digits, "%.6g", multiple);
-    if (strcmp(digits, "1") != 0) {
-        text_format(out, "%s\u00d7", digits);
-    }
-    text_string(out, power < 0 ? "10\u207b" : "10");
-    snprintf(digits, sizeof digits, "%d", abs(power));
-    for (const char *at = digits; *at; at++) {
-        text_string(out, raised[*at - '0']);
-    }
-}
-
 void axis_label(const struct axis *axis, double tick, struct text *out) {
     bool log10_scale = axis->scale == AXIS_LOG10;
     double largest = log10_scale ? tick : fmax(fabs(axis->low), fabs(axis->high));
     double smallest = log10_scale ? tick : axis->high - axis->low;
     bool far = largest > 9999999.0 || smallest < 1e-4;
     if (far && tick != 0.0) {
-        powers(out, tick, axis->with_sign);
+        number_powers(out, tick, axis->with_sign);
         return;
     }
     int decimals = far ? 0 : log10_scale ? number_decimals(tick) : axis->decimals;

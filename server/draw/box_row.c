@@ -3,6 +3,7 @@
 #include "base/memory.h"
 #include "draw/number.h"
 #include <math.h>
+#include <stdint.h>
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
@@ -117,10 +118,12 @@ static void collect(struct row *row, bool outliers_only) {
     qsort(row->spots, row->spot_count, sizeof *row->spots, by_value);
 }
 
-/* The first lane with room for each point, from left to right; y is the lane's number. Returns how many lanes. */
-static size_t stack(struct row *row, double spacing, double *ends) {
+/* The first lane with room for each point, from left to right; y is the lane's number. Returns how many lanes, or,
+ * stopping early, most + 1: a tower is not worth building. */
+static size_t stack(struct row *row, double spacing, size_t most) {
+    double *ends = memory_new(row->spot_count + 1, sizeof *ends);
     size_t lanes = 0;
-    for (size_t i = 0; i < row->spot_count; i++) {
+    for (size_t i = 0; i < row->spot_count && lanes <= most; i++) {
         struct spot *spot = &row->spots[i];
         size_t lane = 0;
         while (lane < lanes && ends[lane] > spot->x - spacing) {
@@ -130,6 +133,7 @@ static size_t stack(struct row *row, double spacing, double *ends) {
         ends[lane] = spot->x;
         spot->y = (double)lane;
     }
+    memory_free(ends);
     return lanes;
 }
 
@@ -137,18 +141,15 @@ static double spacing_of(double radius) {
     return radius * 2.5 + 0.7;
 }
 
-/* Stacks with points of this size; returns the height. */
-static double stack_height(struct row *row, double radius) {
-    double *ends = memory_new(row->spot_count + 1, sizeof *ends);
-    size_t lanes = stack(row, spacing_of(radius), ends);
-    memory_free(ends);
-    return spacing_of(radius) * (double)lanes;
+static bool fits(struct row *row, double radius, double room) {
+    size_t most = (size_t)floor(room / spacing_of(radius));
+    return stack(row, spacing_of(radius), most) <= most;
 }
 
 /* The largest radius, from this one down, with which the stack is no higher than `room`, or the smallest there is. */
 static double fitting_radius(struct row *row, double radius, double room) {
     double smallest = 0.9 * row->canvas->unit;
-    while (radius > smallest && stack_height(row, radius) > room) {
+    while (radius > smallest && !fits(row, radius, room)) {
         radius = fmax(radius * 0.9, smallest);
     }
     return radius;
@@ -166,14 +167,15 @@ double box_row_radius(const struct canvas *canvas, const struct axis *axis, cons
     struct row row = {.canvas = &probe, .axis = axis, .data = data};
     row.spots = memory_new(data->point_count, sizeof *row.spots);
     collect(&row, false);
-    double radius = fitting_radius(&row, usual, room), height = stack_height(&row, radius);
+    double radius = fitting_radius(&row, usual, room);
+    bool drawn = fits(&row, radius, fmax(room, tower * canvas->unit));
     memory_free(row.spots);
-    return height <= fmax(room, tower * canvas->unit) ? radius : 0.0;
+    return drawn ? radius : 0.0;
 }
 
 static void place_points(struct row *row, double radius, double top) {
     row->radius = radius;
-    double height = stack_height(row, radius);
+    double height = spacing_of(radius) * (double)stack(row, spacing_of(radius), SIZE_MAX - 1);
     for (size_t i = 0; i < row->spot_count; i++) {
         row->spots[i].y = top + spacing_of(radius) * (row->spots[i].y + 0.5);
     }

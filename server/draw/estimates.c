@@ -53,20 +53,24 @@ static void find_axis(const struct canvas *canvas, const struct estimates *estim
     columns->axis.with_sign = estimates->axis.with_sign;
 }
 
+/* What a cell needs of its column: its words in one line, or broken evenly where they are wider than `most`. */
+static double column_width(struct canvas_style style, double most, const char *string) {
+    return fmin(canvas_width(style, string), canvas_balance(most, style, string));
+}
+
 static void find_columns(const struct canvas *canvas, const struct estimates *estimates, struct columns *columns) {
     struct canvas_style quiet = quiet_style(canvas);
     *columns = (struct columns){.row = fmax(canvas->normal * 2.2, 31.0 * canvas->unit)};
-    columns->role = canvas_width(quiet, estimates->role_heading);
+    columns->role = column_width(quiet, canvas->width * 0.13, estimates->role_heading);
     columns->figures = canvas_width(quiet, estimates->figures_heading);
     for (size_t r = 0; r < estimates->row_count; r++) {
         const struct estimates_row *row = &estimates->rows[r];
         struct canvas_style style = label_style(canvas, row->emphasised);
-        columns->label = fmax(columns->label, canvas_width(style, row->label));
-        columns->role = fmax(columns->role, canvas_width(quiet, row->role));
+        columns->label = fmax(columns->label, column_width(style, canvas->width * 0.27, row->label));
+        columns->role = fmax(columns->role, column_width(quiet, canvas->width * 0.13, row->role));
         columns->figures = fmax(columns->figures, row->sentence ? 0.0 : canvas_width(style, row->figures));
     }
-    columns->label = fmin(columns->label, canvas->width * 0.27) + canvas->small;
-    columns->role = fmin(columns->role, canvas->width * 0.13);
+    columns->label += canvas->small;
     columns->figures = fmin(columns->figures, canvas->width * 0.24) + (columns->figures > 0.0 ? canvas->small : 0.0);
     find_axis(canvas, estimates, columns);
     columns->figures -= columns->figures > 0.0 ? canvas->small : 0.0;

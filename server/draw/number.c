@@ -25,8 +25,29 @@ void number_exact(struct text *out, double value) {
     }
 }
 
+void number_powers(struct text *out, double value, bool with_sign) {
+    static const char *const raised[] = {
+        "\u2070", "\u00b9", "\u00b2", "\u00b3", "\u2074", "\u2075", "\u2076", "\u2077", "\u2078", "\u2079"};
+    BUG_IF(!isfinite(value) || value == 0.0);
+    int power = (int)floor(log10(fabs(value)) + 1e-9);
+    double multiple = fabs(value) / pow(10.0, power);
+    char digits[32];
+    text_string(out, value < 0.0 ? "\u2212" : with_sign ? "+" : "");
+    snprintf(digits, sizeof digits, "%.6g", multiple);
+    if (strcmp(digits, "1") != 0) {
+        text_format(out, "%s\u00d7", digits);
+    }
+    text_string(out, power < 0 ? "10\u207b" : "10");
+    snprintf(digits, sizeof digits, "%d", abs(power));
+    for (const char *at = digits; *at; at++) {
+        text_string(out, raised[*at - '0']);
+    }
+}
+
 void number_shown(struct text *out, double value, int decimals, bool with_sign) {
-    if (with_sign) {
+    if (isfinite(value) && fabs(value) >= 1e12) {
+        number_powers(out, value, with_sign);
+    } else if (with_sign) {
         text_signed(out, value, decimals);
     } else {
         text_decimal(out, value, decimals);

@@ -445,37 +445,66 @@ static double draw_top(struct canvas *canvas, const struct pairs *pairs, bool sc
     return y;
 }
 
+struct layout {
+    bool scatter;
+    double low, high;         /* of the values */
+    double margin, each, gap; /* room for labels at the left; width of a panel; between panels */
+    double height;            /* of a plot */
+    size_t per_row;
+};
+
+static void find_layout(const struct canvas *canvas, const struct pairs *pairs, struct layout *layout) {
+    double unit = canvas->unit, least = 215.0 * unit;
+    *layout = (struct layout){.scatter = as_scatter(pairs), .gap = 30.0 * unit};
+    find_range(pairs, &layout->low, &layout->high);
+    struct axis axis;
+    axis_init(&axis, pairs->axis.scale, layout->low, layout->high, 0.0, 1.0, 6);
+    layout->margin = values_width(canvas, &axis) + canvas->small;
+    double room = canvas->width - layout->margin - canvas->small, panels = fmax((double)pairs->panel_count, 1.0);
+    double most = fmin(fmax(floor((room + layout->gap) / (least + layout->gap)), 1.0), panels);
+    double rows = ceil(panels / most), in_row = ceil(panels / rows); /* as evenly as they go */
+    layout->per_row = (size_t)in_row;
+    layout->each = (room - layout->gap * (in_row - 1.0)) / in_row;
+    layout->height = layout->scatter ? fmin(layout->each, 400.0 * unit) : 320.0 * unit;
+}
+
+static struct frame frame_of(const struct pairs *pairs, const struct layout *layout, size_t panel) {
+    size_t column = panel % layout->per_row;
+    double left = layout->margin + (layout->each + layout->gap) * (double)column;
+    return (struct frame){
+        pairs, &pairs->panels[panel], .left = left, .right = left + layout->each, .first = column == 0};
+}
+
+/* Panels [from, to) beside each other; returns the lowest baseline. */
+static double draw_row(
+    struct canvas *canvas, const struct pairs *pairs, const struct layout *layout, size_t from, size_t to, double top) {
+    double plot = top, last = top;
+    for (size_t p = from; p < to; p++) { /* headings first, so that all plots begin at one height */
+        struct frame frame = frame_of(pairs, layout, p);
+        plot = fmax(plot, draw_heading(canvas, &frame, top) + 6.0 * canvas->unit);
+    }
+    for (size_t p = from; p < to; p++) {
+        struct frame frame = frame_of(pairs, layout, p);
+        frame.right = layout->scatter ? frame.left + layout->height : frame.right;
+        frame.top = plot;
+        frame.bottom = plot + layout->height;
+        make_axes(canvas, &frame, layout->scatter, layout->low, layout->high);
+        places_init(&frame.places);
+        draw_values(canvas, &frame);
+        last = fmax(last, layout->scatter ? draw_scatter(canvas, &frame) : draw_lines(canvas, &frame));
+        places_release(&frame.places);
+    }
+    return last;
+}
+
 static void draw(struct canvas *canvas, const void *data) {
     const struct pairs *pairs = data;
-    bool scatter = as_scatter(pairs);
-    double low, high, unit = canvas->unit, gap = 30.0 * unit, count = (double)pairs->panel_count;
-    find_range(pairs, &low, &high);
-    struct axis probe_axis;
-    axis_init(&probe_axis, pairs->axis.scale, low, high, 0.0, 1.0, 6);
-    double margin = values_width(canvas, &probe_axis) + canvas->small;
-    double each = (canvas->width - margin - gap * (count - 1.0) - canvas->small) / fmax(count, 1.0);
-    double top = draw_top(canvas, pairs, scatter), headings = top, last = top;
-    double height = scatter ? fmin(each, 400.0 * unit) : 320.0 * unit;
-    struct canvas probe = *canvas;
-    probe.html = NULL;
-    for (int pass = 0; pass < 2; pass++) { /* headings first, so that all plots begin at one height */
-        for (size_t p = 0; p < pairs->panel_count; p++) {
-            double left = margin + (each + gap) * (double)p;
-            struct frame frame = {pairs, &pairs->panels[p], .left = left, .right = left + each, .first = p == 0};
-            if (pass == 0) {
-                headings = fmax(headings, draw_heading(&probe, &frame, top));
-                continue;
-            }
-            draw_heading(canvas, &frame, top);
-            frame.right = scatter ? left + height : frame.right;
-            frame.top = headings + 6.0 * unit;
-            frame.bottom = frame.top + height;
-            make_axes(canvas, &frame, scatter, low, high);
-            places_init(&frame.places);
-            draw_values(canvas, &frame);
-            last = fmax(last, scatter ? draw_scatter(canvas, &frame) : draw_lines(canvas, &frame));
-            places_release(&frame.places);
-        }
+    struct layout layout;
+    find_layout(canvas, pairs, &layout);
+    double last = draw_top(canvas, pairs, layout.scatter);
+    for (size_t p = 0; p < pairs->panel_count; p += layout.per_row) {
+        size_t end = p + layout.per_row < pairs->panel_count ? p + layout.per_row : pairs->panel_count;
+        last = draw_row(canvas, pairs, &layout, p, end, last);
     }
     if (pairs->axis.lower) {
         struct canvas_style quiet = {.size = canvas->small, .colour = PALETTE_QUIET};

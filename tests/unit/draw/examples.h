@@ -492,6 +492,66 @@ static void bars_none(struct arena *arena, const struct figure *figure, struct h
     bars_svg(&bars, figure, html);
 }
 
+/* Nothing to draw, and numbers that are none, must still give a figure. */
+static void empty_boxes(struct arena *arena, const struct figure *figure, struct html *html) {
+    (void)arena;
+    const struct boxes boxes = {.axis = {.low = NAN, .high = NAN, .null_line = NAN}};
+    boxes_svg(&boxes, figure, html);
+}
+
+static void odd_boxes(struct arena *arena, const struct figure *figure, struct html *html) {
+    (void)arena;
+    const struct figure_point points[] = {
+        {"Q1", NAN, false}, {"Q2", INFINITY, true}, {"Q3", -1e300, true}, {NULL, 0.0, true}};
+    const struct boxes_row row = {.mark = palette_pooled(),
+        .low_whisker = NAN,
+        .low_quartile = NAN,
+        .median = NAN,
+        .mean = NAN,
+        .high_quartile = NAN,
+        .high_whisker = NAN,
+        .points = points,
+        .point_count = 4};
+    const struct boxes_group group = {.rows = &row, .row_count = 1};
+    struct boxes boxes = {
+        .axis = {.scale = AXIS_LOG10, .low = NAN, .high = NAN, .null_line = 1.0}, .groups = &group, .group_count = 1};
+    boxes_svg(&boxes, figure, html);
+}
+
+static void empty_estimates(struct arena *arena, const struct figure *figure, struct html *html) {
+    (void)arena;
+    static const struct estimates_row row = {.label = "x", .estimate = NAN, .low = NAN, .high = INFINITY};
+    const struct estimates estimates = {.axis = {.low = NAN, .high = NAN, .null_line = NAN},
+        .band_low = NAN,
+        .band_high = NAN,
+        .rows = &row,
+        .row_count = 1};
+    estimates_svg(&estimates, figure, html);
+}
+
+static void empty_histogram(struct arena *arena, const struct figure *figure, struct html *html) {
+    (void)arena;
+    const struct histogram_panel panel = {.axis = {.low = NAN, .high = NAN, .null_line = NAN},
+        .row = {.mark = palette_pooled(), .sentence = "No value was observed."}};
+    const struct histogram histogram = {.panels = &panel, .panel_count = 1};
+    histogram_svg(&histogram, figure, html);
+}
+
+static void empty_pairs(struct arena *arena, const struct figure *figure, struct html *html) {
+    (void)arena;
+    const struct pairs_panel panel = {.mark = palette_pooled(), .median_before = NAN, .median_after = NAN};
+    const struct pairs pairs = {.axis = {.low = NAN, .high = NAN}, .panels = &panel, .panel_count = 1};
+    pairs_svg(&pairs, figure, html);
+}
+
+static void empty_grid(struct arena *arena, const struct figure *figure, struct html *html) {
+    (void)arena;
+    static const struct grid_variable variable = {"Sex", "sex", NULL};
+    static const struct grid_block block = {.label = "A"};
+    const struct grid grid = {&variable, 1, &block, 1};
+    grid_svg(&grid, figure, html);
+}
+
 static const struct example examples[] = {
     {"boxes-sex", boxes_by_sex},
     {"boxes-three", boxes_three_arms},
@@ -514,6 +574,12 @@ static const struct example examples[] = {
     {"flow-pooled", flow_pooled},
     {"bars-levels", bars_levels},
     {"bars-none", bars_none},
+    {"boxes-empty", empty_boxes},
+    {"boxes-odd", odd_boxes},
+    {"estimates-empty", empty_estimates},
+    {"histogram-empty", empty_histogram},
+    {"pairs-empty", empty_pairs},
+    {"grid-empty", empty_grid},
 };
 
 enum { EXAMPLES = sizeof examples / sizeof *examples };

@@ -212,14 +212,21 @@ static size_t check_words(const struct reading *reading, const char *name, doubl
     return faults;
 }
 
-static void draw_example(const struct example *example, bool meeting, struct text *out) {
+/* The page; the page with a participant beside; the meeting view. */
+static const struct {
+    double width, drawn, smallest;
+    bool meeting;
+} sizes[] = {{0.0, FIGURE_WIDTH, 13.0, false}, {740.0, 740.0, 13.0, false}, {0.0, FIGURE_MEETING_WIDTH, 25.0, true}};
+
+static void draw_example(const struct example *example, size_t size, struct text *out) {
     struct arena arena;
     arena_init(&arena);
     struct figure figure = {.id = "figure",
         .title = "Does the <change> differ & where?",
         .description = "Said \"so\".",
         .identity = "Quayside Walking Trial \u00b7 after decision 14 \u00b7 CODED",
-        .meeting = meeting};
+        .width = sizes[size].width,
+        .meeting = sizes[size].meeting};
     struct html html;
     html_init(&html, out);
     example->draw(&arena, &figure, &html);
@@ -232,19 +239,19 @@ static void test_every_figure(void **state) {
     struct reading *reading = memory_new(1, sizeof *reading);
     size_t faults = 0;
     for (size_t i = 0; i < EXAMPLES; i++) {
-        for (int meeting = 0; meeting < 2; meeting++) {
+        for (size_t size = 0; size < 3; size++) {
             struct text out, again;
             text_init(&out);
             text_init(&again);
-            draw_example(&examples[i], meeting, &out);
-            draw_example(&examples[i], meeting, &again);
+            draw_example(&examples[i], size, &out);
+            draw_example(&examples[i], size, &again);
             assert_string_equal(out.data, again.data); /* nothing is left to chance */
             if (!read_svg(reading, out.data)) {
                 print_message("%s: %s at: %.80s\n", examples[i].name, reading->wrong, reading->at);
                 faults++;
             }
-            assert_true(reading->width == (meeting ? FIGURE_MEETING_WIDTH : FIGURE_WIDTH));
-            faults += check_words(reading, examples[i].name, meeting ? 25.0 : 13.0);
+            assert_true(reading->width == sizes[size].drawn);
+            faults += check_words(reading, examples[i].name, sizes[size].smallest);
             text_release(&out);
             text_release(&again);
         }
@@ -269,7 +276,7 @@ static void test_participants(void **state) {
             if (strcmp(examples[i].name, drawn[d].name) == 0) {
                 struct text out;
                 text_init(&out);
-                draw_example(&examples[i], false, &out);
+                draw_example(&examples[i], 0, &out);
                 assert_true(read_svg(reading, out.data));
                 assert_int_equal(reading->participants, drawn[d].participants);
                 assert_non_null(strstr(out.data, drawn[d].participants ? "role=\"group\"" : "role=\"img\""));

@@ -262,6 +262,26 @@ static void test_decimals(void **state) {
     }
 }
 
+static const struct {
+    double value;
+    int decimals;
+    bool with_sign;
+    const char *shown;
+} seen[] = {{-4.649, 1, false, "\u22124.6"}, {2.25, 2, true, "+2.25"}, {-0.04, 1, true, "0.0"},
+    {NAN, 1, true, "\u2013"}, {-1e300, 1, false, "\u221210\u00b3\u2070\u2070"},
+    {2.5e12, 1, true, "+2.5\u00d710\u00b9\u00b2"}};
+
+static void test_shown(void **state) {
+    (void)state;
+    for (size_t i = 0; i < sizeof seen / sizeof *seen; i++) {
+        struct text out;
+        text_init(&out);
+        number_shown(&out, seen[i].value, seen[i].decimals, seen[i].with_sign);
+        assert_string_equal(out.data, seen[i].shown);
+        text_release(&out);
+    }
+}
+
 /* Widths as Unicode Standard Annex 11 gives them: combining marks none, East Asian wide two. */
 static const struct {
     const char *string;
@@ -285,6 +305,7 @@ int main(void) {
         cmocka_unit_test(test_html_elements),
         cmocka_unit_test(test_csv),
         cmocka_unit_test(test_decimals),
+        cmocka_unit_test(test_shown),
         cmocka_unit_test(test_columns),
     };
     return cmocka_run_group_tests_name("draw/writers", tests, NULL, NULL);
