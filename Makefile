@@ -99,4 +99,4 @@ clean:
 force:
 .PHONY: demo test bench clean force programs benches
 
--include $(shell find build -name '*.d' 2>/dev/null)
+-include $(shell find $(OUT) -name '*.d' -type f 2>/dev/null)
