@@ -271,14 +271,27 @@ static bool stands_apart(const struct variable *variable, const double *sorted, 
     return value - below > 3 * spread && above - value > 3 * spread && spread > 0;
 }
 
+/* Everyone whose number it is, however it is written. */
+static void concerns_number(struct finding *finding, struct discrepancy *what, const struct column *column, double value) {
+    const struct frame *frame = finding->frame;
+    const char **list = ARENA_NEW(finding->arena, frame->participant_count, const char *);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        if (column->number[p] >= value && column->number[p] <= value) {
+            list[what->participant_count++] = frame->participants[p].id;
+        }
+    }
+    what->participants = list;
+    what->participant = what->participant_count == 1 ? list[0] : NULL;
+}
+
 static void suspect_code(struct finding *finding, const struct column *column, const struct variable *variable, double value) {
     const struct frame *frame = finding->frame;
     const char *text = NULL;
     for (size_t p = 0; p < frame->participant_count && !text; p++) {
         text = column->number[p] >= value && column->number[p] <= value ? frame_text(frame, column, p) : NULL;
     }
-    struct discrepancy *new = found(finding, CHECK_MISSING_CODE, variable->column, text);
-    concerns_text(finding, new, column, text);
+    struct discrepancy *new = found(finding, CHECK_MISSING_CODE, variable->column, number_words(finding, value));
+    concerns_number(finding, new, column, value);
     new->value = text;
     new->message = arena_format(finding->arena, "%s reads %s %s, far from every other value: a code for missing?", variable->label, text,
         times(finding, new->participant_count));
@@ -321,26 +334,44 @@ static void suspect_codes(struct finding *finding, const struct column *column, 
     }
 }
 
+/* A code as identifiers of discrepancies have it: 999 for 999.0 too, where the column holds numbers. */
+static const char *code_words(struct finding *finding, const struct column *column, const char *code) {
+    double value;
+    return column->number && number_read(code, '.', &value, NULL) == NUMBER_READ ? number_words(finding, value) : code;
+}
+
+static bool found_before(const struct finding *finding, size_t since, const char *code) {
+    for (size_t i = since; i < finding->count; i++) {
+        const char *slash = strrchr(finding->list[i].id, '/');
+        if (slash && strcmp(slash + 1, code) == 0) {
+            return true;
+        }
+    }
+    return false;
+}
+
 /* Codes that stand in the column and are settled as such already. */
 static void settled_codes(struct finding *finding, const struct column *column, const struct variable *variable) {
     const struct frame *frame = finding->frame;
+    size_t since = finding->count;
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
         if (!frame->stands[i] || decision->kind != DECISION_MISSING_CODE || strcmp(decision->column, variable->column) != 0) {
             continue;
         }
+        const char *code = code_words(finding, column, decision->value);
         const char **list = ARENA_NEW(finding->arena, frame->participant_count, const char *);
         size_t count = 0;
         for (size_t p = 0; p < frame->participant_count; p++) {
             const char *text = column->state[p] == CELL_MISSING_CODE ? frame_text(frame, column, p) : NULL;
-            if (text && strcmp(text, decision->value) == 0) {
+            if (text && strcmp(code_words(finding, column, text), code) == 0) {
                 list[count++] = frame->participants[p].id;
             }
         }
-        if (!count) {
+        if (!count || found_before(finding, since, code)) {
             continue;
         }
-        struct discrepancy *new = found(finding, CHECK_MISSING_CODE, variable->column, decision->value);
+        struct discrepancy *new = found(finding, CHECK_MISSING_CODE, variable->column, code);
         new->value = decision->value;
         new->participants = list;
         new->participant_count = count;
@@ -354,89 +385,151 @@ static void settled_codes(struct finding *finding, const struct column *column, 
 
 /* ---- categories ---- */
 
-/* The text that variants share: compatibility form, no case, letters and digits only. */
-static char *folded(struct arena *arena, const char *text) {
+static bool is_letter(ucs4_t c) {
+    return uc_is_general_category(c, UC_LETTER);
+}
+
+/* The text that variants share: compatibility form, no case, no space or invisible characters, no hyphen, underscore or
+ * full stop after a letter but where a sign may be meant (A- and A+, 1.5 and 15 stay apart). */
+static const char *folded(struct arena *arena, const char *text) {
     size_t length = 0;
     uint8_t *made = u8_casefold((const uint8_t *)text, strlen(text), NULL, UNINORM_NFKC, NULL, &length);
+    if (!made) { /* not UTF-8, or nothing to fold */
+        return arena_text(arena, text);
+    }
     char *kept = ARENA_NEW(arena, length + 1, char);
     size_t used = 0;
-    for (size_t i = 0; made && i < length;) {
-        ucs4_t c;
-        int width = u8_mbtouc(&c, made + i, length - i);
-        if (uc_is_general_category(c, UC_LETTER) || uc_is_general_category(c, UC_NUMBER)) {
-            memcpy(kept + used, made + i, (size_t)width);
-            used += (size_t)width;
+    ucs4_t before = 0;
+    for (size_t i = 0; i < length;) {
+        ucs4_t c = 0, next = 0;
+        size_t width = (size_t)u8_mbtouc(&c, made + i, length - i);
+        if (i + width < length) {
+            u8_mbtouc(&next, made + i + width, length - i - width);
         }
-        i += (size_t)(width > 0 ? width : 1);
+        bool joins = (c == '-' || c == '_' || c == 0x2010) && is_letter(before) && is_letter(next);
+        bool ends = c == '.' && is_letter(before) && (next == 0 || is_letter(next));
+        if (!joins && !ends && !uc_is_property_white_space(c) && !uc_is_general_category(c, UC_FORMAT)) {
+            memcpy(kept + used, made + i, width);
+            used += width;
+            before = c;
+        }
+        i += width;
     }
     free(made); /* libunistring's own allocation */
     return kept;
 }
 
-static size_t count_level(const struct frame *frame, const struct column *column, size_t level) {
-    size_t count = 0;
-    for (size_t p = 0; p < frame->participant_count; p++) {
-        count += column->level[p] == (int32_t)level;
-    }
-    return count;
+struct spelling { /* one code as variants see it */
+    const char *key;
+    size_t level;
+};
+
+static int by_key(const void *a, const void *b) {
+    const struct spelling *x = a, *y = b;
+    int order = strcmp(x->key, y->key);
+    return order ? order : (x->level > y->level) - (x->level < y->level);
 }
 
-/* The listed level (or, where the plan lists none, the most frequent other one) that the code is a variant of. */
-static int variant_of(struct finding *finding, const struct column *column, size_t level) {
-    const char *key = folded(finding->arena, column->levels[level].code);
-    size_t candidates = column->listed_count ? column->listed_count : column->level_count;
-    int best = NOWHERE;
-    size_t most = column->listed_count ? 0 : count_level(finding->frame, column, level), matches = 0;
-    for (size_t i = 0; *key && i < candidates; i++) {
-        bool same = i != level && (strcmp(key, folded(finding->arena, column->levels[i].code)) == 0 ||
-                                      (column->listed_count && strcmp(key, folded(finding->arena, column->levels[i].label)) == 0));
-        size_t count = same ? count_level(finding->frame, column, i) : 0;
-        if (same && (column->listed_count || count > most || (count == most && i < level))) {
-            best = (int)i;
-            most = count;
-            matches++;
+static size_t *count_levels(struct finding *finding, const struct column *column) {
+    size_t *counts = ARENA_NEW(finding->arena, column->level_count, size_t);
+    for (size_t p = 0; p < finding->frame->participant_count; p++) {
+        if (column->level[p] != NOWHERE) {
+            counts[column->level[p]]++;
         }
     }
-    return column->listed_count && matches > 1 ? NOWHERE : best;
+    return counts;
+}
+
+/* The listed level that the code is a variant of by code or label; NOWHERE where none or more than one is. */
+static int variant_of_listed(struct finding *finding, const char *key, const struct level *levels, size_t count) {
+    int best = NOWHERE;
+    for (size_t i = 0; i < count && *key; i++) {
+        if (strcmp(key, folded(finding->arena, levels[i].code)) == 0 || strcmp(key, folded(finding->arena, levels[i].label)) == 0) {
+            if (best != NOWHERE) {
+                return NOWHERE;
+            }
+            best = (int)i;
+        }
+    }
+    return best;
+}
+
+static void variant_found(struct finding *finding, const struct column *column, const struct variable *variable,
+    const char *code, const char *to) {
+    struct discrepancy *new = found(finding, to ? CHECK_VARIANT : CHECK_UNLISTED, variable->column, code);
+    concerns_text(finding, new, column, code);
+    new->value = code;
+    const char *how_often = times(finding, new->participant_count);
+    if (!to) {
+        new->message = variable->kind == VARIABLE_EVENT ?
+            arena_format(finding->arena, "%s reads \"%s\" %s, which the plan lists neither as yes nor as no.", variable->label, code,
+                how_often) :
+            arena_format(finding->arena, "%s reads \"%s\" %s, which the plan does not list.", variable->label, code, how_often);
+        return;
+    }
+    const char *const fields[][2] = {{"column", variable->column}, {"from", code}, {"to", to}};
+    new->message = arena_format(finding->arena, "%s reads \"%s\" %s; it differs from \"%s\" by case, space or form only.",
+        variable->label, code, how_often, to);
+    new->proposal = proposal(finding, "read-as", fields, 3);
+    new->proposal_words = arena_format(finding->arena, "Read \"%s\" as \"%s\"", code, to);
+}
+
+static void check_listed(struct finding *finding, const struct column *column, const struct variable *variable) {
+    for (size_t l = column->listed_count; l < column->level_count; l++) {
+        const char *code = column->levels[l].code;
+        int target = variant_of_listed(finding, folded(finding->arena, code), column->levels, column->listed_count);
+        variant_found(finding, column, variable, code, target == NOWHERE ? NULL : column->levels[target].code);
+    }
+}
+
+/* Without a list every code is its own level, and one that folds to the same as a more frequent one is its variant. */
+static void check_unlisted(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const size_t *counts = count_levels(finding, column);
+    struct spelling *spellings = ARENA_NEW(finding->arena, column->level_count, struct spelling);
+    for (size_t l = 0; l < column->level_count; l++) {
+        spellings[l] = (struct spelling){folded(finding->arena, column->levels[l].code), l};
+    }
+    if (column->level_count) {
+        qsort(spellings, column->level_count, sizeof *spellings, by_key);
+    }
+    for (size_t from = 0, to; from < column->level_count; from = to) {
+        size_t most = spellings[from].level;
+        for (to = from; to < column->level_count && strcmp(spellings[to].key, spellings[from].key) == 0; to++) {
+            most = counts[spellings[to].level] > counts[most] ? spellings[to].level : most;
+        }
+        for (size_t i = from; i < to; i++) {
+            if (spellings[i].level != most && *spellings[i].key) {
+                variant_found(finding, column, variable, column->levels[spellings[i].level].code, column->levels[most].code);
+            }
+        }
+    }
 }
 
 static void check_category(struct finding *finding, const struct column *column, const struct variable *variable) {
-    for (size_t l = column->listed_count; l < column->level_count; l++) {
-        const char *code = column->levels[l].code;
-        int target = variant_of(finding, column, l);
-        if (target == NOWHERE && !column->listed_count) {
-            continue; /* without a list every code is its own level */
-        }
-        struct discrepancy *new = found(finding, target == NOWHERE ? CHECK_UNLISTED : CHECK_VARIANT, variable->column, code);
-        concerns_text(finding, new, column, code);
-        new->value = code;
-        if (target == NOWHERE) {
-            new->message = arena_format(finding->arena, "%s reads \"%s\" %s, which the plan does not list.", variable->label, code,
-                times(finding, new->participant_count));
-            continue;
-        }
-        const char *to = column->levels[target].code;
-        const char *const fields[][2] = {{"column", variable->column}, {"from", code}, {"to", to}};
-        new->message = arena_format(finding->arena, "%s reads \"%s\" %s; it differs from \"%s\" by case, space or form only.",
-            variable->label, code, times(finding, new->participant_count), to);
-        new->proposal = proposal(finding, "read-as", fields, 3);
-        new->proposal_words = arena_format(finding->arena, "Read \"%s\" as \"%s\"", code, to);
+    if (column->listed_count) {
+        check_listed(finding, column, variable);
+    } else {
+        check_unlisted(finding, column, variable);
     }
 }
 
 static void check_event(struct finding *finding, const struct column *column, const struct variable *variable) {
     const struct frame *frame = finding->frame;
+    const struct event *event = &frame->plan->events[variable->event];
+    size_t count = event->yes.count + event->no.count;
+    struct level *levels = ARENA_NEW(finding->arena, count, struct level);
+    for (size_t i = 0; i < count; i++) {
+        const char *code = i < event->yes.count ? event->yes.item[i] : event->no.item[i - event->yes.count];
+        levels[i] = (struct level){code, code};
+    }
     struct map seen;
     map_init(&seen);
     for (size_t p = 0; p < frame->participant_count; p++) {
         const char *text = column->state[p] == CELL_UNREADABLE ? frame_text(frame, column, p) : NULL;
         if (text && map_get(&seen, text) == NOWHERE) {
             map_put(&seen, text, 1);
-            struct discrepancy *new = found(finding, CHECK_UNLISTED, variable->column, text);
-            concerns_text(finding, new, column, text);
-            new->value = text;
-            new->message = arena_format(finding->arena, "%s reads \"%s\" %s, which the plan lists neither as yes nor as no.",
-                variable->label, text, times(finding, new->participant_count));
+            int target = variant_of_listed(finding, folded(finding->arena, text), levels, count);
+            variant_found(finding, column, variable, text, target == NOWHERE ? NULL : levels[target].code);
         }
     }
     map_release(&seen);
@@ -444,8 +537,18 @@ static void check_event(struct finding *finding, const struct column *column, co
 
 /* ---- numbers ---- */
 
+/* The number that a text starts with, where a unit or a word may be what follows it; "120/80" is not one number. */
+static bool number_before_words(struct finding *finding, const char *text, double *value) {
+    size_t digits = strspn(text, " 0123456789.,+-");
+    ucs4_t next = 0;
+    u8_mbtouc(&next, (const uint8_t *)text + digits, strlen(text + digits) + 1);
+    bool words = is_letter(next) || next == '%' || next == 0xB0; /* the degree sign */
+    return digits > 0 && words && number_read(arena_bytes(finding->arena, text, digits), '.', value, NULL) == NUMBER_READ;
+}
+
 static void check_unreadable(struct finding *finding, const struct column *column, const struct variable *variable) {
     const struct frame *frame = finding->frame;
+    const struct range *plausible = &variable->plausible;
     for (size_t p = 0; p < frame->participant_count; p++) {
         if (column->state[p] != CELL_UNREADABLE) {
             continue;
@@ -455,16 +558,14 @@ static void check_unreadable(struct finding *finding, const struct column *colum
         concerns(finding, new, id);
         new->value = text;
         double value;
-        char number[64];
-        size_t digits = strspn(text, " 0123456789.,+-");
         if (number_read(text, ',', &value, NULL) == NUMBER_READ) {
+            bool fits = !plausible->given || (value >= plausible->low && value <= plausible->high);
             const char *const fields[][2] = {{"column", variable->column}, {"decimal", ","}};
-            new->message = arena_format(finding->arena, "%s of %s reads \"%s\", no number as written; with a decimal comma it is %s.",
-                variable->label, id, text, number_words(finding, value));
-            new->proposal = proposal(finding, "number-format", fields, 2);
-            new->proposal_words = arena_format(finding->arena, "Read decimal commas in %s", variable->column);
-        } else if (digits > 0 && digits < sizeof number && digits < strlen(text) &&
-                   number_read(arena_bytes(finding->arena, text, digits), '.', &value, NULL) == NUMBER_READ) {
+            new->message = arena_format(finding->arena, "%s of %s reads \"%s\", no number as written; with a decimal comma it is %s%s.",
+                variable->label, id, text, number_words(finding, value), fits ? "" : ", which is not plausible");
+            new->proposal = fits ? proposal(finding, "number-format", fields, 2) : NULL;
+            new->proposal_words = fits ? arena_format(finding->arena, "Read decimal commas in %s", variable->column) : NULL;
+        } else if (number_before_words(finding, text, &value)) {
             const char *to = number_words(finding, value);
             const char *const fields[][2] = {{"column", variable->column}, {"participant", id}, {"from", text}, {"to", to}};
             new->message = arena_format(finding->arena, "%s of %s reads \"%s\": a number with something after it, perhaps its unit.",
@@ -570,7 +671,7 @@ static void check_variable(struct finding *finding, enum check_kind check, size_
         }
     } else if (check == CHECK_VARIANT && category) {
         check_category(finding, column, variable);
-    } else if (check == CHECK_UNLISTED && variable->kind == VARIABLE_EVENT) {
+    } else if (check == CHECK_VARIANT && variable->kind == VARIABLE_EVENT) {
         check_event(finding, column, variable);
     } else if (check == CHECK_UNREADABLE && number) {
         check_unreadable(finding, column, variable);
@@ -607,7 +708,8 @@ static bool decided_about(const struct decision *decision, const struct discrepa
     if (decision->discrepancy) {
         return strcmp(decision->discrepancy, what->id) == 0;
     }
-    bool cell = same(decision->column, what->column) && (!decision->participant || same(decision->participant, what->participant));
+    bool about = decision->column ? same(decision->column, what->column) : !what->column && decision->participant;
+    bool cell = about && (!decision->participant || same(decision->participant, what->participant));
     return cell && (decision->kind == DECISION_QUERY || same(decision->value, what->value));
 }
 

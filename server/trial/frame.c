@@ -2,6 +2,7 @@
 #include "trial/frame.h"
 #include "base/map.h"
 #include "intake/number.h"
+#include "trial/arms.h"
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
@@ -50,9 +51,13 @@ static bool refuse(struct build *build, size_t i, const char *what) {
         decision_rules[build->frame->decisions[i].kind].name, what);
 }
 
-/* While blinded no text of the arm's column may stand in a sentence. */
-static bool may_quote(const struct build *build, const struct column *column) {
-    return column->kind != VARIABLE_ARM || build->frame->blinding == BLINDING_UNBLINDED;
+/* While blinded, whether one participant's arm reads so or so must not be found out by trying. */
+static bool refuse_hidden(struct build *build, size_t i) {
+    size_t entry = i + 1 - build->previous->version;
+    return fault_at(build->fault, FAULT_REFUSED, entry, 0,
+        "decision %zu of the batch (%s) is about one participant's cell of %s, which is not shown while the study is %s; unblind it first; "
+        "nothing was recorded", entry, decision_rules[build->frame->decisions[i].kind].name, build->frame->decisions[i].column,
+        blinding_name(build->previous->blinding));
 }
 
 /* ---- the roster: participants in identifier order, and which record is in force ---- */
@@ -61,6 +66,23 @@ struct roster_row {
     const char *id;
     size_t record;
 };
+
+/* The participant whom a decision means by an identifier that may have been corrected since. */
+static int participant_meant(const struct build *build, size_t i) {
+    const struct frame *frame = build->frame;
+    const char *name = frame->decisions[i].participant;
+    int who = frame_participant(frame, name);
+    for (size_t j = i + 1; who == NOWHERE && j < build->count; j++) {
+        const struct decision *later = &frame->decisions[j];
+        bool renames = later->kind == DECISION_READ_AS || later->kind == DECISION_CORRECT;
+        if (build->stands[j] && renames && strcmp(later->column, frame->plan->participant) == 0 && later->from &&
+            strcmp(later->from, name) == 0) {
+            name = later->to;
+            who = frame_participant(frame, name);
+        }
+    }
+    return who;
+}
 
 static int by_id_then_record(const void *a, const void *b) {
     const struct roster_row *x = a, *y = b;
@@ -113,9 +135,14 @@ static bool apply_keep(struct build *build, size_t i) {
     int who = frame_participant(frame, decision->participant);
     size_t record = decision->row - 1;
     const char *there = record < frame->cells->records ? column_text(frame, frame->identifier, record) : NULL;
-    if (who == NOWHERE || !there || strcmp(there, decision->participant) != 0) {
-        return !is_new(build, i) || refuse(build, i,
+    if (is_new(build, i) && (who == NOWHERE || !there || strcmp(there, decision->participant) != 0)) {
+        return refuse(build, i,
             who == NOWHERE ? "names a participant who is not in the file" : "names a row that is not one of the participant's records");
+    }
+    /* An identifier corrected since goes on pointing at the same record. */
+    who = there ? frame_participant(frame, there) : NOWHERE;
+    if (who == NOWHERE) {
+        return true;
     }
     struct participant *participant = &frame->participants[who];
     if (participant->record == NO_RECORD) {
@@ -238,22 +265,21 @@ static size_t record_meant(
     if (decision->row) {
         size_t record = decision->row - 1;
         *why = "names a row that is not one of the participant's records";
-        return record < frame->cells->records && same_text(column_text(frame, identifier, record), decision->participant) ? record : NO_RECORD;
+        bool fits = record < frame->cells->records &&
+                    (!is_new(build, (size_t)(decision - frame->decisions)) || same_text(column_text(frame, identifier, record), decision->participant));
+        return fits ? record : NO_RECORD;
     }
     if (column->kind == VARIABLE_PARTICIPANT) {
         return record_of_identifier(frame, column, decision->participant, why);
     }
-    int who = frame_participant(frame, decision->participant);
+    int who = participant_meant(build, (size_t)(decision - frame->decisions));
     *why = who == NOWHERE ? "names a participant who is not in the file" :
                             "is about a participant with several records; say which one with \"row\", or keep one first";
     return who == NOWHERE ? NO_RECORD : frame->participants[who].record;
 }
 
-static bool from_differs(struct build *build, size_t i, const struct column *column, const char *now) {
+static bool from_differs(struct build *build, size_t i, const char *now) {
     const struct decision *decision = &build->frame->decisions[i];
-    if (!may_quote(build, column)) {
-        return refuse(build, i, "gives a \"from\" that is not the text now current");
-    }
     return refuse(build, i, arena_format(&build->frame->arena, "says %s of %s reads %s%.60s%s, but it now reads %s%.60s%s",
         decision->column, decision->participant, decision->from ? "\"" : "", decision->from ? decision->from : "nothing (set missing)",
         decision->from ? "\"" : "", now ? "\"" : "", now ? now : "nothing (set missing)", now ? "\"" : ""));
@@ -262,6 +288,9 @@ static bool from_differs(struct build *build, size_t i, const struct column *col
 static bool apply_to_cell(struct build *build, size_t i, struct column *column) {
     const struct decision *decision = &build->frame->decisions[i];
     const char *why = NULL;
+    if (is_new(build, i) && arms_hide_column(build->previous, decision->column)) {
+        return refuse_hidden(build, i);
+    }
     size_t record = record_meant(build, decision, column, &why);
     if (record == NO_RECORD) {
         return !is_new(build, i) || refuse(build, i, why);
@@ -271,7 +300,7 @@ static bool apply_to_cell(struct build *build, size_t i, struct column *column) 
                refuse(build, i, "confirms a value that is not the text now current");
     }
     if (is_new(build, i) && !same_text(column_text(build->frame, column, record), decision->from)) {
-        return from_differs(build, i, column, column_text(build->frame, column, record));
+        return from_differs(build, i, column_text(build->frame, column, record));
     }
     put_cell(build, column, record, decision->kind == DECISION_CORRECT ? decision->to : NULL, decision->number);
     return true;
@@ -326,8 +355,8 @@ static void collect_codes(const struct build *build, struct column *column, cons
         const struct decision *decision = &build->frame->decisions[i];
         if (build->stands[i] && decision->kind == DECISION_MISSING_CODE && about_column(decision, name)) {
             codes->text[codes->count] = decision->value;
-            number_read(decision->value, '.', &codes->number[codes->count], NULL);
-            codes->count++;
+            double *number = &codes->number[codes->count++];
+            *number = number_read(decision->value, '.', number, NULL) == NUMBER_READ ? *number : (double)NAN;
         }
     }
 }
@@ -471,7 +500,8 @@ static void interpret_cell(const struct frame *frame, struct column *column, siz
         column->state[p] = CELL_SET_MISSING;
     } else if (event) {
         column->level[p] = event_level(event, text);
-        column->state[p] = column->level[p] != NOWHERE ? CELL_OBSERVED : is_blank(text) ? CELL_BLANK : CELL_UNREADABLE;
+        column->state[p] = column->level[p] != NOWHERE ? CELL_OBSERVED : is_blank(text) ? CELL_BLANK :
+            is_code(codes, text) ? CELL_MISSING_CODE : CELL_UNREADABLE;
     } else {
         interpret_number(frame, column, p, text, codes, sign);
     }
@@ -633,12 +663,19 @@ static bool apply_setting(struct build *build, size_t i) {
     struct frame *frame = build->frame;
     const struct decision *decision = &frame->decisions[i];
     int outcome = decision->outcome ? plan_outcome(frame->plan, decision->outcome) : NOWHERE;
-    int who = decision->participant ? frame_participant(frame, decision->participant) : NOWHERE;
+    int who = decision->participant ? participant_meant(build, i) : NOWHERE;
     if (is_new(build, i) && decision->outcome && outcome == NOWHERE) {
         return refuse(build, i, arena_format(&frame->arena, "names \"%.60s\", which is not the id of an outcome", decision->outcome));
     }
-    if (is_new(build, i) && decision->participant && who == NOWHERE) {
+    /* Decisions on cells and records have been held against the data already. */
+    bool unknown = decision->participant && who == NOWHERE && decision->kind > DECISION_KEEP_RECORD;
+    if (is_new(build, i) && unknown) {
         return refuse(build, i, "names a participant who is not in the file");
+    }
+    bool about_someone = decision->kind == DECISION_FLAG || decision->kind == DECISION_EXCLUDE;
+    bool about_outcome = decision->kind == DECISION_FLAG || decision->kind == DECISION_SCALE;
+    if ((about_someone && who == NOWHERE) || (about_outcome && outcome == NOWHERE)) {
+        return true; /* whom it was about is no longer in the file */
     }
     switch (decision->kind) {
     case DECISION_SCALE:
@@ -684,8 +721,9 @@ static bool reverse_fits(struct build *build, size_t i) {
     }
     const struct decision *target = &build->frame->decisions[decision->reverses - 1];
     if (!decision_rules[target->kind].reversible) {
-        return refuse(build, i, arena_format(&build->frame->arena, "cannot reverse decision %u: %s stands for good",
-            target->number, decision_rules[target->kind].name));
+        return refuse(build, i, arena_format(&build->frame->arena, "cannot reverse decision %u: %s", target->number,
+            target->kind == DECISION_LOCK ? "a lock is opened by unlock" :
+            target->kind == DECISION_SIGN ? "a signature stands for good" : "what has been unblinded cannot be unseen"));
     }
     for (size_t j = 0; j < i; j++) {
         const struct decision *other = &build->frame->decisions[j];
@@ -704,8 +742,47 @@ static bool column_fits(struct build *build, size_t i) {
     const struct plan *plan = frame->plan;
     bool known = plan_variable(plan, decision->column) != NOWHERE || strcmp(decision->column, plan->participant) == 0 ||
                  (plan->arm_column && strcmp(decision->column, plan->arm_column) == 0);
-    return known || refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
-                        decision->column));
+    if (!known) {
+        return refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
+            decision->column));
+    }
+    int variable = plan_variable(plan, decision->column);
+    if (decision->kind == DECISION_NUMBER_FORMAT && (variable == NOWHERE || plan->variables[variable].kind != VARIABLE_NUMBER)) {
+        return refuse(build, i, arena_format(&build->frame->arena, "is about the column \"%.60s\", which holds no numbers", decision->column));
+    }
+    return decision->kind != DECISION_MISSING_CODE || strcmp(decision->column, plan->participant) != 0 ||
+           refuse(build, i, "is about the identifier, which cannot be missing; correct it, or set it missing to hold the record aside");
+}
+
+static bool answers_query(struct build *build, size_t i) {
+    uint32_t number = build->frame->decisions[i].reverses;
+    return (number - 1 < i && build->frame->decisions[number - 1].kind == DECISION_QUERY) ||
+           refuse(build, i, arena_format(&build->frame->arena, "answers decision %u, which is not a query", number));
+}
+
+static bool lock_fits(struct build *build, size_t i) {
+    bool lock = build->frame->decisions[i].kind == DECISION_LOCK;
+    return lock != build->frame->locked || refuse(build, i, lock ? "is not needed: the study is locked already" :
+                                                                   "is not needed: the study is not locked");
+}
+
+/* What its kind asks of a new decision, before the data are looked at. */
+static bool new_one_fits(struct build *build, size_t i) {
+    const struct decision *decision = &build->frame->decisions[i];
+    if (decision->column && !column_fits(build, i)) {
+        return false;
+    }
+    switch (decision->kind) {
+    case DECISION_REVERSE:
+        return reverse_fits(build, i);
+    case DECISION_RESPONSE:
+        return answers_query(build, i);
+    case DECISION_LOCK:
+    case DECISION_UNLOCK:
+        return lock_fits(build, i);
+    default:
+        return true;
+    }
 }
 
 static bool changes_data(const struct build *build, const struct decision *decision) {
@@ -723,7 +800,7 @@ static bool new_ones_fit(struct build *build) {
         const struct decision *decision = &frame->decisions[i];
         bool stands = build->stands[i];
         if (is_new(build, i)) {
-            if ((decision->column && !column_fits(build, i)) || (decision->kind == DECISION_REVERSE && !reverse_fits(build, i))) {
+            if (!new_one_fits(build, i)) {
                 return false;
             }
             if (frame->locked && changes_data(build, decision)) {

@@ -5,6 +5,7 @@
 #include <math.h>
 #include <stdio.h>
 #include <string.h>
+#include <unistr.h>
 
 /* ---- reading JSON with sentences: where we are is a path such as outcomes[0].visits[1] ---- */
 
@@ -86,7 +87,7 @@ static bool read_range(struct reader *reader, const cJSON *object, const char *p
     }
     const cJSON *low = cJSON_GetArrayItem(item, 0), *high = cJSON_GetArrayItem(item, 1);
     if (!cJSON_IsArray(item) || cJSON_GetArraySize(item) != 2 || !cJSON_IsNumber(low) || !cJSON_IsNumber(high) ||
-        !(low->valuedouble < high->valuedouble)) {
+        !(low->valuedouble < high->valuedouble) || !isfinite(low->valuedouble) || !isfinite(high->valuedouble)) {
         return wrong(reader, join(reader, path, key), "must be two numbers, the lower first, such as [70, 260]");
     }
     *range = (struct range){true, low->valuedouble, high->valuedouble};
@@ -111,6 +112,25 @@ static bool read_texts(struct reader *reader, const cJSON *object, const char *p
     return true;
 }
 
+static bool read_code_list(struct reader *reader, const cJSON *object, const char *path, struct texts *codes) {
+    if (!read_texts(reader, object, path, "missing_codes", codes)) {
+        return false;
+    }
+    for (size_t i = 0; i < codes->count; i++) {
+        if (codes->item[i][strspn(codes->item[i], " \t\r\n\f\v")] == '\0') {
+            return wrong(reader, join(reader, path, "missing_codes"),
+                "holds a blank; a blank cell is missing without a code, leave it out");
+        }
+        for (size_t j = 0; j < i; j++) {
+            if (strcmp(codes->item[i], codes->item[j]) == 0) {
+                return fault_set(reader->fault, FAULT_INPUT, "%s: %s holds \"%.60s\" twice; keep one", reader->name,
+                    join(reader, path, "missing_codes"), codes->item[i]);
+            }
+        }
+    }
+    return true;
+}
+
 /* An own list of codes, or else the plan's. */
 static bool read_codes(struct reader *reader, const cJSON *object, const char *path, const struct texts **codes) {
     *codes = &reader->plan->missing_codes;
@@ -119,7 +139,7 @@ static bool read_codes(struct reader *reader, const cJSON *object, const char *p
     }
     struct texts *own = ARENA_NEW(&reader->plan->arena, 1, struct texts);
     *codes = own;
-    return read_texts(reader, object, path, "missing_codes", own);
+    return read_code_list(reader, object, path, own);
 }
 
 static bool read_flag(struct reader *reader, const cJSON *object, const char *path, const char *key, bool *flag) {
@@ -254,8 +274,8 @@ static bool id_is_new(struct reader *reader, const char *path, const char *id) {
         return wrong(reader, join(reader, path, "id"), "must not hold a comma, = or &");
     }
     return (plan_outcome(plan, id) == NOWHERE && plan_covariate(plan, id) == NOWHERE && plan_event(plan, id) == NOWHERE) ||
-           fault_set(reader->fault, FAULT_INPUT, "%s: the id \"%.60s\" is given twice; outcomes, covariates and events each need their own",
-               reader->name, id);
+           fault_set(reader->fault, FAULT_INPUT, "%s: %s.id repeats \"%.60s\"; every outcome, covariate and event needs its own",
+               reader->name, path, id);
 }
 
 static bool read_outcome(struct reader *reader, const cJSON *item, const char *path) {
@@ -333,7 +353,7 @@ static bool read_bands(struct reader *reader, const cJSON *item, const char *pat
     }
     covariate->bands = ARENA_NEW(&reader->plan->arena, cJSON_GetArraySize(bands), double);
     for (const cJSON *child = bands->child; child; child = child->next) {
-        if (!cJSON_IsNumber(child) ||
+        if (!cJSON_IsNumber(child) || !isfinite(child->valuedouble) ||
             (covariate->band_count && child->valuedouble <= covariate->bands[covariate->band_count - 1])) {
             return wrong(reader, where, "must be a list of increasing cut points, such as [55, 65]");
         }
@@ -455,7 +475,9 @@ static bool settle_primary(struct reader *reader) {
             primaries++;
         }
     }
-    return primaries == 1 || wrong(reader, "outcomes", "must have exactly one with \"role\": \"primary\"");
+    return primaries == 1 ||
+           wrong(reader, "outcomes", primaries == 0 ? "has none with \"role\": \"primary\"; a plan needs exactly one" :
+                   "has more than one with \"role\": \"primary\"; keep one and make the others secondary");
 }
 
 /* Adds the column to the variables, or finds it there; a column has one kind. */
@@ -475,18 +497,20 @@ static bool place_variable(struct reader *reader, const struct variable *wanted,
     }
     struct variable *there = &plan->variables[*index];
     if (there->kind != wanted->kind) {
-        return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is used as two different kinds, for %s and for %s",
+        return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is used as two different kinds, for %s and for %s; a column has one meaning",
             reader->name, wanted->column, there->label, wanted->label);
     }
+    /* A covariate may be an outcome's visit, such as its baseline; whichever says more about the numbers is heard. */
     if (wanted->outcome != NOWHERE && there->outcome == NOWHERE) {
         there->outcome = wanted->outcome;
         there->visit = wanted->visit;
         there->plausible = there->plausible.given ? there->plausible : wanted->plausible;
-    } else if (wanted->outcome != NOWHERE) {
-        return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is a visit of two outcomes, %s and %s",
-            reader->name, wanted->column, there->label, wanted->label);
+        there->unit = *there->unit ? there->unit : wanted->unit;
+        there->missing_codes = there->missing_codes == &plan->missing_codes ? wanted->missing_codes : there->missing_codes;
+        return true;
     }
-    return true;
+    return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is used twice, for %s and for %s; a column has one meaning",
+        reader->name, wanted->column, there->label, wanted->label);
 }
 
 static bool settle_variables(struct reader *reader) {
@@ -611,7 +635,7 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
             "blinding seed site stratified_by standard_error") ||
         !read_text(reader, root, "", "title", true, &plan->title) ||
         !read_text(reader, root, "", "participant", true, &plan->participant) || !read_arms(reader, root) ||
-        !read_texts(reader, root, "", "missing_codes", &plan->missing_codes) ||
+        !read_code_list(reader, root, "", &plan->missing_codes) ||
         !read_list(reader, root, "outcomes", (void **)&plan->outcomes, sizeof *plan->outcomes, read_outcome) ||
         !read_list(reader, root, "covariates", (void **)&plan->covariates, sizeof *plan->covariates, read_covariate) ||
         !read_list(reader, root, "events", (void **)&plan->events, sizeof *plan->events, read_event) ||
@@ -626,16 +650,28 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     return settle_variables(reader) && settle_settings(reader, root) && settle_standard_error(reader, root);
 }
 
-/* Where in the text JSON stopped being JSON: 1-based line and column. */
+/* Where in the text JSON stopped being JSON: 1-based line and column, in characters. */
 static bool not_json(const char *json, const char *end, const char *name, struct fault *fault) {
     size_t line = 1, column = 1;
     for (const char *p = json; p < end; p++) {
-        column = *p == '\n' ? 1 : column + 1;
+        column = *p == '\n' ? 1 : column + (((unsigned char)*p & 0xC0) != 0x80);
         line += *p == '\n';
+    }
+    if (json[strspn(json, " \t\r\n")] == '\0') {
+        return fault_set(fault, FAULT_INPUT, "%s: the file is empty; a plan is an object in braces", name);
     }
     return fault_at(fault, FAULT_INPUT, line, column,
         "%s, line %zu, column %zu: this is not JSON from here on; mend the text (a comma, a quote or a bracket?) and try again", name,
         line, column);
+}
+
+static bool not_utf8(const char *json, const char *at, const char *name, struct fault *fault) {
+    size_t line = 1;
+    for (const char *p = json; p < at; p++) {
+        line += *p == '\n';
+    }
+    return fault_at(fault, FAULT_INPUT, line, 0, "%s, line %zu: a character that is not UTF-8; save the file as UTF-8 and try again", name,
+        line);
 }
 
 bool plan_read(struct plan *plan, const char *json, size_t length, const char *name, struct fault *fault) {
@@ -649,7 +685,10 @@ bool plan_read(struct plan *plan, const char *json, size_t length, const char *n
     const char *copy = arena_bytes(&plan->arena, json, length), *end = copy;
     struct reader reader = {plan, name, fault};
     cJSON *root = cJSON_ParseWithOpts(copy, &end, 1);
-    bool done = root && strlen(copy) == length ? read_plan(&reader, root) : not_json(copy, end ? end : copy, name, fault);
+    const char *foreign = (const char *)u8_check((const uint8_t *)copy, length);
+    bool done = foreign                ? not_utf8(copy, foreign, name, fault) :
+        root && strlen(copy) == length ? read_plan(&reader, root) :
+                                         not_json(copy, end ? end : copy, name, fault);
     cJSON_Delete(root);
     if (!done) {
         plan_release(plan);

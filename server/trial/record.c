@@ -6,6 +6,7 @@
 #include <cjson/cJSON.h>
 #include <math.h>
 #include <string.h>
+#include <unistr.h>
 
 const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
     [DECISION_READ_AS] = {"read-as", "Read one code of a column as another", "column from to", "", true, true, true},
@@ -41,7 +42,7 @@ const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
 
 /* ---- fields: which there are, of what type, and where a decision keeps them ---- */
 
-enum field_type { FIELD_TEXT, FIELD_TEXT_OR_NULL, FIELD_COUNT, FIELD_LIST, FIELD_FLAG };
+enum field_type { FIELD_TEXT, FIELD_TEXT_OR_NULL, FIELD_COUNT, FIELD_WORDS, FIELD_INTERVAL, FIELD_FLAG };
 
 static const struct field {
     const char *name;
@@ -65,10 +66,10 @@ static const struct field {
     {"text", FIELD_TEXT, false, offsetof(struct decision, text)},
     {"question", FIELD_TEXT, false, offsetof(struct decision, text)},
     {"exhibit", FIELD_TEXT, false, offsetof(struct decision, exhibit)},
-    {"people", FIELD_LIST, false, 0},
-    {"criteria", FIELD_LIST, false, 0},
-    {"active", FIELD_LIST, false, 0},
-    {"reference", FIELD_LIST, false, 0},
+    {"people", FIELD_WORDS, false, 0},
+    {"criteria", FIELD_WORDS, false, 0},
+    {"active", FIELD_INTERVAL, false, 0},
+    {"reference", FIELD_INTERVAL, false, 0},
     {"if_a", FIELD_TEXT, false, 0},
     {"if_b", FIELD_TEXT, false, 0},
     {"row", FIELD_COUNT, false, 0},
@@ -111,8 +112,23 @@ static void put_text(struct decision *decision, size_t place, const char *text) 
 
 static const char *type_words(enum field_type type) {
     static const char *const words[] = {"a text in quotes", "a text in quotes or null", "a whole number from 1",
-        "a list in square brackets", "true or false"};
+        "a list of texts, such as [\"A. Reader, statistician\"]", "two numbers, the lower first, such as [-5, 0]", "true or false"};
     return words[type];
+}
+
+static bool all_words(const cJSON *list) {
+    const cJSON *item = cJSON_IsArray(list) ? list->child : NULL;
+    bool fits = item != NULL;
+    for (; item && fits; item = item->next) {
+        fits = cJSON_IsString(item) && *item->valuestring;
+    }
+    return fits;
+}
+
+static bool is_interval(const cJSON *list) {
+    const cJSON *low = cJSON_GetArrayItem(list, 0), *high = cJSON_GetArrayItem(list, 1);
+    return cJSON_IsArray(list) && cJSON_GetArraySize(list) == 2 && cJSON_IsNumber(low) && cJSON_IsNumber(high) &&
+           isfinite(low->valuedouble) && isfinite(high->valuedouble) && low->valuedouble <= high->valuedouble;
 }
 
 static bool type_fits(const cJSON *item, enum field_type type) {
@@ -124,8 +140,10 @@ static bool type_fits(const cJSON *item, enum field_type type) {
     case FIELD_COUNT:
         return cJSON_IsNumber(item) && item->valuedouble >= 1 && item->valuedouble <= 4294967294.0 &&
                floor(item->valuedouble) >= item->valuedouble;
-    case FIELD_LIST:
-        return cJSON_IsArray(item);
+    case FIELD_WORDS:
+        return all_words(item);
+    case FIELD_INTERVAL:
+        return is_interval(item);
     case FIELD_FLAG:
         return cJSON_IsBool(item);
     }
@@ -195,21 +213,76 @@ static void take_fields(struct arena *arena, const cJSON *object, struct decisio
     decision->people = people ? list_text(arena, people) : NULL;
     const cJSON *row = cJSON_GetObjectItemCaseSensitive(object, "row");
     const cJSON *number = cJSON_GetObjectItemCaseSensitive(object, "number");
-    decision->row = row ? (uint32_t)row->valuedouble : 0;
-    decision->reverses = number ? (uint32_t)number->valuedouble : 0;
+    decision->row = row && type_fits(row, FIELD_COUNT) ? (uint32_t)row->valuedouble : 0;
+    decision->reverses = number && type_fits(number, FIELD_COUNT) ? (uint32_t)number->valuedouble : 0;
     decision->planned = cJSON_IsTrue(cJSON_GetObjectItemCaseSensitive(object, "planned"));
 }
 
+static bool is_empty(const char *text) {
+    return text[strspn(text, " \t\r\n\f\v")] == '\0';
+}
+
+/* What only one kind asks of its values: words for what is wrong, or NULL. */
+static const char *value_wrong(const struct decision *decision) {
+    enum scale scale;
+    enum blinding blinding;
+    switch (decision->kind) {
+    case DECISION_NUMBER_FORMAT:
+        return strcmp(decision->decimal, ".") == 0 || strcmp(decision->decimal, ",") == 0 ? NULL :
+            "has a \"decimal\" that is neither \".\" nor \",\"";
+    case DECISION_MISSING_CODE:
+        return is_empty(decision->value) ? "has a blank \"value\"; a blank cell is missing without a code" : NULL;
+    case DECISION_SCALE:
+        return scale_read(decision->scale, &scale) ? NULL : "has a \"scale\" that is neither linear nor log10";
+    case DECISION_EXCLUDE:
+        return strcmp(decision->set, "full") == 0 || strcmp(decision->set, "per-protocol") == 0 ? NULL :
+            "has a \"set\" that is neither full nor per-protocol";
+    case DECISION_UNBLIND:
+        return decision->to && blinding_read(decision->to, &blinding) && blinding != BLINDING_POOLED ? NULL :
+            "has a \"to\" that is neither coded nor unblinded";
+    case DECISION_READ_AS:
+        return !decision->from || !decision->to ? "needs texts for \"from\" and \"to\"; use set-missing for null" :
+            strcmp(decision->from, decision->to) == 0 ? "reads a code as itself" : NULL;
+    case DECISION_CORRECT:
+        return !decision->to ? "needs a text for \"to\"; use set-missing for a value that is to be missing" :
+            decision->from && strcmp(decision->from, decision->to) == 0 ? "corrects a value to itself; use confirm for one that is right" :
+            NULL;
+    case DECISION_NOTE:
+    case DECISION_QUERY:
+    case DECISION_RESPONSE:
+        return is_empty(decision->text) ? "says nothing" : NULL;
+    default:
+        return NULL;
+    }
+}
+
+/* Whether the text fields that the kind cannot do without are there. */
+static bool texts_there(const struct decision *decision) {
+    const struct decision_rule *rule = &decision_rules[decision->kind];
+    for (size_t i = 0; i < FIELDS; i++) {
+        const char *text = NULL;
+        memcpy(&text, (const char *)decision + fields[i].place, sizeof text);
+        if (fields[i].type == FIELD_TEXT && fields[i].place && !text && listed(rule->required, fields[i].name)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+/* A study file can have been written to by others: what the replay relies on is looked at again. */
 bool decision_unpack(struct arena *arena, struct decision *decision, struct fault *fault) {
     cJSON *root = cJSON_ParseWithOpts(decision->body ? decision->body : "{}", NULL, 1);
-    if (!cJSON_IsObject(root)) {
-        cJSON_Delete(root);
-        return fault_set(fault, FAULT_INPUT, "the study file's decision %u cannot be read; ask for an earlier copy of the file",
-            decision->number);
+    bool numbered = decision->kind == DECISION_REVERSE || decision->kind == DECISION_RESPONSE;
+    bool done = cJSON_IsObject(root);
+    if (done) {
+        take_fields(arena, root, decision);
+        done = texts_there(decision) && !value_wrong(decision) &&
+               (!numbered || (decision->reverses > 0 && decision->reverses < decision->number)) &&
+               (decision->kind != DECISION_KEEP_RECORD || decision->row > 0);
     }
-    take_fields(arena, root, decision);
     cJSON_Delete(root);
-    return true;
+    return done || fault_set(fault, FAULT_INPUT, "the study file's decision %u cannot be read; ask for an earlier copy of the file",
+                       decision->number);
 }
 
 /* ---- reading a batch ---- */
@@ -250,34 +323,9 @@ static bool required_there(struct batch *batch, const cJSON *entry, const struct
         }
     }
     const cJSON *reason = cJSON_GetObjectItemCaseSensitive(entry, "reason");
-    bool blank = !cJSON_IsString(reason) || strspn(reason->valuestring, " \t\r\n") == strlen(reason->valuestring);
+    bool blank = !cJSON_IsString(reason) || is_empty(reason->valuestring);
     return !(rule->reason_needed && blank) ||
            refuse(batch, arena_format(batch->arena, "(%s) has no reason; every decision of this kind needs one", rule->name));
-}
-
-/* What only one kind asks of its values. */
-static bool values_fit(struct batch *batch, const struct decision *decision) {
-    enum scale scale;
-    enum blinding blinding;
-    switch (decision->kind) {
-    case DECISION_NUMBER_FORMAT:
-        return strcmp(decision->decimal, ".") == 0 || strcmp(decision->decimal, ",") == 0 ||
-               refuse(batch, "(number-format) has a \"decimal\" that is neither \".\" nor \",\"");
-    case DECISION_SCALE:
-        return scale_read(decision->scale, &scale) || refuse(batch, "(scale) has a \"scale\" that is neither linear nor log10");
-    case DECISION_EXCLUDE:
-        return strcmp(decision->set, "full") == 0 || strcmp(decision->set, "per-protocol") == 0 ||
-               refuse(batch, "(exclude) has a \"set\" that is neither full nor per-protocol");
-    case DECISION_UNBLIND:
-        return (decision->to && blinding_read(decision->to, &blinding) && blinding != BLINDING_POOLED) ||
-               refuse(batch, "(unblind) has a \"to\" that is neither coded nor unblinded");
-    case DECISION_READ_AS:
-        return (decision->from && decision->to) || refuse(batch, "(read-as) needs texts for \"from\" and \"to\"; use set-missing for null");
-    case DECISION_CORRECT:
-        return decision->to || refuse(batch, "(correct) needs a text for \"to\"; use set-missing for a value that is to be missing");
-    default:
-        return true;
-    }
 }
 
 static bool read_entry(struct batch *batch, const cJSON *entry, struct decision *decision) {
@@ -304,7 +352,8 @@ static bool read_entry(struct batch *batch, const cJSON *entry, struct decision 
     decision->kind = (enum decision_kind)found;
     take_fields(batch->arena, entry, decision);
     decision->body = body_of(batch->arena, entry);
-    return values_fit(batch, decision);
+    const char *wrong = value_wrong(decision);
+    return !wrong || refuse(batch, arena_format(batch->arena, "(%s) %s", rule->name, wrong));
 }
 
 static bool read_batch(struct batch *batch, const cJSON *root, struct decision **decisions, size_t *count, uint32_t *version) {
@@ -312,8 +361,15 @@ static bool read_batch(struct batch *batch, const cJSON *root, struct decision *
     *version = UINT32_MAX;
     if (cJSON_IsObject(root)) {
         list = cJSON_GetObjectItemCaseSensitive(root, "decisions");
+        for (const cJSON *item = root->child; item; item = item->next) {
+            if (!listed("version by decisions", item->string)) {
+                return fault_set(batch->fault, FAULT_INPUT, "%s: the key \"%.60s\" is not one a batch has; known are: version decisions",
+                    batch->name, item->string);
+            }
+        }
         const cJSON *seen = cJSON_GetObjectItemCaseSensitive(root, "version");
-        if (seen && (!cJSON_IsNumber(seen) || seen->valuedouble < 0 || seen->valuedouble > 4294967294.0)) {
+        if (seen && (!cJSON_IsNumber(seen) || seen->valuedouble < 0 || seen->valuedouble > 4294967294.0 ||
+                        floor(seen->valuedouble) < seen->valuedouble)) {
             return fault_set(batch->fault, FAULT_INPUT, "%s: \"version\" must be the number of the last decision seen", batch->name);
         }
         *version = seen ? (uint32_t)seen->valuedouble : UINT32_MAX;
@@ -341,13 +397,16 @@ bool decisions_read(struct arena *arena, const char *json, size_t length, const 
     }
     const char *copy = arena_bytes(arena, json, length), *end = copy;
     cJSON *root = cJSON_ParseWithOpts(copy, &end, 1);
-    bool done = root && strlen(copy) == length;
+    const char *foreign = (const char *)u8_check((const uint8_t *)copy, length);
+    bool done = !foreign && root && strlen(copy) == length;
     if (!done) {
         size_t line = 1;
+        end = foreign ? foreign : end;
         for (const char *p = copy; end && p < end; p++) {
             line += *p == '\n';
         }
-        fault_at(fault, FAULT_INPUT, line, 0, "%s, line %zu: this is not JSON from here on; mend the text and try again", name, line);
+        fault_set(fault, FAULT_INPUT, foreign ? "%s, line %zu: a character that is not UTF-8; save the text as UTF-8 and try again" :
+            "%s, line %zu: this is not JSON from here on; mend the text and try again", name, line);
     }
     done = done && read_batch(&batch, root, decisions, count, version);
     cJSON_Delete(root);
