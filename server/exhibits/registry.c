@@ -14,6 +14,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_missing_grid,
     &exhibit_missing_by_arm,
     &exhibit_distribution,
+    &exhibit_before_after,
     &exhibit_change_by_arm,
     &exhibit_effect,
     &exhibit_decisions,
