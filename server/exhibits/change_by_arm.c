@@ -60,7 +60,7 @@ static void make_caption(struct view *view, const struct change_result *result) 
     const char *what = result->has_change ?
         arena_format(view->arena, "Change = %s minus %s", visit, lower_first(view, outcome->visits[0].label)) :
         arena_format(view->arena, "Values at %s (there is no baseline)", visit);
-    view->caption = arena_format(view->arena, "%s, %s%s%s, %s. Box: quartiles (type 7); heavy bar: median; ring: mean; line: furthest value "
+    view->caption = arena_format(view->arena, "%s, %s%s%s, %s. Box: quartiles (type 7); heavy bar: median; cross: mean; line: furthest value "
         "within 1.5 box lengths; every participant is drawn, those beyond the lines are named.%s", what, scale,
         view->scale == SCALE_LINEAR && *outcome->unit ? ", " : "", view->scale == SCALE_LINEAR ? outcome->unit : "",
         set_words(view->set), result->fitted ? " Differences at the right are baseline-adjusted, from one model." : "");

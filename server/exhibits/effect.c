@@ -19,19 +19,23 @@ static const char *const role_names[] = {"primary", "sensitivity", "supplementar
 static const char *const role_words[] = {"planned analysis", "sensitivity", "supplementary"};
 
 static const struct {
-    const char *name, *label;
+    const char *name, *label, *ratio_label; /* the label where the effect is a ratio */
     enum role role;
     bool adjusted, of_change;
 } methods[METHODS] = {
-    [ANCOVA] = {"ancova", "Baseline-adjusted difference", ROLE_PRIMARY, true, false},
-    [ANCOVA_HC3] = {"ancova-hc3", "The same, robust standard error", ROLE_SENSITIVITY, true, false},
-    [HUBER] = {"huber", "The same, Huber M-estimate", ROLE_SENSITIVITY, true, false},
-    [PERMUTATION] = {"permutation", "The same, permutation p", ROLE_SENSITIVITY, true, false},
-    [CHANGE_WELCH] = {"change-welch", "Unadjusted difference in change", ROLE_SUPPLEMENTARY, false, true},
-    [FINAL_WELCH] = {"final-welch", "Unadjusted difference at follow-up", ROLE_SUPPLEMENTARY, false, false},
-    [RANK_SHIFT] = {"rank-shift", "Hodges-Lehmann shift in change", ROLE_SUPPLEMENTARY, false, true},
-    [TRIMMED_MEAN] = {"trimmed-mean", "20% trimmed means of change", ROLE_SUPPLEMENTARY, false, true},
+    [ANCOVA] = {"ancova", "Baseline-adjusted difference", "Baseline-adjusted ratio", ROLE_PRIMARY, true, false},
+    [ANCOVA_HC3] = {"ancova-hc3", "The same, robust standard error", "The same, robust standard error", ROLE_SENSITIVITY, true, false},
+    [HUBER] = {"huber", "The same, Huber M-estimate", "The same, Huber M-estimate", ROLE_SENSITIVITY, true, false},
+    [PERMUTATION] = {"permutation", "The same, permutation p", "The same, permutation p", ROLE_SENSITIVITY, true, false},
+    [CHANGE_WELCH] = {"change-welch", "Unadjusted difference in change", "Unadjusted ratio of changes", ROLE_SUPPLEMENTARY, false, true},
+    [FINAL_WELCH] = {"final-welch", "Unadjusted difference at follow-up", "Unadjusted ratio at follow-up", ROLE_SUPPLEMENTARY, false, false},
+    [RANK_SHIFT] = {"rank-shift", "Hodges-Lehmann shift in change", "Hodges-Lehmann shift in change", ROLE_SUPPLEMENTARY, false, true},
+    [TRIMMED_MEAN] = {"trimmed-mean", "20% trimmed means of change", "20% trimmed means of change", ROLE_SUPPLEMENTARY, false, true},
 };
+
+static const char *label_of(enum method method, enum scale scale) {
+    return scale == SCALE_LOG10 ? methods[method].ratio_label : methods[method].label;
+}
 
 struct contrast {
     size_t arm;
@@ -384,7 +388,7 @@ static void contrast_json(const struct view *view, const struct effect_result *r
         const struct estimate *estimate = &contrast->estimates[method];
         json_object(json);
         json_field_string(json, "method", methods[method].name);
-        json_field_string(json, "label", methods[method].label);
+        json_field_string(json, "label", label_of(method, view->scale));
         json_field_string(json, "role", role_names[role_of(result, method)]);
         counts_of(result, view, contrast, method, n);
         counts_json(json, n);
@@ -479,7 +483,7 @@ static void tables(const struct view *view, struct table **tables, size_t *count
             size_t n[2];
             counts_of(result, view, contrast, method, n);
             table_row(table);
-            table_put_header(table, methods[method].label);
+            table_put_header(table, label_of(method, view->scale));
             table_put_text(table, role_words[role_of(result, method)]);
             table_put_count(table, (int64_t)n[0]);
             table_put_count(table, (int64_t)n[1]);
@@ -580,7 +584,7 @@ static void figure(const struct view *view, const struct figure *figure, struct 
         enum method method = in_order(result, place);
         const struct estimate *estimate = &contrast->estimates[method];
         bool ok = estimate->status == STATUS_OK, planned = role_of(result, method) == ROLE_PRIMARY;
-        rows[place] = (struct estimates_row){.label = methods[method].label, .role = role_words[role_of(result, method)],
+        rows[place] = (struct estimates_row){.label = label_of(method, view->scale), .role = role_words[role_of(result, method)],
             .estimate = shown_value(view, estimate->estimate), .low = shown_value(view, estimate->low),
             .high = shown_value(view, estimate->high), .figures = ok ? figures_words(view, estimate, decimals) : NULL,
             .sentence = ok ? NULL : status_sentence(estimate->status), .emphasised = planned,

@@ -157,7 +157,7 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     size_t arms = view->arms.count;
     bool split = !view->arms.pooled;
     struct flow_stage stages[3] = {{.label = "records in the file"}, {.label = "randomised"}, {.label = analysed->label}};
-    stages[0].total = leaving(view, s[0].total, "records held aside", s[1].total, "without an arm that the plan lists", s[2].total);
+    stages[0].total = leaving(view, s[0].total, s[1].total == 1 ? "record held aside" : "records held aside", s[1].total, "without an arm that the plan lists", s[2].total);
     const char *no_value = arena_format(view->arena, "no value at %s", lower_first(view, outcome->visits[outcome->primary_visit].label));
     stages[1].total = leaving(view, randomised->total, excluded->label, excluded->total, no_value,
         randomised->total - excluded->total - analysed->total);
