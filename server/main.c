@@ -19,7 +19,16 @@
 
 enum exit_status { EXIT_DONE, EXIT_REFUSED, EXIT_USAGE };
 
-enum option { OPTION_PLAN, OPTION_STUDY, OPTION_BY, OPTION_PORT, OPTION_NO_BROWSER, OPTION_FOLDER, OPTION_AS, OPTION_COUNT };
+enum option {
+    OPTION_PLAN,
+    OPTION_STUDY,
+    OPTION_BY,
+    OPTION_PORT,
+    OPTION_NO_BROWSER,
+    OPTION_FOLDER,
+    OPTION_AS,
+    OPTION_COUNT
+};
 
 static const struct option_rule {
     const char *name, *value, *says; /* value NULL: a flag */
@@ -56,7 +65,8 @@ static enum exit_status refuse(const struct fault *fault) {
     return EXIT_REFUSED;
 }
 
-__attribute__((format(printf, 2, 3))) static enum exit_status wrong_usage(const struct command *command, const char *format, ...) {
+__attribute__((format(printf, 2, 3))) static enum exit_status wrong_usage(
+    const struct command *command, const char *format, ...) {
     va_list arguments;
     va_start(arguments, format);
     fputs("evenhand: ", stderr);
@@ -69,7 +79,8 @@ __attribute__((format(printf, 2, 3))) static enum exit_status wrong_usage(const 
 /* Everything printed is on its way, or the exit says otherwise. */
 static enum exit_status printed(void) {
     if (fflush(stdout) != 0 || ferror(stdout)) {
-        fprintf(stderr, "evenhand: cannot write to standard output (%s); free space or choose another place\n", strerror(errno));
+        fprintf(stderr, "evenhand: cannot write to standard output (%s); free space or choose another place\n",
+            strerror(errno));
         return EXIT_REFUSED;
     }
     return EXIT_DONE;
@@ -106,7 +117,8 @@ static bool write_file(const char *path, const struct text *content, struct faul
     bool whole = done == content->length && put >= 0;
     if (close(handle) != 0 || !whole) {
         unlink(path);
-        return fault_set(fault, FAULT_SYSTEM, "%s: cannot be written (%s); free space or choose another folder", path, strerror(why));
+        return fault_set(fault, FAULT_SYSTEM, "%s: cannot be written (%s); free space or choose another folder", path,
+            strerror(why));
     }
     return true;
 }
@@ -167,7 +179,8 @@ static bool serve(const struct given *given, const char *study, const char *fold
     signal(SIGPIPE, SIG_IGN);
     struct server_state *state = server_new(folder, fault);
     struct listener *listener = NULL;
-    bool done = state && (!study || server_open_study(state, study, fault)) && (listener = listener_start(state, port, fault));
+    bool done =
+        state && (!study || server_open_study(state, study, fault)) && (listener = listener_start(state, port, fault));
     if (done) {
         char address[128];
         snprintf(address, sizeof address, "http://127.0.0.1:%u/?key=%s", listener_port(listener), server_key(state));
@@ -187,7 +200,8 @@ static bool serve(const struct given *given, const char *study, const char *fold
 static enum exit_status check_port(const struct given *given) {
     unsigned port;
     return port_of(given, &port) ? EXIT_DONE
-                                 : wrong_usage(given->command, "--port %s is no port; it is a number from 0 to 65535", given->options[OPTION_PORT]);
+                                 : wrong_usage(given->command, "--port %s is no port; it is a number from 0 to 65535",
+                                       given->options[OPTION_PORT]);
 }
 
 static enum exit_status run_open(const struct given *given) {
@@ -207,22 +221,26 @@ static enum exit_status run_open(const struct given *given) {
 }
 
 /* Writes the demonstration's files into the folder and makes the study of them. */
-static bool make_demo(const char *folder, struct arena *arena, const char **study, struct text *account, struct fault *fault) {
+static bool make_demo(
+    const char *folder, struct arena *arena, const char **study, struct text *account, struct fault *fault) {
     struct quayside quayside;
     quayside_make(QUAYSIDE_SEED, &quayside);
     const struct {
         const char *name;
         const struct text *content;
     } files[] = {{"export.csv", &quayside.export_csv}, {"plan.json", &quayside.plan_json},
-        {"decisions.json", &quayside.decisions_json}, {"clean.csv", &quayside.clean_csv}, {"key.json", &quayside.key_json}};
+        {"decisions.json", &quayside.decisions_json}, {"clean.csv", &quayside.clean_csv},
+        {"key.json", &quayside.key_json}};
     *study = arena_format(arena, "%s/quayside.study", folder);
     bool done = access(*study, F_OK) != 0 ||
-                fault_set(fault, FAULT_CONFLICT, "%s: is there already; open it, or give the demonstration another folder", *study);
+                fault_set(fault, FAULT_CONFLICT,
+                    "%s: is there already; open it, or give the demonstration another folder", *study);
     for (size_t i = 0; done && i < sizeof files / sizeof *files; i++) {
         done = write_file(arena_format(arena, "%s/%s", folder, files[i].name), files[i].content, fault);
     }
     done = done && study_create(*study, "export.csv", quayside.export_csv.data, quayside.export_csv.length, "plan.json",
-                       quayside.plan_json.data, quayside.plan_json.length, "Demonstration, made by the program", account, fault);
+                       quayside.plan_json.data, quayside.plan_json.length, "Demonstration, made by the program",
+                       account, fault);
     quayside_release(&quayside);
     return done;
 }
@@ -232,12 +250,14 @@ static bool demo_folder(const struct given *given, struct arena *arena, const ch
     if (wanted) {
         *folder = wanted;
         return mkdir(wanted, 0777) == 0 || errno == EEXIST ||
-               fault_set(fault, FAULT_SYSTEM, "%s: cannot be made (%s); choose another folder", wanted, strerror(errno));
+               fault_set(
+                   fault, FAULT_SYSTEM, "%s: cannot be made (%s); choose another folder", wanted, strerror(errno));
     }
     const char *temporary = getenv("TMPDIR");
     char *made = arena_format(arena, "%s/evenhand-demo-XXXXXX", temporary && *temporary ? temporary : "/tmp");
     *folder = mkdtemp(made);
-    return *folder || fault_set(fault, FAULT_SYSTEM, "%s: no temporary folder can be made (%s); name one with --folder", made, strerror(errno));
+    return *folder || fault_set(fault, FAULT_SYSTEM, "%s: no temporary folder can be made (%s); name one with --folder",
+                          made, strerror(errno));
 }
 
 static enum exit_status run_demo(const struct given *given) {
@@ -253,7 +273,8 @@ static enum exit_status run_demo(const struct given *given) {
     const char *folder, *study;
     bool done = demo_folder(given, &arena, &folder, &fault) && make_demo(folder, &arena, &study, &account, &fault);
     if (done) {
-        printf("The invented Quayside Walking Trial is in %s: the study quayside.study, what it was made from (export.csv, "
+        printf("The invented Quayside Walking Trial is in %s: the study quayside.study, what it was made from "
+               "(export.csv, "
                "plan.json),\nthe right decisions (decisions.json) and the truth (clean.csv, key.json).\n",
             folder);
         done = serve(given, study, folder, &fault);
@@ -269,7 +290,8 @@ static enum exit_status run_load(const struct given *given) {
     struct fault fault;
     fault_init(&fault);
     if (given->word_count > 1) {
-        fault_set(&fault, FAULT_INPUT, "%s: this version loads one data file; join the files into one first", given->words[1]);
+        fault_set(&fault, FAULT_INPUT, "%s: this version loads one data file; join the files into one first",
+            given->words[1]);
         return refuse(&fault);
     }
     struct text data, plan, account;
@@ -278,8 +300,8 @@ static enum exit_status run_load(const struct given *given) {
     text_init(&account);
     const char *path = given->words[0], *plan_path = given->options[OPTION_PLAN];
     bool done = read_file(path, &data, &fault) && read_file(plan_path, &plan, &fault) &&
-                study_create(given->options[OPTION_STUDY], last_part(path), data.data, data.length, last_part(plan_path), plan.data,
-                    plan.length, given->options[OPTION_BY], &account, &fault);
+                study_create(given->options[OPTION_STUDY], last_part(path), data.data, data.length,
+                    last_part(plan_path), plan.data, plan.length, given->options[OPTION_BY], &account, &fault);
     if (done) {
         fputs(account.data, stdout);
         if (account.length && account.data[account.length - 1] != '\n') {
@@ -303,11 +325,12 @@ static enum exit_status run_decide(const struct given *given) {
     bool done = read_file(path, &batch, &fault) && (study = study_open(given->words[0], &fault));
     struct frame *before = done ? study_frame(study, &fault) : NULL;
     uint32_t first = before ? before->version : 0;
-    done = before && study_decide(study, given->options[OPTION_BY], batch.data, batch.length, last_part(path), ANY_VERSION, &version, &fault);
+    done = before && study_decide(study, given->options[OPTION_BY], batch.data, batch.length, last_part(path),
+                         ANY_VERSION, &version, &fault);
     frame_release(before);
     if (done) {
-        printf("Recorded %u decision%s; %s now stands after decision %u.\n", version - first, version - first == 1 ? "" : "s",
-            given->words[0], version);
+        printf("Recorded %u decision%s; %s now stands after decision %u.\n", version - first,
+            version - first == 1 ? "" : "s", given->words[0], version);
     }
     if (study) {
         study_close(study);
@@ -341,7 +364,8 @@ static size_t form_of(const struct given *given) {
 }
 
 /* The words after the exhibit's name as name=value pairs. */
-static enum exit_status arguments_of(const struct given *given, struct arena *arena, struct asked *asked, size_t *count) {
+static enum exit_status arguments_of(
+    const struct given *given, struct arena *arena, struct asked *asked, size_t *count) {
     for (size_t i = 2; i < given->word_count; i++) {
         const char *word = given->words[i], *equals = strchr(word, '=');
         if (!equals || equals == word) {
@@ -358,8 +382,8 @@ static enum exit_status arguments_of(const struct given *given, struct arena *ar
     return EXIT_DONE;
 }
 
-static bool show(struct study *study, const struct given *given, const struct asked *asked, size_t count, struct arena *arena,
-    struct text *out, struct fault *fault) {
+static bool show(struct study *study, const struct given *given, const struct asked *asked, size_t count,
+    struct arena *arena, struct text *out, struct fault *fault) {
     char by[256];
     account_name(by, sizeof by);
     struct view view;
@@ -367,7 +391,8 @@ static bool show(struct study *study, const struct given *given, const struct as
         return false;
     }
     forms[form_of(given)].write(&view, out);
-    bool done = out->length || fault_set(fault, FAULT_REFUSED, "the exhibit %s is a table without a figure; ask for it --as csv", given->words[1]);
+    bool done = out->length || fault_set(fault, FAULT_REFUSED,
+                                   "the exhibit %s is a table without a figure; ask for it --as csv", given->words[1]);
     view_release(&view);
     return done;
 }
@@ -376,7 +401,8 @@ static enum exit_status run_exhibit(const struct given *given) {
     struct fault fault;
     fault_init(&fault);
     if (!forms[form_of(given)].name) {
-        return wrong_usage(given->command, "--as %s is not known; it is one of text, json, csv, svg, html", given->options[OPTION_AS]);
+        return wrong_usage(
+            given->command, "--as %s is not known; it is one of text, json, csv, svg, html", given->options[OPTION_AS]);
     }
     struct arena arena;
     arena_init(&arena);
@@ -417,12 +443,13 @@ static enum exit_status run_exhibits(const struct given *given) {
 static const struct command *command_of(const char *name);
 
 static void help_command(const struct command *command) {
-    printf("evenhand %s%s%s\n\n%s.\n%s\n", command->name, *command->arguments ? " " : "", command->arguments, command->says, command->details);
+    printf("evenhand %s%s%s\n\n%s.\n%s\n", command->name, *command->arguments ? " " : "", command->arguments,
+        command->says, command->details);
     for (size_t i = 0; i < OPTION_COUNT; i++) {
         if (command->options & WITH(i)) {
             const struct option_rule *rule = &option_rules[i];
-            printf("\n  %s%s%s\n      %s%s\n", rule->name, rule->value ? " " : "", rule->value ? rule->value : "", rule->says,
-                command->required & WITH(i) ? " (needed)" : "");
+            printf("\n  %s%s%s\n      %s%s\n", rule->name, rule->value ? " " : "", rule->value ? rule->value : "",
+                rule->says, command->required & WITH(i) ? " (needed)" : "");
         }
     }
 }
@@ -431,19 +458,23 @@ static enum exit_status run_help(const struct given *given);
 
 static const struct command commands[] = {
     {"demo", "[--port N] [--no-browser] [--folder DIR]", "makes the demonstration study and opens it",
-        "The study of the invented Quayside Walking Trial is made in a new temporary folder, or in DIR, beside the files it was\n"
+        "The study of the invented Quayside Walking Trial is made in a new temporary folder, or in DIR, beside the "
+        "files it was\n"
         "made from, the right decisions and the truth.",
         WITH(OPTION_PORT) | WITH(OPTION_NO_BROWSER) | WITH(OPTION_FOLDER), 0, 0, 0, run_demo},
-    {"load", "DATA.csv --plan PLAN.json --study FILE.study --by \"Name, role\"", "makes a new study file from an export",
-        "Prints a short account of what was read. Never overwrites a file.",
-        WITH(OPTION_PLAN) | WITH(OPTION_STUDY) | WITH(OPTION_BY), WITH(OPTION_PLAN) | WITH(OPTION_STUDY) | WITH(OPTION_BY), 1,
-        MOST_WORDS, run_load},
+    {"load", "DATA.csv --plan PLAN.json --study FILE.study --by \"Name, role\"",
+        "makes a new study file from an export", "Prints a short account of what was read. Never overwrites a file.",
+        WITH(OPTION_PLAN) | WITH(OPTION_STUDY) | WITH(OPTION_BY),
+        WITH(OPTION_PLAN) | WITH(OPTION_STUDY) | WITH(OPTION_BY), 1, MOST_WORDS, run_load},
     {"open", "[FILE.study] [--port N] [--no-browser] [--folder DIR]", "serves a study to a browser on this machine",
-        "Without a study it serves the first page, where a study is made from a dropped file and kept in DIR (the working folder\n"
+        "Without a study it serves the first page, where a study is made from a dropped file and kept in DIR (the "
+        "working folder\n"
         "by default). It prints the address with its key and runs until it is interrupted.",
         WITH(OPTION_PORT) | WITH(OPTION_NO_BROWSER) | WITH(OPTION_FOLDER), 0, 0, 1, run_open},
-    {"exhibit", "FILE.study NAME [key=value ...] [--as text|json|csv|svg|html]", "writes one exhibit to standard output",
-        "While arms are coded, showing an outcome by arm is entered in the study's table of looks under the account's name.\n"
+    {"exhibit", "FILE.study NAME [key=value ...] [--as text|json|csv|svg|html]",
+        "writes one exhibit to standard output",
+        "While arms are coded, showing an outcome by arm is entered in the study's table of looks under the account's "
+        "name.\n"
         "evenhand exhibits lists the exhibits and their arguments.",
         WITH(OPTION_AS), 0, 2, MOST_WORDS, run_exhibit},
     {"exhibits", "", "lists every exhibit with its arguments", "", 0, 0, 0, 0, run_exhibits},
@@ -472,12 +503,16 @@ static enum exit_status run_help(const struct given *given) {
     if (given->word_count) {
         return wrong_usage(NULL, "there is no command \"%s\"", given->words[0]);
     }
-    puts("Evenhand takes a randomised trial's export, settles its doubtful values by recorded decisions, and shows what is missing,\n"
-         "what changed and the baseline-adjusted effect. It serves a page to a browser on this machine and to no other.\n");
+    puts("Evenhand takes a randomised trial's export, settles its doubtful values by recorded decisions, and shows "
+         "what is missing,\n"
+         "what changed and the baseline-adjusted effect. It serves a page to a browser on this machine and to no "
+         "other.\n");
     for (const struct command *command = commands; command->name; command++) {
-        printf("  evenhand %s%s%s\n      %s\n", command->name, *command->arguments ? " " : "", command->arguments, command->says);
+        printf("  evenhand %s%s%s\n      %s\n", command->name, *command->arguments ? " " : "", command->arguments,
+            command->says);
     }
-    puts("\nFor use by people qualified to analyse trials, beside the approved protocol and analysis plan. Not a basis for treating any\n"
+    puts("\nFor use by people qualified to analyse trials, beside the approved protocol and analysis plan. Not a basis "
+         "for treating any\n"
          "one patient.");
     return printed();
 }
@@ -519,8 +554,8 @@ static enum exit_status check_given(const struct given *given) {
         return wrong_usage(command, "something is missing: evenhand %s %s", command->name, command->arguments);
     }
     if (given->word_count > command->most) {
-        return wrong_usage(command, "\"%s\" is one word too many: evenhand %s%s%s", given->words[command->most], command->name,
-            *command->arguments ? " " : "", command->arguments);
+        return wrong_usage(command, "\"%s\" is one word too many: evenhand %s%s%s", given->words[command->most],
+            command->name, *command->arguments ? " " : "", command->arguments);
     }
     for (size_t i = 0; i < OPTION_COUNT; i++) {
         if ((command->required & WITH(i)) && !given->options[i]) {

@@ -15,8 +15,8 @@ struct pair {
 
 /* All texts are borrowed from the caller; headers that were not sent are NULL. */
 struct request {
-    const char *method; /* as sent: "GET" */
-    const char *path;   /* decoded, starts with "/"; see request_target */
+    const char *method;       /* as sent: "GET" */
+    const char *path;         /* decoded, starts with "/"; see request_target */
     const struct pair *query; /* decoded, in the order sent */
     size_t query_count;
     size_t host_count; /* how many Host headers came */
@@ -42,13 +42,14 @@ void reply_init(struct reply *reply);
 void reply_release(struct reply *reply);
 void reply_header(struct reply *reply, const char *name, const char *value); /* copies the value */
 const char *reply_header_of(const struct reply *reply, const char *name);    /* or NULL */
-/* {"fault": sentence, "row", "column"}; row and column are null where there is no place. The status follows the code. */
+/* {"fault": sentence, "row", "column"}; row and column are null where there is no place. The status follows the code.
+ */
 void reply_fault(struct reply *reply, const struct fault *fault);
 /* The same with a status of its own. */
 void reply_refuse(struct reply *reply, unsigned status, const char *format, ...) __attribute__((format(printf, 3, 4)));
 
-/* Takes "/path?name=value&..." apart into the arena: percent-decoded ("+" in the query is a space), each text valid UTF-8
- * without NUL or control characters, no name twice. FAULT_INPUT otherwise. */
+/* Takes "/path?name=value&..." apart into the arena: percent-decoded ("+" in the query is a space), each text valid
+ * UTF-8 without NUL or control characters, no name twice. FAULT_INPUT otherwise. */
 bool request_target(struct request *request, const char *target, struct arena *arena, struct fault *fault);
 /* The value of a name in the query, or NULL. */
 const char *request_asked(const struct request *request, const char *name);

@@ -12,7 +12,7 @@ struct server_state;
 /* `folder`: where studies are listed and made; copied. The key is 128 bits of the system's randomness: FAULT_SYSTEM
  * where there is none. */
 struct server_state *server_new(const char *folder, struct fault *fault);
-void server_free(struct server_state *state); /* closes the study; no request may be running */
+void server_free(struct server_state *state);                /* closes the study; no request may be running */
 void server_port(struct server_state *state, unsigned port); /* the port in Host, Origin and the cookie's name */
 const char *server_key(const struct server_state *state);    /* 32 hexadecimal digits */
 const char *server_folder(const struct server_state *state);
@@ -26,8 +26,8 @@ bool server_close_study(struct server_state *state, struct fault *fault);
 void account_name(char *name, size_t size);
 
 struct listener;
-/* Serves on 127.0.0.1 alone, from threads of its own; port 0 takes a free one. Tells the state the port. FAULT_SYSTEM, with
- * the way out, where the port is taken. */
+/* Serves on 127.0.0.1 alone, from threads of its own; port 0 takes a free one. Tells the state the port. FAULT_SYSTEM,
+ * with the way out, where the port is taken. */
 struct listener *listener_start(struct server_state *state, unsigned port, struct fault *fault);
 unsigned listener_port(const struct listener *listener);
 void listener_stop(struct listener *listener); /* waits for running requests; NULL is fine */

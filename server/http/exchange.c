@@ -95,7 +95,10 @@ void reply_refuse(struct reply *reply, unsigned status, const char *format, ...)
 }
 
 static int hexadecimal(char c) {
-    return c >= '0' && c <= '9' ? c - '0' : c >= 'a' && c <= 'f' ? c - 'a' + 10 : c >= 'A' && c <= 'F' ? c - 'A' + 10 : -1;
+    return c >= '0' && c <= '9'   ? c - '0'
+           : c >= 'a' && c <= 'f' ? c - 'a' + 10
+           : c >= 'A' && c <= 'F' ? c - 'A' + 10
+                                  : -1;
 }
 
 /* Decodes one part of the target; `in_query`: a plus sign is a space. */
@@ -169,7 +172,8 @@ bool request_target(struct request *request, const char *target, struct arena *a
         }
         for (size_t i = 0; i < count; i++) {
             if (strcmp(pairs[i].name, pairs[count].name) == 0) {
-                return fault_set(fault, FAULT_INPUT, "\"%.60s\" stands twice in the address; give it once", pairs[i].name);
+                return fault_set(
+                    fault, FAULT_INPUT, "\"%.60s\" stands twice in the address; give it once", pairs[i].name);
             }
         }
         count++;

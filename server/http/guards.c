@@ -10,8 +10,9 @@
 #include <strings.h>
 
 static const struct pair security_headers[] = {
-    {"Content-Security-Policy", "default-src 'none'; script-src 'self'; style-src 'self'; img-src 'self'; connect-src 'self'; "
-                                "form-action 'self'; base-uri 'none'; frame-ancestors 'none'"},
+    {"Content-Security-Policy",
+        "default-src 'none'; script-src 'self'; style-src 'self'; img-src 'self'; connect-src 'self'; "
+        "form-action 'self'; base-uri 'none'; frame-ancestors 'none'"},
     {"X-Content-Type-Options", "nosniff"},
     {"X-Frame-Options", "DENY"},
     {"Referrer-Policy", "no-referrer"},
@@ -55,8 +56,9 @@ static bool guard_host(struct server_state *state, const struct request *request
         return false;
     }
     if (!host_ours(state, request->host)) {
-        reply_refuse(reply, 403, "this server answers to 127.0.0.1:%u and localhost:%u only; open the address that was printed",
-            state->port, state->port);
+        reply_refuse(reply, 403,
+            "this server answers to 127.0.0.1:%u and localhost:%u only; open the address that was printed", state->port,
+            state->port);
         return false;
     }
     return true;
@@ -83,7 +85,8 @@ static void how_to_open(struct reply *reply) {
     html_element(&html, "p", NULL,
         "This page belongs to whoever started the program. Copy the whole address from the line that says "
         "“Evenhand is open at …”, with its key, and open that.");
-    html_element(&html, "p", NULL, "Each start of the program makes a new key; an address from an earlier start no longer works.");
+    html_element(&html, "p", NULL,
+        "Each start of the program makes a new key; an address from an earlier start no longer works.");
     html_close(&html);
     html_close(&html);
     html_finish(&html);
@@ -91,7 +94,8 @@ static void how_to_open(struct reply *reply) {
 
 static void append_encoded(struct text *out, const char *value) {
     for (const unsigned char *p = (const unsigned char *)value; *p; p++) {
-        bool plain = (*p >= '0' && *p <= '9') || (*p >= 'A' && *p <= 'Z') || (*p >= 'a' && *p <= 'z') || strchr("-._~", *p);
+        bool plain =
+            (*p >= '0' && *p <= '9') || (*p >= 'A' && *p <= 'Z') || (*p >= 'a' && *p <= 'z') || strchr("-._~", *p);
         plain ? text_char(out, (char)*p) : text_format(out, "%%%02X", *p);
     }
 }
@@ -232,8 +236,8 @@ static bool guard_size(struct server_state *state, const struct request *request
     if (limit == 0) {
         reply_refuse(reply, 413, "%.100s takes no body", request->path);
     } else {
-        reply_refuse(reply, 413, "the request's body is larger than the %llu MB that %.100s takes", (unsigned long long)(limit >> 20),
-            request->path);
+        reply_refuse(reply, 413, "the request's body is larger than the %llu MB that %.100s takes",
+            (unsigned long long)(limit >> 20), request->path);
     }
     return false;
 }

@@ -40,7 +40,8 @@ static void *call_begin(void *closure, const char *target, struct MHD_Connection
     return call;
 }
 
-static void call_end(void *closure, struct MHD_Connection *connection, void **place, enum MHD_RequestTerminationCode why) {
+static void call_end(
+    void *closure, struct MHD_Connection *connection, void **place, enum MHD_RequestTerminationCode why) {
     (void)closure;
     (void)connection;
     (void)why;
@@ -163,7 +164,8 @@ static int bound_socket(unsigned *port, struct fault *fault) {
         *port = ntohs(address.sin_port);
         return handle;
     }
-    fault_set(fault, FAULT_SYSTEM, "cannot listen on port %u of 127.0.0.1 (%s); --port 0 takes a free one", *port, strerror(errno));
+    fault_set(fault, FAULT_SYSTEM, "cannot listen on port %u of 127.0.0.1 (%s); --port 0 takes a free one", *port,
+        strerror(errno));
     if (handle >= 0) {
         close(handle);
     }
@@ -177,12 +179,12 @@ struct listener *listener_start(struct server_state *state, unsigned port, struc
     }
     server_port(state, port);
     /* A thread for each connection: one slow exhibit does not keep the others waiting. */
-    struct MHD_Daemon *daemon = MHD_start_daemon(
-        MHD_USE_INTERNAL_POLLING_THREAD | MHD_USE_POLL | MHD_USE_THREAD_PER_CONNECTION, (uint16_t)port, NULL, NULL, answer, state,
-        MHD_OPTION_LISTEN_SOCKET, (MHD_socket)handle, MHD_OPTION_CONNECTION_LIMIT, (unsigned)CONNECTIONS,
-        MHD_OPTION_CONNECTION_TIMEOUT, (unsigned)IDLE_SECONDS, MHD_OPTION_CONNECTION_MEMORY_LIMIT, (size_t)HEADER_BYTES,
-        MHD_OPTION_STRICT_FOR_CLIENT, 1, MHD_OPTION_URI_LOG_CALLBACK, call_begin, NULL, MHD_OPTION_NOTIFY_COMPLETED, call_end,
-        NULL, MHD_OPTION_END);
+    struct MHD_Daemon *daemon =
+        MHD_start_daemon(MHD_USE_INTERNAL_POLLING_THREAD | MHD_USE_POLL | MHD_USE_THREAD_PER_CONNECTION, (uint16_t)port,
+            NULL, NULL, answer, state, MHD_OPTION_LISTEN_SOCKET, (MHD_socket)handle, MHD_OPTION_CONNECTION_LIMIT,
+            (unsigned)CONNECTIONS, MHD_OPTION_CONNECTION_TIMEOUT, (unsigned)IDLE_SECONDS,
+            MHD_OPTION_CONNECTION_MEMORY_LIMIT, (size_t)HEADER_BYTES, MHD_OPTION_STRICT_FOR_CLIENT, 1,
+            MHD_OPTION_URI_LOG_CALLBACK, call_begin, NULL, MHD_OPTION_NOTIFY_COMPLETED, call_end, NULL, MHD_OPTION_END);
     if (!daemon) {
         close(handle);
         fault_set(fault, FAULT_SYSTEM, "the server cannot start on port %u (%s)", port, strerror(errno));

@@ -19,9 +19,10 @@
 /* ---- the page and its files ---- */
 
 static const char *content_type(const char *path) {
-    static const struct pair types[] = {{".html", "text/html; charset=utf-8"}, {".js", "text/javascript; charset=utf-8"},
-        {".css", "text/css; charset=utf-8"}, {".svg", "image/svg+xml"}, {".json", "application/json"}, {".png", "image/png"},
-        {".ico", "image/x-icon"}, {".txt", "text/plain; charset=utf-8"}};
+    static const struct pair types[] = {{".html", "text/html; charset=utf-8"},
+        {".js", "text/javascript; charset=utf-8"}, {".css", "text/css; charset=utf-8"}, {".svg", "image/svg+xml"},
+        {".json", "application/json"}, {".png", "image/png"}, {".ico", "image/x-icon"},
+        {".txt", "text/plain; charset=utf-8"}};
     const char *ending = strrchr(path, '.');
     for (size_t i = 0; ending && i < sizeof types / sizeof *types; i++) {
         if (strcmp(types[i].name, ending) == 0) {
@@ -169,8 +170,8 @@ static void render(const struct view *view, size_t kind, bool meeting, struct re
 }
 
 /* Takes "meeting" out of the arguments where the rendering knows it; the rest is the exhibit's business. */
-static bool arguments_of(const struct request *request, size_t kind, struct arena *arena, struct asked **asked, size_t *count,
-    bool *meeting, struct fault *fault) {
+static bool arguments_of(const struct request *request, size_t kind, struct arena *arena, struct asked **asked,
+    size_t *count, bool *meeting, struct fault *fault) {
     *asked = ARENA_NEW(arena, request->query_count + 1, struct asked);
     *count = 0;
     *meeting = false;
@@ -178,7 +179,8 @@ static bool arguments_of(const struct request *request, size_t kind, struct aren
         const struct pair *pair = &request->query[i];
         if (renderings[kind].meeting && strcmp(pair->name, "meeting") == 0) {
             if (strcmp(pair->value, "1") != 0) {
-                return fault_set(fault, FAULT_INPUT, "meeting=%.40s is not known; the meeting view is meeting=1", pair->value);
+                return fault_set(
+                    fault, FAULT_INPUT, "meeting=%.40s is not known; the meeting view is meeting=1", pair->value);
             }
             *meeting = true;
         } else {
@@ -192,7 +194,8 @@ static bool no_study(struct fault *fault) {
     return fault_set(fault, FAULT_MISSING, "no study is open; open or make one on the first page");
 }
 
-static bool exhibit_with(struct server_state *state, const struct request *request, struct reply *reply, struct fault *fault) {
+static bool exhibit_with(
+    struct server_state *state, const struct request *request, struct reply *reply, struct fault *fault) {
     if (!state->study) {
         return no_study(fault);
     }
@@ -206,7 +209,8 @@ static bool exhibit_with(struct server_state *state, const struct request *reque
     }
     char by[BY_SIZE];
     struct view view;
-    if (!view_make(&view, state->study, name, asked, count, session_who(state, request->cookie, by), &reply->arena, fault)) {
+    if (!view_make(
+            &view, state->study, name, asked, count, session_who(state, request->cookie, by), &reply->arena, fault)) {
         return false;
     }
     render(&view, kind, meeting, reply);
@@ -245,7 +249,8 @@ static cJSON *body_object(const struct request *request, struct fault *fault) {
             column = *p == '\n' ? 1 : column + 1;
             line += *p == '\n';
         }
-        fault_at(fault, FAULT_INPUT, line, column, "the request's body is not JSON from line %zu, column %zu on", line, column);
+        fault_at(fault, FAULT_INPUT, line, column, "the request's body is not JSON from line %zu, column %zu on", line,
+            column);
         return NULL;
     }
     if (!cJSON_IsObject(object)) {
@@ -307,7 +312,8 @@ static bool version_seen(const cJSON *object, uint32_t *version, struct fault *f
     const cJSON *item = cJSON_GetObjectItemCaseSensitive(object, "version");
     double value = cJSON_IsNumber(item) ? item->valuedouble : -1;
     if (!(value >= 0 && value < ANY_VERSION) || value != (double)(uint32_t)value) {
-        return fault_set(fault, FAULT_INPUT, "\"version\" is missing: give the number of the last decision that was seen");
+        return fault_set(
+            fault, FAULT_INPUT, "\"version\" is missing: give the number of the last decision that was seen");
     }
     *version = (uint32_t)value;
     return true;
@@ -327,7 +333,8 @@ static bool decide(struct server_state *state, const struct request *request, co
         return no_study(fault);
     }
     return decider(state, request, object, by, fault) &&
-           study_decide(state->study, by, request->body, (size_t)request->body_length, "the request", seen, version, fault);
+           study_decide(
+               state->study, by, request->body, (size_t)request->body_length, "the request", seen, version, fault);
 }
 
 static uint32_t current_version(struct server_state *state) {
@@ -426,8 +433,8 @@ static bool file_field(struct server_state *state, const cJSON *object, struct a
 
 static bool none_open(struct server_state *state, struct fault *fault) {
     pthread_rwlock_rdlock(&state->study_lock);
-    bool none = !state->study ||
-                fault_set(fault, FAULT_CONFLICT, "the study %s is open already; close it first", study_path(state->study));
+    bool none = !state->study || fault_set(fault, FAULT_CONFLICT, "the study %s is open already; close it first",
+                                     study_path(state->study));
     pthread_rwlock_unlock(&state->study_lock);
     return none;
 }
@@ -438,7 +445,8 @@ static bool create(struct server_state *state, const struct request *request, co
     char by[BY_SIZE];
     const cJSON *plan = cJSON_GetObjectItemCaseSensitive(object, "plan");
     const cJSON *id = cJSON_GetObjectItemCaseSensitive(object, "draft");
-    if (!only_keys(object, "draft file plan by", fault) || !file_field(state, object, &reply->arena, file, &path, fault) ||
+    if (!only_keys(object, "draft file plan by", fault) ||
+        !file_field(state, object, &reply->arena, file, &path, fault) ||
         !text_field(object, "by", "give the name and role of who loads the file", fault) ||
         !decider(state, request, object, by, fault)) {
         return false;
@@ -493,8 +501,8 @@ static void answer_studies(struct server_state *state, const struct request *req
     text_release(&account);
 }
 
-static bool open_file(struct server_state *state, const cJSON *object, struct reply *reply, const char **file,
-    struct fault *fault) {
+static bool open_file(
+    struct server_state *state, const cJSON *object, struct reply *reply, const char **file, struct fault *fault) {
     const char *path;
     if (!only_keys(object, "file", fault) || !file_field(state, object, &reply->arena, file, &path, fault)) {
         return false;

@@ -17,7 +17,8 @@ static const size_t draft_room = (size_t)512 << 20;
 bool key_make(char key[KEY_SIZE], struct fault *fault) {
     unsigned char bytes[(KEY_SIZE - 1) / 2];
     if (getrandom(bytes, sizeof bytes, 0) != (ssize_t)sizeof bytes) {
-        return fault_set(fault, FAULT_SYSTEM, "the system gives no random numbers (%s), so no safe key can be made", strerror(errno));
+        return fault_set(fault, FAULT_SYSTEM, "the system gives no random numbers (%s), so no safe key can be made",
+            strerror(errno));
     }
     for (size_t i = 0; i < sizeof bytes; i++) {
         snprintf(key + 2 * i, 3, "%02x", bytes[i]);
@@ -53,7 +54,8 @@ static bool cookie_value(const struct server_state *state, const char *cookie, c
     for (const char *p = cookie; p && *p;) {
         p += strspn(p, " ;");
         size_t length = strcspn(p, ";");
-        if (length == name_length + KEY_SIZE && strncmp(p, state->cookie_name, name_length) == 0 && p[name_length] == '=') {
+        if (length == name_length + KEY_SIZE && strncmp(p, state->cookie_name, name_length) == 0 &&
+            p[name_length] == '=') {
             memcpy(value, p + name_length + 1, KEY_SIZE - 1);
             value[KEY_SIZE - 1] = '\0';
             return true;
@@ -234,7 +236,8 @@ bool server_open_study(struct server_state *state, const char *path, struct faul
     pthread_rwlock_wrlock(&state->study_lock);
     bool done = true;
     if (state->study) {
-        done = fault_set(fault, FAULT_CONFLICT, "the study %s is open already; close it first", study_path(state->study));
+        done =
+            fault_set(fault, FAULT_CONFLICT, "the study %s is open already; close it first", study_path(state->study));
     } else {
         state->study_hold = store_lock_take(path, fault);
         state->study = state->study_hold < 0 ? NULL : study_open(path, fault);

@@ -47,7 +47,8 @@ const char *session_who(struct server_state *state, const char *cookie, char by[
 
 /* Keeps a copy of the bytes; the oldest drafts make room. */
 uint64_t draft_keep(struct server_state *state, const char *name, const char *bytes, size_t length);
-/* Takes the draft out of the state (the caller gives it back or releases it), so that nobody pushes it out meanwhile. */
+/* Takes the draft out of the state (the caller gives it back or releases it), so that nobody pushes it out meanwhile.
+ */
 bool draft_take(struct server_state *state, uint64_t id, struct draft *draft);
 void draft_give_back(struct server_state *state, struct draft *draft);
 void draft_release(struct draft *draft);

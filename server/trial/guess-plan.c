@@ -39,7 +39,8 @@ static void add_code(struct codes *codes, const char *text, size_t columns) {
         }
     }
     codes->list = memory_grow(codes->list, codes->count + 1, sizeof *codes->list);
-    codes->list[codes->count++] = (struct code){.text = text, .columns = memory_new(columns, sizeof(size_t)), .everywhere = true};
+    codes->list[codes->count++] =
+        (struct code){.text = text, .columns = memory_new(columns, sizeof(size_t)), .everywhere = true};
 }
 
 static void codes_take(struct codes *codes, const struct guess *guess) {
@@ -170,7 +171,8 @@ void guess_json(const struct guess *guess, struct json *json) {
     json_object(json);
     json_field_string(json, "name", guess->name);
     json_field_integer(json, "records", (int64_t)guess->records);
-    json_field_string(json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].name);
+    json_field_string(
+        json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].name);
     json_field_string(json, "arm", guess->arm == NOWHERE ? NULL : guess->columns[guess->arm].name);
     json_key_array(json, "columns");
     for (size_t i = 0; i < guess->column_count; i++) {
@@ -261,8 +263,13 @@ static void draft_lone(struct draft *draft) {
         size_t columns[] = {(size_t)draft->lone};
         const char *visits[] = {"Follow-up"};
         const struct known_name *known = known_name_of(name_id(column->name, &draft->arena));
-        struct guess_series series = {.id = name_id(column->name, &draft->arena), .label = column->label, .unit = column->unit,
-            .columns = columns, .visits = visits, .count = 1, .lower_is_better = !(known && known->higher_is_better),
+        struct guess_series series = {.id = name_id(column->name, &draft->arena),
+            .label = column->label,
+            .unit = column->unit,
+            .columns = columns,
+            .visits = visits,
+            .count = 1,
+            .lower_is_better = !(known && known->higher_is_better),
             .scale = column->skewness > 0.3 && column->spread > 4 ? SCALE_LOG10 : SCALE_LINEAR};
         draft_outcome(draft, &series, true);
     }
@@ -282,8 +289,9 @@ static void draft_outcomes(struct draft *draft) {
 static bool is_reference(const char *text, struct arena *arena) {
     struct name_parts parts;
     name_take(&parts, text, arena);
-    return name_has(&parts, "control controls cont ctrl ctl placebo plac pbo usual standard sham tau waitlist waiting comparator "
-                            "advice reference ref none no c p");
+    return name_has(&parts,
+        "control controls cont ctrl ctl placebo plac pbo usual standard sham tau waitlist waiting comparator "
+        "advice reference ref none no c p");
 }
 
 static void draft_arm(struct draft *draft) {
@@ -334,11 +342,12 @@ static void draft_levels(struct draft *draft, const struct guess_column *column)
 
 /* The subgroups people ask for first: sex, age and body mass index. */
 static bool a_subgroup(const struct guess_column *column) {
-    return strcmp(column->label, "Sex") == 0 || strcmp(column->label, "Age") == 0 || strcmp(column->label, "Body mass index") == 0;
+    return strcmp(column->label, "Sex") == 0 || strcmp(column->label, "Age") == 0 ||
+           strcmp(column->label, "Body mass index") == 0;
 }
 
-/* Cut points that make bands: overweight and obesity of WHO (Technical Report 894, 2000) for body mass index, else round
- * numbers near the middle. */
+/* Cut points that make bands: overweight and obesity of WHO (Technical Report 894, 2000) for body mass index, else
+ * round numbers near the middle. */
 static void draft_bands(struct draft *draft, const struct guess_column *column) {
     if (!a_subgroup(column) || !(column->high > column->low)) {
         return;
@@ -394,7 +403,8 @@ static void draft_answers(struct draft *draft, const struct guess_column *column
     json_key_array(draft->json, yes ? "yes" : "no");
     for (size_t i = 0; i < column->value_count; i++) {
         const struct guess_value *value = &column->values[i];
-        if (value->listed && (yes ? guess_says_yes(value->text, &draft->arena) : guess_says_no(value->text, &draft->arena))) {
+        if (value->listed &&
+            (yes ? guess_says_yes(value->text, &draft->arena) : guess_says_no(value->text, &draft->arena))) {
             json_string(draft->json, value->text);
         }
     }
@@ -432,7 +442,8 @@ void guess_plan_json(const struct guess *guess, struct json *json) {
     size_t subgroup_count = 0;
     json_object(json);
     json_field_string(json, "title", title_of(guess->name, &draft.arena));
-    json_field_string(json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].name);
+    json_field_string(
+        json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].name);
     draft_arm(&draft);
     json_key_array(json, "missing_codes");
     for (size_t i = 0; i < draft.codes.count; i++) {

@@ -32,12 +32,12 @@ enum way { WAY_SUFFIX, WAY_PREFIX, WAY_GLUED_PREFIX, WAY_GLUED_SUFFIX, WAYS };
 struct reading { /* one way of reading one column's name */
     size_t column;
     enum way way;
-    const char *stem;         /* parts with "_" for the signs between, "" for a bare "baseline" */
-    const struct unit *unit;  /* NULL: a word, or a bare number */
-    double number;            /* NaN: a word */
+    const char *stem;        /* parts with "_" for the signs between, "" for a bare "baseline" */
+    const struct unit *unit; /* NULL: a word, or a bare number */
+    double number;           /* NaN: a word */
     double order;
-    bool glued;               /* a bare number right behind the stem: il6 */
-    size_t group;             /* how many readings have this way and stem */
+    bool glued;   /* a bare number right behind the stem: il6 */
+    size_t group; /* how many readings have this way and stem */
 };
 
 struct readings {
@@ -295,8 +295,11 @@ static void add_series(struct guess *guess, const struct reading *const *members
     const char *stem = members[count - 1]->stem;
     stem = *stem ? stem : "outcome"; /* "before month2 month8": the visits have names, the quantity has none */
     const struct known_name *known = known_name_of(name_id(stem, arena));
-    *series = (struct guess_series){.id = free_id(guess, name_id(stem, arena), arena), .label = name_words(stem, arena),
-        .unit = known ? known->unit : "", .count = count, .lower_is_better = !(known && known->higher_is_better)};
+    *series = (struct guess_series){.id = free_id(guess, name_id(stem, arena), arena),
+        .label = name_words(stem, arena),
+        .unit = known ? known->unit : "",
+        .count = count,
+        .lower_is_better = !(known && known->higher_is_better)};
     series->columns = ARENA_NEW(arena, count, size_t);
     series->visits = ARENA_NEW(arena, count, const char *);
     for (size_t i = 0; i < count; i++) {
@@ -313,8 +316,10 @@ static void add_series(struct guess *guess, const struct reading *const *members
     guess->series_count++;
 }
 
-/* "baseline number3m number12m": a column that is called baseline and nothing else belongs to the one series without. */
-static void adopt_bare(const struct readings *readings, const struct reading **members, size_t *count, const struct guess *guess) {
+/* "baseline number3m number12m": a column that is called baseline and nothing else belongs to the one series without.
+ */
+static void adopt_bare(
+    const struct readings *readings, const struct reading **members, size_t *count, const struct guess *guess) {
     bool bare_number = !members[0]->unit && !isnan(members[0]->number);
     if (members[0]->order <= 0 || (*count == 1 && bare_number)) {
         return;

@@ -6,7 +6,8 @@
 #include <stdlib.h>
 #include <string.h>
 
-static const char *const role_names[GUESS_ROLE_COUNT] = {"nothing", "participant", "arm", "number", "category", "event", "date"};
+static const char *const role_names[GUESS_ROLE_COUNT] = {
+    "nothing", "participant", "arm", "number", "category", "event", "date"};
 
 const char *guess_role_name(enum guess_role role) {
     return role_names[role];
@@ -32,7 +33,6 @@ struct tally { /* open addressing into entries in order of appearance; room is a
     struct look_value *entry;
 };
 
-
 static size_t slot_of(const struct tally *tally, const char *text) {
     uint64_t hash = 14695981039346656037u; /* FNV-1a */
     for (const unsigned char *p = (const unsigned char *)text; *p; p++) {
@@ -57,7 +57,8 @@ static void tally_add(struct tally *tally, const char *text) {
 
 static int frequent_first(const void *left, const void *right) {
     const struct look_value *a = left, *b = right;
-    return a->value.count != b->value.count ? (a->value.count > b->value.count ? -1 : 1) : (a->first > b->first) - (a->first < b->first);
+    return a->value.count != b->value.count ? (a->value.count > b->value.count ? -1 : 1)
+                                            : (a->first > b->first) - (a->first < b->first);
 }
 
 /* ---- what the values of one column are ---- */
@@ -106,8 +107,8 @@ static bool word_code(const char *raw, bool in_number, struct arena *arena) {
         return false;
     }
     const char *text = folded(raw, arena);
-    return among(text, "na n/a nan null missing . .. - -- ? #n/a n.a. unknown unk nk nd miss") || strcmp(text, "not known") == 0 ||
-           strcmp(text, "not done") == 0 || (in_number && strcmp(text, "none") == 0);
+    return among(text, "na n/a nan null missing . .. - -- ? #n/a n.a. unknown unk nk nd miss") ||
+           strcmp(text, "not known") == 0 || strcmp(text, "not done") == 0 || (in_number && strcmp(text, "none") == 0);
 }
 
 static bool looks_like_date(const char *text) {
@@ -124,7 +125,8 @@ static bool looks_like_date(const char *text) {
         longest = digits > longest ? digits : longest;
     }
     size_t length = strcspn(text, "T ");
-    bool with_month = letters && longest >= 2 && length >= 7 && length <= 11 && text[0] >= '0' && text[0] <= '9' && groups != 1;
+    bool with_month =
+        letters && longest >= 2 && length >= 7 && length <= 11 && text[0] >= '0' && text[0] <= '9' && groups != 1;
     return (!letters && groups == 2 && length >= 6 && length <= 10 && longest <= 4) || with_month;
 }
 
@@ -187,7 +189,8 @@ static void weigh_values(struct look *look) {
         look->dates += entry->reading != NUMBER_READ && looks_like_date(text) ? entry->value.count : 0;
         words += entry->reading != NUMBER_READ && word_code(text, true, &look->guess->arena) ? entry->value.count : 0;
     }
-    look->numeric = column->numbers && 10 * column->numbers >= 8 * (column->filled - (words < column->filled ? words : 0));
+    look->numeric =
+        column->numbers && 10 * column->numbers >= 8 * (column->filled - (words < column->filled ? words : 0));
 }
 
 /* ---- codes that seem to stand for "missing" ---- */
@@ -200,11 +203,12 @@ static int by_value(const void *left, const void *right) {
 static double quantile(const double *sorted, size_t count, double share) {
     double at = share * (double)(count - 1);
     size_t below = (size_t)at;
-    return below + 1 < count ? sorted[below] + (at - (double)below) * (sorted[below + 1] - sorted[below]) : sorted[count - 1];
+    return below + 1 < count ? sorted[below] + (at - (double)below) * (sorted[below + 1] - sorted[below])
+                             : sorted[count - 1];
 }
 
-/* The numbers of the column that are no suspected codes, sorted; the caller frees them. With `but_sentinels` what has the shape
- * of a code is left out, suspected or not. */
+/* The numbers of the column that are no suspected codes, sorted; the caller frees them. With `but_sentinels` what has
+ * the shape of a code is left out, suspected or not. */
 static double *plain_numbers(const struct look *look, bool but_sentinels, size_t *count) {
     double *numbers = memory_new(look->column->numbers + 1, sizeof *numbers);
     *count = 0;
@@ -246,7 +250,8 @@ static void suspect_codes(struct look *look) {
     bool any = false;
     for (size_t i = 0; i < look->value_count; i++) {
         struct look_value *entry = &look->values[i];
-        entry->value.missing_code = entry->reading != NUMBER_READ && word_code(entry->value.text, look->numeric, &look->guess->arena);
+        entry->value.missing_code =
+            entry->reading != NUMBER_READ && word_code(entry->value.text, look->numeric, &look->guess->arena);
         any = any || entry->sentinel;
     }
     if (!any || !look->numeric) {
@@ -336,7 +341,8 @@ static bool yes_and_no(const struct look *look) {
 static bool says_sex(const struct look *look) {
     bool all = true;
     for (size_t i = 0; i < look->value_count; i++) {
-        all = all && (look->values[i].value.missing_code || among(folded(look->values[i].value.text, &look->guess->arena), "f m female male"));
+        all = all && (look->values[i].value.missing_code ||
+                         among(folded(look->values[i].value.text, &look->guess->arena), "f m female male"));
     }
     return all || name_has(&look->parts, "sex gender");
 }
@@ -357,7 +363,8 @@ static const char *level_label(const struct look *look, const char *text) {
     return label;
 }
 
-/* The most frequent spelling of each level is listed; others, codes for missing, and what occurs once among many are not. */
+/* The most frequent spelling of each level is listed; others, codes for missing, and what occurs once among many are
+ * not. */
 static void list_levels(struct look *look) {
     struct arena *arena = &look->guess->arena;
     for (size_t i = 0; i < look->value_count; i++) {
@@ -396,8 +403,9 @@ static enum guess_role role_of(const struct look *look) {
     if (look->numeric && look->parts.count && strcmp(look->parts.part[look->parts.count - 1].text, "id") == 0) {
         return names_site(look) ? GUESS_CATEGORY : GUESS_NOTHING; /* a number that only names something */
     }
-    bool small_codes = look->numeric && column->decimals == 0 && plain <= (names_site(look) ? 50u : 5u) && column->filled >= 4 * plain &&
-                       fabs(column->low) <= 1000 && fabs(column->high) <= (names_site(look) ? 1e6 : 20);
+    bool small_codes = look->numeric && column->decimals == 0 && plain <= (names_site(look) ? 50u : 5u) &&
+                       column->filled >= 4 * plain && fabs(column->low) <= 1000 &&
+                       fabs(column->high) <= (names_site(look) ? 1e6 : 20);
     if (look->numeric && !small_codes) {
         return GUESS_NUMBER;
     }
@@ -405,12 +413,13 @@ static enum guess_role role_of(const struct look *look) {
 }
 
 static int participant_score(const struct look *look) {
-    static const char words[] = "id pid ptid subjid usubjid subject subj participant patient patid pat pt record recordid studyid "
-                                "study randno screenno person";
+    static const char words[] =
+        "id pid ptid subjid usubjid subject subj participant patient patid pat pt record recordid studyid "
+        "study randno screenno person";
     static const char weak[] = "rownames row rown obs case no nr num number x index";
     const struct guess_column *column = look->column;
-    if (column->filled == 0 || 10 * column->distinct < 9 * column->filled || 10 * column->filled < 9 * look->cells->records ||
-        column->decimals > 0 || look->dates) {
+    if (column->filled == 0 || 10 * column->distinct < 9 * column->filled ||
+        10 * column->filled < 9 * look->cells->records || column->decimals > 0 || look->dates) {
         return 0;
     }
     bool unique = column->distinct == column->filled;
@@ -424,8 +433,9 @@ static int participant_score(const struct look *look) {
 }
 
 static int arm_score(const struct look *look) {
-    static const char strong[] = "arm armcd actarm trt trtp treat treatment allocation alloc allocated randomised randomized "
-                                 "randomisation randomization assigned assignment intervention rand trtgrp treatgrp studyarm";
+    static const char strong[] =
+        "arm armcd actarm trt trtp treat treatment allocation alloc allocated randomised randomized "
+        "randomisation randomization assigned assignment intervention rand trtgrp treatgrp studyarm";
     static const char weak[] = "grp group tx rx therapy regimen condition drug cohort rgroup";
     size_t levels = listed(look), least = SIZE_MAX, most = 0, total = 0;
     if (levels < 2 || levels > 8 || look->column->series != NOWHERE ||
@@ -445,12 +455,13 @@ static int arm_score(const struct look *look) {
 }
 
 static bool event_name(const struct look *look) {
-    return name_has(&look->parts, "rescue died death dead withdrew withdrawn withdrawal withdraw dropout dropped discontinued stopped "
-                                  "stop event ae sae hospitalised hospitalized relapse switched crossover lost started");
+    return name_has(&look->parts,
+        "rescue died death dead withdrew withdrawn withdrawal withdraw dropout dropped discontinued stopped "
+        "stop event ae sae hospitalised hospitalized relapse switched crossover lost started");
 }
 
-/* Keeps of the values what the form and the plan need: all of a level's column; else the most frequent, and what is or might be
- * a code for missing. */
+/* Keeps of the values what the form and the plan need: all of a level's column; else the most frequent, and what is or
+ * might be a code for missing. */
 static void keep_values(struct look *look) {
     struct guess_column *column = look->column;
     bool all = column->role == GUESS_CATEGORY || column->role == GUESS_EVENT || column->role == GUESS_ARM;
@@ -521,7 +532,10 @@ static void settle_events(struct guess *guess, struct look *looks) {
 }
 
 void guess_take(struct guess *guess, const struct cells *cells, const char *name) {
-    *guess = (struct guess){.name = name, .records = cells->records, .column_count = cells->columns, .participant = NOWHERE,
+    *guess = (struct guess){.name = name,
+        .records = cells->records,
+        .column_count = cells->columns,
+        .participant = NOWHERE,
         .arm = NOWHERE};
     arena_init(&guess->arena);
     guess->columns = ARENA_NEW(&guess->arena, cells->columns, struct guess_column);

@@ -47,7 +47,8 @@ static inline void send_to(const struct house *house, struct request *request, c
     arena_release(&arena);
 }
 
-static inline void ask(const struct house *house, const char *method, const char *target, const char *body, struct reply *reply) {
+static inline void ask(
+    const struct house *house, const char *method, const char *target, const char *body, struct reply *reply) {
     struct request request = plain_request(house, method);
     send_to(house, &request, target, body, body ? strlen(body) : 0, reply);
 }
@@ -83,8 +84,9 @@ static inline struct house *house_new(bool open) {
     snprintf(house->folder, sizeof house->folder, "/tmp/evenhand-test-XXXXXX");
     assert_non_null(mkdtemp(house->folder));
     snprintf(house->study, sizeof house->study, "%s/quayside.study", house->folder);
-    if (!study_create(house->study, "export.csv", house->quayside.export_csv.data, house->quayside.export_csv.length, "plan.json",
-            house->quayside.plan_json.data, house->quayside.plan_json.length, "A Tester, statistician", NULL, &fault)) {
+    if (!study_create(house->study, "export.csv", house->quayside.export_csv.data, house->quayside.export_csv.length,
+            "plan.json", house->quayside.plan_json.data, house->quayside.plan_json.length, "A Tester, statistician",
+            NULL, &fault)) {
         fail_msg("%s", fault.message);
     }
     house->state = server_new(house->folder, &fault);

@@ -9,15 +9,17 @@
 #include "fixture.h"
 
 /* Compares; "FOLDER" in the sentence stands for the house's folder. */
-static int same(const struct house *house, const char *what, const struct reply *reply, unsigned status, const char *sentence) {
+static int same(
+    const struct house *house, const char *what, const struct reply *reply, unsigned status, const char *sentence) {
     char wanted[1024];
     const char *folder = strstr(sentence, "FOLDER"), *got = sentence_of(reply);
-    snprintf(wanted, sizeof wanted, "%.*s%s%s", (int)(folder ? folder - sentence : 0), sentence, folder ? house->folder : "",
-        folder ? folder + strlen("FOLDER") : sentence);
+    snprintf(wanted, sizeof wanted, "%.*s%s%s", (int)(folder ? folder - sentence : 0), sentence,
+        folder ? house->folder : "", folder ? folder + strlen("FOLDER") : sentence);
     if (reply->status == status && strcmp(got, wanted) == 0) {
         return 0;
     }
-    print_error("%s\n    got    %u %s\n    wanted %u %s\n", what, reply->status, *got ? got : reply->body.data, status, wanted);
+    print_error(
+        "%s\n    got    %u %s\n    wanted %u %s\n", what, reply->status, *got ? got : reply->body.data, status, wanted);
     return 1;
 }
 
@@ -30,9 +32,11 @@ static const struct {
     const char *sentence;
 } files[] = {
     {"empty", "", 0, 1, 1, "x.csv, line 1, column 1: the file is empty; export it again and load that"},
-    {"only line ends", "\n\n", 2, 1, 1, "x.csv, line 1, column 1: no header, only blank lines; the first line must "
+    {"only line ends", "\n\n", 2, 1, 1,
+        "x.csv, line 1, column 1: no header, only blank lines; the first line must "
         "name the columns; export the file again and load that"},
-    {"only spaces", "  \n", 3, 1, 1, "x.csv, line 1, column 1: no header, only blank lines; the first line must "
+    {"only spaces", "  \n", 3, 1, 1,
+        "x.csv, line 1, column 1: no header, only blank lines; the first line must "
         "name the columns; export the file again and load that"},
     {"only a byte order mark", "\357\273\277", 3, 1, 1,
         "x.csv, line 1, column 1: no header, only blank lines; the first line must "
@@ -46,7 +50,8 @@ static const struct {
     {"a field too few", "id,x\n1\n", 7, 2, 1,
         "x.csv, line 2, column 1: 1 field where the header has 2; mend the line or "
         "its quotes and load again"},
-    {"a NUL", "id,x\n1,2\000\n", 10, 2, 2, "x.csv, line 2, column 2: a NUL byte, which no text file has; export the "
+    {"a NUL", "id,x\n1,2\000\n", 10, 2, 2,
+        "x.csv, line 2, column 2: a NUL byte, which no text file has; export the "
         "file again as text and load that"},
     {"a name twice", "id,id\n1,2\n", 10, 1, 2,
         "x.csv, line 1, column 2: the name id stands in column 1 already; give each "
@@ -90,13 +95,12 @@ static void every_broken_file_gets_its_sentence_and_place(void **state) {
 
 /* ---- plans: one that is right, with one text in it replaced ---- */
 
-static const char right_plan[] =
-    "{\"title\":\"T\",\"participant\":\"id\",\"arm\":{\"column\":\"arm\","
-    "\"levels\":[{\"code\":\"a\",\"reference\":true},{\"code\":\"b\"}]},"
-    "\"outcomes\":[{\"id\":\"y\",\"role\":\"primary\",\"better\":\"lower\","
-    "\"visits\":[{\"label\":\"Baseline\",\"column\":\"y0\"},{\"label\":\"End\","
-    "\"column\":\"y1\"}]}],\"covariates\":[{\"id\":\"sex\",\"label\":\"Sex\","
-    "\"column\":\"sex\",\"kind\":\"category\"}]}";
+static const char right_plan[] = "{\"title\":\"T\",\"participant\":\"id\",\"arm\":{\"column\":\"arm\","
+                                 "\"levels\":[{\"code\":\"a\",\"reference\":true},{\"code\":\"b\"}]},"
+                                 "\"outcomes\":[{\"id\":\"y\",\"role\":\"primary\",\"better\":\"lower\","
+                                 "\"visits\":[{\"label\":\"Baseline\",\"column\":\"y0\"},{\"label\":\"End\","
+                                 "\"column\":\"y1\"}]}],\"covariates\":[{\"id\":\"sex\",\"label\":\"Sex\","
+                                 "\"column\":\"sex\",\"kind\":\"category\"}]}";
 static const char small_export[] = "id,arm,sex,y0,y1\nP1,a,F,1,2\nP2,b,M,2,3\nP3,a,F,3,4\nP4,b,M,4,5\n";
 
 static const struct {
@@ -118,8 +122,7 @@ static const struct {
         "the plan: the key \"colour\" is not one a plan has here; known are: title "
         "participant arm missing_codes outcomes covariates events adjust_for missing_baseline "
         "subgroups confidence blinding seed site stratified_by standard_error"},
-    {"\"title\":\"T\"", "\"title\":\"T\",\"title\":\"U\"",
-        "the plan: the key \"title\" stands there twice; keep one"},
+    {"\"title\":\"T\"", "\"title\":\"T\",\"title\":\"U\"", "the plan: the key \"title\" stands there twice; keep one"},
     {",\"reference\":true", "",
         "the plan: arm.levels must mark exactly one arm as the reference, with \"reference\": true"},
     {"{\"code\":\"b\"}", "{\"code\":\"b\",\"reference\":true}",
@@ -173,11 +176,13 @@ static int draft_of(const struct house *house) {
     return draft;
 }
 
-static void post_plan(const struct house *house, int draft, const char *instead_of, const char *stands, struct reply *reply) {
+static void post_plan(
+    const struct house *house, int draft, const char *instead_of, const char *stands, struct reply *reply) {
     char body[4096];
     const char *at = strstr(right_plan, instead_of);
     assert_non_null(at);
-    snprintf(body, sizeof body, "{\"draft\":%d,\"file\":\"x.study\",\"by\":\"A Tester, statistician\",\"plan\":%.*s%s%s}", draft,
+    snprintf(body, sizeof body,
+        "{\"draft\":%d,\"file\":\"x.study\",\"by\":\"A Tester, statistician\",\"plan\":%.*s%s%s}", draft,
         (int)(at - right_plan), right_plan, stands, at + strlen(instead_of));
     ask(house, "POST", "/studies", body, reply);
 }
@@ -246,33 +251,44 @@ static const struct {
         "does not know; nothing was recorded"},
     {"POST", "/decisions",
         "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"note\",\"text\":5,\"exhibit\":\"decisi"
-        "ons\"}]}", 400, "the request: decision 1 of the batch (note) has a \"text\" that is not a "
+        "ons\"}]}",
+        400,
+        "the request: decision 1 of the batch (note) has a \"text\" that is not a "
         "text in quotes; nothing was recorded"},
     {"POST", "/decisions",
         "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"correct\",\"column\":\"age\",\"partici"
-        "pant\":\"Q1\",\"from\":\"1\",\"to\":\"2\"}]}", 400,
+        "pant\":\"Q1\",\"from\":\"1\",\"to\":\"2\"}]}",
+        400,
         "the request: decision 1 of the batch (correct) has no reason; every decision "
         "of this kind needs one; nothing was recorded"},
     {"POST", "/decisions",
         "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"correct\",\"column\":\"age\",\"partici"
-        "pant\":\"Q1\",\"from\":\"1\",\"to\":\"2\",\"reason\":\"r\"}]}", 400,
+        "pant\":\"Q1\",\"from\":\"1\",\"to\":\"2\",\"reason\":\"r\"}]}",
+        400,
         "decision 1 of the batch (correct) names a participant who is not in the "
         "file; nothing was recorded"},
-    {"POST", "/decisions", "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"read-as\",\"column\":\"zz\",\"from\":"
-        "\"f\",\"to\":\"F\",\"reason\":\"r\"}]}", 400,
+    {"POST", "/decisions",
+        "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"read-as\",\"column\":\"zz\",\"from\":"
+        "\"f\",\"to\":\"F\",\"reason\":\"r\"}]}",
+        400,
         "decision 1 of the batch (read-as) names the column \"zz\", which the plan "
         "gives no meaning; nothing was recorded"},
     {"POST", "/decisions",
         "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"reverse\",\"number\":999,\"reason\":\""
-        "r\"}]}", 400, "decision 1 of the batch (reverse) reverses a decision that is not there; "
+        "r\"}]}",
+        400,
+        "decision 1 of the batch (reverse) reverses a decision that is not there; "
         "nothing was recorded"},
     {"POST", "/decisions",
         "{\"version\":" VERSION ",\"decisions\":[{\"kind\":\"unblind\",\"to\":\"all\",\"reason\":\""
-        "r\"}]}", 400, "the request: decision 1 of the batch (unblind) has a \"to\" that is neither "
+        "r\"}]}",
+        400,
+        "the request: decision 1 of the batch (unblind) has a \"to\" that is neither "
         "coded nor unblinded; nothing was recorded"},
     {"POST", "/decisions",
         "{\"version\":" VERSION ",\"decisions\":[" NOTE ",{\"kind\":\"note\",\"exhibit\":\"x\",\"te"
-        "xt\":\"y\",\"colour\":\"z\"}]}", 400,
+        "xt\":\"y\",\"colour\":\"z\"}]}",
+        400,
         "the request: decision 2 of the batch (note) has the field \"colour\", which "
         "this kind does not take; nothing was recorded"},
     {"POST", "/decisions", "{\"version\":0,\"decisions\":[" NOTE "]}", 409,
@@ -284,8 +300,7 @@ static const struct {
     {"GET", "/exhibit/nope", "", 404, "there is no exhibit \"nope\"; `evenhand exhibits` lists them"},
     {"GET", "/exhibit/", "", 404, "there is no exhibit \"\"; `evenhand exhibits` lists them"},
     {"GET", "/exhibit/decisions/", "", 404, "there is no exhibit \"decisions/\"; `evenhand exhibits` lists them"},
-    {"GET", "/exhibit/decisions.png", "", 404,
-        "there is no exhibit \"decisions.png\"; `evenhand exhibits` lists them"},
+    {"GET", "/exhibit/decisions.png", "", 404, "there is no exhibit \"decisions.png\"; `evenhand exhibits` lists them"},
     {"GET", "/exhibit/decisions.svg", "", 404, "the exhibit decisions is a table without a figure; ask for its .csv"},
     {"GET", "/exhibit/decisions?colour=red", "", 400,
         "decisions does not take colour=; `evenhand exhibits` lists what each exhibit takes"},
@@ -301,8 +316,7 @@ static const struct {
         "effect: scale=square is not known; it takes linear or log10; default the "
         "latest decision, else the plan"},
     {"GET", "/exhibit/effect?arm=L", "", 404, "effect: arm=L is not known; it takes A, B"},
-    {"GET", "/exhibit/change-by-arm?by=zz", "", 404,
-        "change-by-arm: by=zz is not known; it takes sex, age, bmi, site"},
+    {"GET", "/exhibit/change-by-arm?by=zz", "", 404, "change-by-arm: by=zz is not known; it takes sex, age, bmi, site"},
     {"GET", "/exhibit/participant", "", 400,
         "participant: it needs a participant; say participant=IDENTIFIER as the file has it"},
     {"GET", "/exhibit/participant?participant=nobody", "", 404,
@@ -324,8 +338,7 @@ static const struct {
     {"POST", "/studies", "{}", 400, "\"file\" is missing: name a study of the folder, such as quayside.study"},
     {"POST", "/studies", "{\"file\":\"a.study\"}", 400,
         "\"by\" is missing: give the name and role of who loads the file"},
-    {"POST", "/studies", "{\"file\":\"a.study\",\"by\":\"A\"}", 400,
-        "\"plan\" is missing: say what the columns mean"},
+    {"POST", "/studies", "{\"file\":\"a.study\",\"by\":\"A\"}", 400, "\"plan\" is missing: say what the columns mean"},
     {"POST", "/studies", "{\"file\":\"a.study\",\"by\":\"A\",\"plan\":{}}", 400,
         "\"draft\" is missing: give the number that /drafts answered"},
     {"POST", "/studies", "{\"file\":\"a.study\",\"by\":\"A\",\"plan\":{},\"draft\":77}", 409,
@@ -361,9 +374,7 @@ static void every_broken_request_gets_its_sentence(void **state) {
 
 static void every_file_that_is_no_study_gets_its_sentence(void **state) {
     const struct house *house = *state;
-    static const struct {
-        const char *bytes;
-    } cases[] = {{""}, {"hello"}, {"SQLite format 3"}};
+    static const struct { const char *bytes; } cases[] = {{""}, {"hello"}, {"SQLite format 3"}};
     for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
         char path[128];
         struct reply reply;

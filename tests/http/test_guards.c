@@ -17,8 +17,10 @@ static const struct {
 } cases[] = {
     {"all as it should be", "GET", "/agenda.json", 1, NULL, NULL, NULL, NULL, 0, 200, NULL},
     {"by the name localhost", "GET", "/agenda.json", 1, "LocalHost:4321", NULL, NULL, NULL, 0, 200, NULL},
-    {"no Host", "GET", "/agenda.json", 0, NULL, NULL, NULL, NULL, 0, 400, "a request needs exactly one Host header; this one has 0"},
-    {"two Hosts", "GET", "/agenda.json", 2, NULL, NULL, NULL, NULL, 0, 400, "a request needs exactly one Host header; this one has 2"},
+    {"no Host", "GET", "/agenda.json", 0, NULL, NULL, NULL, NULL, 0, 400,
+        "a request needs exactly one Host header; this one has 0"},
+    {"two Hosts", "GET", "/agenda.json", 2, NULL, NULL, NULL, NULL, 0, 400,
+        "a request needs exactly one Host header; this one has 2"},
     {"another name", "GET", "/agenda.json", 1, "example.org:4321", NULL, NULL, NULL, 0, 403,
         "this server answers to 127.0.0.1:4321 and localhost:4321 only; open the address that was printed"},
     {"another port", "GET", "/agenda.json", 1, "127.0.0.1:4322", NULL, NULL, NULL, 0, 403,
@@ -29,16 +31,18 @@ static const struct {
         "this server answers to 127.0.0.1:4321 and localhost:4321 only; open the address that was printed"},
     {"no cookie", "GET", "/agenda.json", 1, NULL, NULL, NULL, "-", 0, 403,
         "this needs the key: open the whole address that was printed at the start"},
-    {"a cookie of another port", "GET", "/agenda.json", 1, NULL, NULL, NULL, "evenhand-80=00000000000000000000000000000000", 0, 403,
+    {"a cookie of another port", "GET", "/agenda.json", 1, NULL, NULL, NULL,
+        "evenhand-80=00000000000000000000000000000000", 0, 403,
         "this needs the key: open the whole address that was printed at the start"},
-    {"a made-up cookie", "GET", "/agenda.json", 1, NULL, NULL, NULL, "evenhand-4321=00000000000000000000000000000000", 0, 403,
-        "this needs the key: open the whole address that was printed at the start"},
+    {"a made-up cookie", "GET", "/agenda.json", 1, NULL, NULL, NULL, "evenhand-4321=00000000000000000000000000000000",
+        0, 403, "this needs the key: open the whole address that was printed at the start"},
     {"an empty cookie, for the free places", "GET", "/agenda.json", 1, NULL, NULL, NULL, "evenhand-4321=", 0, 403,
         "this needs the key: open the whole address that was printed at the start"},
     {"no cookie, changing something", "POST", "/close", 1, NULL, NULL, NULL, "-", 0, 403,
         "this needs the key: open the whole address that was printed at the start"},
     {"the page without a key", "GET", "/", 1, NULL, NULL, NULL, "-", 0, 403, NULL},
-    {"the page with a wrong key", "GET", "/?key=00000000000000000000000000000000", 1, NULL, NULL, NULL, "-", 0, 403, NULL},
+    {"the page with a wrong key", "GET", "/?key=00000000000000000000000000000000", 1, NULL, NULL, NULL, "-", 0, 403,
+        NULL},
     {"the page with a cut key", "GET", "/?key=0", 1, NULL, NULL, NULL, "-", 0, 403, NULL},
     {"foreign Origin", "POST", "/decisions", 1, NULL, "http://example.org", NULL, NULL, 2, 403,
         "another site's page asked for this; only Evenhand's own page may"},
@@ -72,12 +76,17 @@ static const struct {
     {"up and out", "GET", "/../etc/passwd", 1, NULL, NULL, NULL, NULL, 0, 404, "there is nothing at /../etc/passwd"},
     {"up and out, encoded", "GET", "/..%2f..%2fetc%2fpasswd", 1, NULL, NULL, NULL, NULL, 0, 404,
         "there is nothing at /../../etc/passwd"},
-    {"a file of the folder", "GET", "/quayside.study", 1, NULL, NULL, NULL, NULL, 0, 404, "there is nothing at /quayside.study"},
-    {"NUL in the path", "GET", "/index.html%00.css", 1, NULL, NULL, NULL, NULL, 0, 400, "the address has a control character in it"},
-    {"a broken escape", "GET", "/%zz", 1, NULL, NULL, NULL, NULL, 0, 400, "the address has a % without two hexadecimal digits after it"},
-    {"an escape cut short", "GET", "/%4", 1, NULL, NULL, NULL, NULL, 0, 400, "the address has a % without two hexadecimal digits after it"},
+    {"a file of the folder", "GET", "/quayside.study", 1, NULL, NULL, NULL, NULL, 0, 404,
+        "there is nothing at /quayside.study"},
+    {"NUL in the path", "GET", "/index.html%00.css", 1, NULL, NULL, NULL, NULL, 0, 400,
+        "the address has a control character in it"},
+    {"a broken escape", "GET", "/%zz", 1, NULL, NULL, NULL, NULL, 0, 400,
+        "the address has a % without two hexadecimal digits after it"},
+    {"an escape cut short", "GET", "/%4", 1, NULL, NULL, NULL, NULL, 0, 400,
+        "the address has a % without two hexadecimal digits after it"},
     {"no UTF-8", "GET", "/%ff", 1, NULL, NULL, NULL, NULL, 0, 400, "the address is not UTF-8"},
-    {"a whole address", "GET", "http://127.0.0.1:4321/", 1, NULL, NULL, NULL, NULL, 0, 400, "the address must start with a slash"},
+    {"a whole address", "GET", "http://127.0.0.1:4321/", 1, NULL, NULL, NULL, NULL, 0, 400,
+        "the address must start with a slash"},
     {"an argument twice", "GET", "/exhibit/decisions?set=full&set=full", 1, NULL, NULL, NULL, NULL, 0, 400,
         "\"set\" stands twice in the address; give it once"},
     {"a body too large", "POST", "/decisions", 1, NULL, NULL, NULL, NULL, (4 << 20) + 1, 413,
@@ -175,12 +184,14 @@ static void keys_differ_from_server_to_server(void **state) {
 
 static void every_reply_bears_the_security_headers(void **state) {
     const struct house *house = *state;
-    static const char *const targets[] = {"/", "/agenda.json", "/exhibit/decisions", "/exhibit/nothing", "/nowhere", "/?key=wrong"};
+    static const char *const targets[] = {
+        "/", "/agenda.json", "/exhibit/decisions", "/exhibit/nothing", "/nowhere", "/?key=wrong"};
     static const char *const headers[][2] = {
-        {"Content-Security-Policy", "default-src 'none'; script-src 'self'; style-src 'self'; img-src 'self'; connect-src 'self'; "
-                                    "form-action 'self'; base-uri 'none'; frame-ancestors 'none'"},
-        {"X-Content-Type-Options", "nosniff"}, {"Referrer-Policy", "no-referrer"}, {"Cross-Origin-Opener-Policy", "same-origin"},
-        {"Cross-Origin-Resource-Policy", "same-origin"}};
+        {"Content-Security-Policy",
+            "default-src 'none'; script-src 'self'; style-src 'self'; img-src 'self'; connect-src 'self'; "
+            "form-action 'self'; base-uri 'none'; frame-ancestors 'none'"},
+        {"X-Content-Type-Options", "nosniff"}, {"Referrer-Policy", "no-referrer"},
+        {"Cross-Origin-Opener-Policy", "same-origin"}, {"Cross-Origin-Resource-Policy", "same-origin"}};
     for (size_t i = 0; i < sizeof targets / sizeof *targets; i++) {
         for (int known = 0; known < 2; known++) {
             struct request request = plain_request(house, "GET");

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* The one test with a real socket: what only the listener can get wrong. Requests are written byte by byte (RFC 9112). */
+/* The one test with a real socket: what only the listener can get wrong. Requests are written byte by byte (RFC 9112).
+ */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -58,8 +59,8 @@ static int connected(const struct wire *wire) {
     return handle;
 }
 
-/* Sends the bytes and reads until the other side closes. Lines end in "\n" here and in CR LF on the wire; "HOST", "COOKIE" and
- * "KEY" are filled in. */
+/* Sends the bytes and reads until the other side closes. Lines end in "\n" here and in CR LF on the wire; "HOST",
+ * "COOKIE" and "KEY" are filled in. */
 static void talk(const struct wire *wire, const char *lines, struct text *answer) {
     struct text bytes;
     text_init(&bytes);
@@ -91,42 +92,57 @@ static void talk(const struct wire *wire, const char *lines, struct text *answer
 }
 
 static const struct {
-    const char *what, *lines, *status, *holds, *not; /* status "": hung up; NULL: not looked for */
+    const char *what, *lines, *status, *holds, *not ; /* status "": hung up; NULL: not looked for */
 } talks[] = {
-    {"the page without a key", "GET / HTTP/1.1\nHost: HOST\nConnection: close\n\n", "403", "Evenhand is open at", "Set-Cookie"},
+    {"the page without a key", "GET / HTTP/1.1\nHost: HOST\nConnection: close\n\n", "403", "Evenhand is open at",
+        "Set-Cookie"},
     {"the key", "GET /?key=KEY HTTP/1.1\nHost: HOST\nConnection: close\n\n", "303", "Location: /\r\n", NULL},
     {"a session", "GET /agenda.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "200",
         "Content-Type: application/json", NULL},
     {"security headers", "GET /agenda.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "200",
         "Content-Security-Policy: default-src 'none'", NULL},
-    {"HEAD has the headers and no body", "HEAD /exhibit/decisions.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "200",
+    {"HEAD has the headers and no body",
+        "HEAD /exhibit/decisions.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "200",
         "Content-Length: ", "{"},
     {"two Hosts", "GET / HTTP/1.1\nHost: HOST\nHost: HOST\nConnection: close\n\n", "400", NULL, "Set-Cookie"},
-    {"two Hosts, the second foreign", "GET /agenda.json HTTP/1.1\nHost: HOST\nHost: example.org\nCookie: COOKIE\nConnection: close\n\n",
-        "400", "exactly one Host header", NULL},
+    {"two Hosts, the second foreign",
+        "GET /agenda.json HTTP/1.1\nHost: HOST\nHost: example.org\nCookie: COOKIE\nConnection: close\n\n", "400",
+        "exactly one Host header", NULL},
     {"no Host in HTTP/1.0", "GET /?key=KEY HTTP/1.0\n\n", "400", NULL, "Set-Cookie"},
     {"foreign Host", "GET /?key=KEY HTTP/1.1\nHost: example.org\nConnection: close\n\n", "403", NULL, "Set-Cookie"},
-    {"two cookies headers", "GET /agenda.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nCookie: a=b\nConnection: close\n\n", "403", NULL, NULL},
-    {"two Origins", "POST /close HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nOrigin: http://HOST\nContent-Length: 0\n"
-                    "Connection: close\n\n",
+    {"two cookies headers", "GET /agenda.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nCookie: a=b\nConnection: close\n\n",
+        "403", NULL, NULL},
+    {"two Origins",
+        "POST /close HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nOrigin: http://HOST\nContent-Length: "
+        "0\n"
+        "Connection: close\n\n",
         "403", NULL, "closed"},
     {"a lone word", "NONSENSE\n\n", "", NULL, NULL}, /* the library hangs up without a word */
-    {"NUL encoded", "GET /index.html%00 HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "400", "control character", NULL},
-    {"up and out", "GET /..%2f..%2fetc/passwd HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "404", "there is nothing at",
-        "root:"},
-    {"another server's address", "GET http://example.org/ HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "400", NULL, NULL},
-    {"an announced terabyte is refused before it comes", "POST /decisions HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\n"
-                                                          "Content-Length: 1099511627776\nConnection: close\n\n",
+    {"NUL encoded", "GET /index.html%00 HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "400",
+        "control character", NULL},
+    {"up and out", "GET /..%2f..%2fetc/passwd HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", "404",
+        "there is nothing at", "root:"},
+    {"another server's address", "GET http://example.org/ HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n",
+        "400", NULL, NULL},
+    {"an announced terabyte is refused before it comes",
+        "POST /decisions HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\n"
+        "Content-Length: 1099511627776\nConnection: close\n\n",
         "413", "larger than the 4 MB", NULL},
-    {"a body in chunks", "POST /open HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nTransfer-Encoding: chunked\n"
-                         "Connection: close\n\n5\n{\"fil\n4\ne\":1\n1\n}\n0\n\n",
+    {"a body in chunks",
+        "POST /open HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nTransfer-Encoding: chunked\n"
+        "Connection: close\n\n5\n{\"fil\n4\ne\":1\n1\n}\n0\n\n",
         "400", "name a study of the folder", NULL},
-    {"a body at once", "POST /open HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nContent-Length: 2\nConnection: close\n\n[]",
+    {"a body at once",
+        "POST /open HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nContent-Length: 2\nConnection: "
+        "close\n\n[]",
         "400", "must be a JSON object in braces", NULL},
-    {"PUT", "PUT /decisions HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nContent-Length: 0\nConnection: close\n\n", "405",
-        "Allow: POST", NULL},
-    {"a foreign page's post", "POST /decisions HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://example.org\nContent-Length: 2\n"
-                              "Connection: close\n\n{}",
+    {"PUT",
+        "PUT /decisions HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://HOST\nContent-Length: 0\nConnection: "
+        "close\n\n",
+        "405", "Allow: POST", NULL},
+    {"a foreign page's post",
+        "POST /decisions HTTP/1.1\nHost: HOST\nCookie: COOKIE\nOrigin: http://example.org\nContent-Length: 2\n"
+        "Connection: close\n\n{}",
         "403", "another site's page", NULL},
 };
 
@@ -137,8 +153,11 @@ static void what_is_said_on_the_wire(void **state) {
     int wrong = 0;
     for (size_t i = 0; i < sizeof talks / sizeof *talks; i++) {
         talk(wire, talks[i].lines, &answer);
-        bool status = !*talks[i].status ? answer.length == 0 : answer.length > 12 && strncmp(answer.data, "HTTP/1.", 7) == 0 && strncmp(answer.data + 9, talks[i].status, 3) == 0;
-        if (!status || (talks[i].holds && !strstr(answer.data, talks[i].holds)) || (talks[i].not && strstr(answer.data, talks[i].not))) {
+        bool status = !*talks[i].status ? answer.length == 0
+                                        : answer.length > 12 && strncmp(answer.data, "HTTP/1.", 7) == 0 &&
+                                              strncmp(answer.data + 9, talks[i].status, 3) == 0;
+        if (!status || (talks[i].holds && !strstr(answer.data, talks[i].holds)) ||
+            (talks[i].not &&strstr(answer.data, talks[i].not ))) {
             print_error("%s: got\n%.900s\n", talks[i].what, answer.data);
             wrong++;
         }
@@ -197,7 +216,8 @@ static void a_taken_port_is_refused_with_the_way_out(void **state) {
     struct server_state *other = server_new("/tmp", &fault);
     assert_null(listener_start(other, wire->port, &fault));
     char wanted[160];
-    snprintf(wanted, sizeof wanted, "cannot listen on port %u of 127.0.0.1 (Address already in use); --port 0 takes a free one", wire->port);
+    snprintf(wanted, sizeof wanted,
+        "cannot listen on port %u of 127.0.0.1 (Address already in use); --port 0 takes a free one", wire->port);
     assert_string_equal(fault.message, wanted);
     server_free(other);
 }
@@ -209,7 +229,8 @@ static void *talk_much(void *closure) {
     size_t good = 0;
     for (int i = 0; i < 20; i++) {
         talk(wire, "GET /exhibit/decisions.json HTTP/1.1\nHost: HOST\nCookie: COOKIE\nConnection: close\n\n", &answer);
-        good += answer.length > 12 && strncmp(answer.data + 9, "200", 3) == 0 && strrchr(answer.data, '}') + 2 >= answer.data + answer.length;
+        good += answer.length > 12 && strncmp(answer.data + 9, "200", 3) == 0 &&
+                strrchr(answer.data, '}') + 2 >= answer.data + answer.length;
     }
     text_release(&answer);
     return (void *)good;

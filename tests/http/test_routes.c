@@ -40,7 +40,7 @@ static void the_page_and_its_files_come_from_the_table(void **state) {
         assert_int_equal(reply.body.length, asset->length);
         assert_memory_equal(reply.body.data, asset->bytes, asset->length);
         const char *ending = strrchr(asset->path, '.');
-        const char *type = strcmp(ending, ".html") == 0   ? "text/html; charset=utf-8"
+        const char *type = strcmp(ending, ".html") == 0  ? "text/html; charset=utf-8"
                            : strcmp(ending, ".js") == 0  ? "text/javascript; charset=utf-8"
                            : strcmp(ending, ".css") == 0 ? "text/css; charset=utf-8"
                                                          : reply.content_type;
@@ -108,8 +108,8 @@ static void the_meeting_view_is_for_html_and_figures(void **state) {
     static const struct {
         const char *target;
         unsigned status;
-    } cases[] = {{"/exhibit/decisions?meeting=1", 200}, {"/exhibit/decisions?meeting=2", 400}, {"/exhibit/decisions.json?meeting=1", 400},
-        {"/exhibit/decisions.csv?meeting=1", 400}};
+    } cases[] = {{"/exhibit/decisions?meeting=1", 200}, {"/exhibit/decisions?meeting=2", 400},
+        {"/exhibit/decisions.json?meeting=1", 400}, {"/exhibit/decisions.csv?meeting=1", 400}};
     for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
         struct reply reply;
         ask(house, "GET", cases[i].target, NULL, &reply);
@@ -118,14 +118,14 @@ static void the_meeting_view_is_for_html_and_figures(void **state) {
     }
 }
 
-
 static void decisions_move_the_version_and_a_late_one_conflicts(void **state) {
     const struct house *house = *state;
     uint32_t before = version_of(house);
     char body[512];
     struct reply reply;
     snprintf(body, sizeof body,
-        "{\"version\": %u, \"by\": \"B Decider, data manager\", \"decisions\": [{\"kind\": \"note\", \"exhibit\": \"decisions\", "
+        "{\"version\": %u, \"by\": \"B Decider, data manager\", \"decisions\": [{\"kind\": \"note\", \"exhibit\": "
+        "\"decisions\", "
         "\"text\": \"Seen.\"}]}",
         before);
     ask(house, "POST", "/decisions", body, &reply);
@@ -157,14 +157,16 @@ static void the_decider_is_remembered_in_the_session(void **state) {
     char body[512];
     struct reply reply;
     snprintf(body, sizeof body,
-        "{\"version\": %u, \"by\": \"C Remembered, statistician\", \"decisions\": [{\"kind\": \"note\", \"exhibit\": \"decisions\", "
+        "{\"version\": %u, \"by\": \"C Remembered, statistician\", \"decisions\": [{\"kind\": \"note\", \"exhibit\": "
+        "\"decisions\", "
         "\"text\": \"One.\"}]}",
         version_of(house));
     ask(house, "POST", "/decisions", body, &reply);
     assert_int_equal(reply.status, 200);
     reply_release(&reply);
     snprintf(body, sizeof body,
-        "{\"version\": %u, \"decisions\": [{\"kind\": \"note\", \"exhibit\": \"decisions\", \"text\": \"Two.\"}]}", version_of(house));
+        "{\"version\": %u, \"decisions\": [{\"kind\": \"note\", \"exhibit\": \"decisions\", \"text\": \"Two.\"}]}",
+        version_of(house));
     ask(house, "POST", "/decisions", body, &reply);
     assert_int_equal(reply.status, 200);
     reply_release(&reply);
@@ -183,8 +185,10 @@ static void refused_decisions_name_their_entry_and_record_nothing(void **state) 
     char body[1024];
     struct reply reply;
     snprintf(body, sizeof body,
-        "{\"version\": %u, \"by\": \"B, x\", \"decisions\": [{\"kind\": \"note\", \"exhibit\": \"decisions\", \"text\": \"Good.\"}, "
-        "{\"kind\": \"correct\", \"column\": \"age\", \"participant\": \"nobody\", \"from\": \"1\", \"to\": \"2\", \"reason\": \"r\"}]}",
+        "{\"version\": %u, \"by\": \"B, x\", \"decisions\": [{\"kind\": \"note\", \"exhibit\": \"decisions\", "
+        "\"text\": \"Good.\"}, "
+        "{\"kind\": \"correct\", \"column\": \"age\", \"participant\": \"nobody\", \"from\": \"1\", \"to\": \"2\", "
+        "\"reason\": \"r\"}]}",
         before);
     ask(house, "POST", "/decisions", body, &reply);
     assert_true(reply.status == 400 || reply.status == 404);
@@ -222,7 +226,8 @@ static void a_study_is_made_from_a_dropped_file_by_the_guesses_alone(void **stat
     const struct house *house = *state;
     struct request request = plain_request(house, "POST");
     struct reply reply;
-    send_to(house, &request, "/drafts?name=export.csv", house->quayside.export_csv.data, house->quayside.export_csv.length, &reply);
+    send_to(house, &request, "/drafts?name=export.csv", house->quayside.export_csv.data,
+        house->quayside.export_csv.length, &reply);
     assert_int_equal(reply.status, 200);
     cJSON *draft = json_of(&reply);
     cJSON *guess = cJSON_GetObjectItem(draft, "guess");
@@ -280,7 +285,8 @@ static void a_refused_plan_leaves_the_draft_and_no_file(void **state) {
     reply_release(&reply);
     char body[512];
     for (int again = 0; again < 2; again++) { /* the second time the draft is there still */
-        snprintf(body, sizeof body, "{\"draft\": %.0f, \"file\": \"small.study\", \"plan\": {\"title\": \"T\"}, \"by\": \"E, x\"}", id);
+        snprintf(body, sizeof body,
+            "{\"draft\": %.0f, \"file\": \"small.study\", \"plan\": {\"title\": \"T\"}, \"by\": \"E, x\"}", id);
         ask(house, "POST", "/studies", body, &reply);
         assert_int_equal(reply.status, 400);
         assert_int_equal(strncmp(sentence_of(&reply), "the plan: ", 10), 0);

@@ -21,12 +21,14 @@ static void summarise(const struct guess *guess, struct text *out) {
     for (size_t i = 0; i < guess->series_count; i++) {
         text_format(out, " %s:", guess->series[i].id);
         for (size_t j = 0; j < guess->series[i].count; j++) {
-            text_format(out, "%s%s=%s", j ? "," : "", guess->columns[guess->series[i].columns[j]].name, guess->series[i].visits[j]);
+            text_format(out, "%s%s=%s", j ? "," : "", guess->columns[guess->series[i].columns[j]].name,
+                guess->series[i].visits[j]);
         }
     }
 }
 
-/* A file with this header: 24 records, identifiers first, then an arm where asked, then numbers. A header word may end in
+/* A file with this header: 24 records, identifiers first, then an arm where asked, then numbers. A header word may end
+ * in
  * ":kind", which says what its values are: i identifier, a arm, s sex, d date, y yes or no, t free text, n number. */
 static void make_file(const char *header, struct text *csv) {
     char kinds[32], copy[512];
@@ -86,7 +88,8 @@ static const struct {
     {"record_id:i randomised_to:a qol_baseline qol_month3 qol_month12",
         "record_id/randomised_to qol:qol_baseline=Baseline,qol_month3=3 months,qol_month12=12 months"},
     {"ptid:i Treat:a Prewt Postwt", "ptid/Treat wt:Prewt=Baseline,Postwt=Follow-up"},
-    {"id:i trt:a bdi.pre bdi.2m bdi.3m bdi.8m", "id/trt bdi:bdi.pre=Baseline,bdi.2m=2 months,bdi.3m=3 months,bdi.8m=8 months"},
+    {"id:i trt:a bdi.pre bdi.2m bdi.3m bdi.8m",
+        "id/trt bdi:bdi.pre=Baseline,bdi.2m=2 months,bdi.3m=3 months,bdi.8m=8 months"},
     {"id:i drug:a baseline number3m number12m",
         "id/drug number:baseline=Baseline,number3m=3 months,number12m=12 months"},
     {"id:i arm:a before month2 month8", "id/arm outcome:before=Baseline,month2=2 months,month8=8 months"},
@@ -190,8 +193,9 @@ static void role_and_codes_follow_from_name_and_values(void **state) {
             }
         }
         if (column->role != columns[i].role || strcmp(codes.data, columns[i].codes) != 0) {
-            print_error("%s: %s\n    got %s, codes \"%s\"; wanted %s, codes \"%s\"\n", columns[i].name, columns[i].values,
-                guess_role_name(column->role), codes.data, guess_role_name(columns[i].role), columns[i].codes);
+            print_error("%s: %s\n    got %s, codes \"%s\"; wanted %s, codes \"%s\"\n", columns[i].name,
+                columns[i].values, guess_role_name(column->role), codes.data, guess_role_name(columns[i].role),
+                columns[i].codes);
             wrong++;
         }
         guess_release(&guess);
@@ -255,7 +259,8 @@ static void the_draft_for_the_demonstration_is_a_plan(void **state) {
     int sex = plan_covariate(&plan, "sex"), age = plan_covariate(&plan, "age");
     assert_int_not_equal(sex, NOWHERE);
     assert_int_equal(plan.covariates[sex].level_count, 2); /* not the lower-case variants */
-    assert_string_equal(plan.covariates[sex].levels[0].label, *plan.covariates[sex].levels[0].code == 'F' ? "Female" : "Male");
+    assert_string_equal(
+        plan.covariates[sex].levels[0].label, *plan.covariates[sex].levels[0].code == 'F' ? "Female" : "Male");
     assert_int_not_equal(age, NOWHERE);
     assert_true(plan.covariates[age].number);
     assert_int_equal(plan.subgroup_count, 3);
@@ -275,8 +280,8 @@ static void a_code_that_is_a_value_elsewhere_stays_with_its_column(void **state)
     text_init(&out);
     text_string(&csv, "id,arm,age,bmi,pain_0,pain_8\n");
     for (size_t i = 0; i < 60; i++) {
-        text_format(&csv, "%zu,%s,%s,%zu.%zu,%zu,%zu\n", 1000 + i, i % 2 ? "placebo" : "active", i % 12 ? i % 2 ? "77" : "61" : "99",
-            20 + i % 11, i % 10, 20 + i % 50, 15 + (i * 7) % 60);
+        text_format(&csv, "%zu,%s,%s,%zu.%zu,%zu,%zu\n", 1000 + i, i % 2 ? "placebo" : "active",
+            i % 12 ? i % 2 ? "77" : "61" : "99", 20 + i % 11, i % 10, 20 + i % 50, 15 + (i * 7) % 60);
         if (i == 30) { /* one body mass index is the code 99, twice */
             text_string(&csv, "2001,active,99,99,40,30\n2002,placebo,88,99,41,31\n");
         }
@@ -299,8 +304,9 @@ static void a_code_that_is_a_value_elsewhere_stays_with_its_column(void **state)
 
 static void any_cells_give_a_guess(void **state) {
     (void)state;
-    static const char *const files[] = {"a\n", "a,b\n", "a\n1\n", "a\n\n", "a,b\n,\n,\n", "\u00e9\u00e8,\u4f53\u91cd\n1,2\n",
-        "_,-\n1,2\n", "0,1\n1,2\n3,4\n", "baseline,pre,post,0\n1,2,3,4\n", "id\n1\n2\n3\n"};
+    static const char *const files[] = {"a\n", "a,b\n", "a\n1\n", "a\n\n", "a,b\n,\n,\n",
+        "\u00e9\u00e8,\u4f53\u91cd\n1,2\n", "_,-\n1,2\n", "0,1\n1,2\n3,4\n", "baseline,pre,post,0\n1,2,3,4\n",
+        "id\n1\n2\n3\n"};
     for (size_t i = 0; i < sizeof files / sizeof *files; i++) {
         struct fault fault;
         fault_init(&fault);
