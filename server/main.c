@@ -186,7 +186,9 @@ static bool serve(const struct given *given, const char *study, const char *fold
         snprintf(address, sizeof address, "http://127.0.0.1:%u/?key=%s", listener_port(listener), server_key(state));
         printf("Evenhand is open at %s\n", address);
         fflush(stdout);
-        if (!given->options[OPTION_NO_BROWSER]) {
+        char once[33];
+        if (!given->options[OPTION_NO_BROWSER] && server_key_once(state, once, fault)) {
+            snprintf(address, sizeof address, "http://127.0.0.1:%u/?key=%s", listener_port(listener), once);
             start_browser(address);
         }
         int which;

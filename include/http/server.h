@@ -15,6 +15,9 @@ struct server_state *server_new(const char *folder, struct fault *fault);
 void server_free(struct server_state *state);                /* closes the study; no request may be running */
 void server_port(struct server_state *state, unsigned port); /* the port in Host, Origin and the cookie's name */
 const char *server_key(const struct server_state *state);    /* 32 hexadecimal digits */
+/* A key for the browser that the program starts itself: good for one exchange, because the arguments of a process can
+ * be read by everyone on the machine. Each call makes a new one in place of the last. */
+bool server_key_once(struct server_state *state, char key[33], struct fault *fault);
 const char *server_folder(const struct server_state *state);
 
 /* Opens the study at `path` and takes its lock. FAULT_CONFLICT where one is open already. */

@@ -31,6 +31,26 @@ bool key_same(const char *given, const char *wanted) {
     return length == KEY_SIZE - 1 && strlen(given) == length && memeql_sec(given, wanted, length);
 }
 
+bool key_fits(struct server_state *state, const char *given) {
+    pthread_mutex_lock(&state->mutex);
+    bool once = key_same(given, state->key_once);
+    if (once) {
+        *state->key_once = '\0';
+    }
+    pthread_mutex_unlock(&state->mutex);
+    return once || key_same(given, state->key);
+}
+
+bool server_key_once(struct server_state *state, char key[33], struct fault *fault) {
+    if (!key_make(key, fault)) {
+        return false;
+    }
+    pthread_mutex_lock(&state->mutex);
+    memcpy(state->key_once, key, KEY_SIZE);
+    pthread_mutex_unlock(&state->mutex);
+    return true;
+}
+
 bool session_new(struct server_state *state, char token[KEY_SIZE], struct fault *fault) {
     if (!key_make(token, fault)) {
         return false;

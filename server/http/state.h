@@ -21,7 +21,8 @@ struct draft {
 
 struct server_state {
     char key[KEY_SIZE];
-    char cookie_name[32]; /* "evenhand-PORT" */
+    char key_once[KEY_SIZE]; /* "" where it is used up */
+    char cookie_name[32];    /* "evenhand-PORT" */
     unsigned port;
     char *folder;
     pthread_mutex_t mutex; /* sessions and drafts */
@@ -38,6 +39,8 @@ bool key_make(char key[KEY_SIZE], struct fault *fault);
 /* Compares without telling by its time where two texts differ. */
 bool key_same(const char *given, const char *wanted);
 
+/* Is this the key, or the one for a single exchange, which is then used up? */
+bool key_fits(struct server_state *state, const char *given);
 /* Opens a session and copies its token out. */
 bool session_new(struct server_state *state, char token[KEY_SIZE], struct fault *fault);
 /* Is there a session for the Cookie header? */

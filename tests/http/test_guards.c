@@ -172,6 +172,31 @@ static void the_key_is_exchanged_for_a_cookie(void **state) {
     reply_release(&reply);
 }
 
+static void a_key_for_once_opens_once(void **state) {
+    const struct house *house = *state;
+    static const unsigned wanted[] = {303, 403};
+    char key[33], target[64];
+    struct fault fault;
+    fault_init(&fault);
+    assert_true(server_key_once(house->state, key, &fault));
+    assert_string_not_equal(key, server_key(house->state));
+    snprintf(target, sizeof target, "/?key=%s", key);
+    for (size_t i = 0; i < 2; i++) {
+        struct request request = plain_request(house, "GET");
+        struct reply reply;
+        request.cookie = NULL;
+        send_to(house, &request, target, NULL, 0, &reply);
+        assert_int_equal(reply.status, wanted[i]);
+        reply_release(&reply);
+    }
+    struct request request = plain_request(house, "GET"); /* used up is not open to nothing */
+    struct reply reply;
+    request.cookie = NULL;
+    send_to(house, &request, "/?key=", NULL, 0, &reply);
+    assert_int_equal(reply.status, 403);
+    reply_release(&reply);
+}
+
 static void keys_differ_from_server_to_server(void **state) {
     const struct house *house = *state;
     struct fault fault;
@@ -245,6 +270,7 @@ int main(void) {
         cmocka_unit_test(one_spoiled_thing_is_refused),
         cmocka_unit_test(a_person_without_key_is_told_how_to_open),
         cmocka_unit_test(the_key_is_exchanged_for_a_cookie),
+        cmocka_unit_test(a_key_for_once_opens_once),
         cmocka_unit_test(keys_differ_from_server_to_server),
         cmocka_unit_test(every_reply_bears_the_security_headers),
         cmocka_unit_test(a_large_body_is_refused_before_it_comes),
