@@ -49,7 +49,9 @@ static inline char *replaced(const char *text, const char *from, const char *to)
         text_string(&out, to);
     }
     text_string(&out, text);
-    return text_take(&out);
+    char *bytes = text_take(&out);
+    text_release(&out); /* taking leaves an empty text behind */
+    return bytes;
 }
 
 /* The Quayside Walking Trial, as exported or after the right decisions, in a state of blinding. */
