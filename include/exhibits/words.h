@@ -10,6 +10,8 @@
 const char *head_of(const struct view *view); /* the head of the chain at the view's version */
 /* What a decision did, in a sentence: "sex: f is read as F"; texts of the arm's column are left out while blinded. */
 const char *decision_words(const struct view *view, const struct decision *decision);
+/* Whether its texts may not be shown now: it is about the arm or what tells it, or answers or reverses such a one. */
+bool decision_hidden(const struct view *view, const struct decision *decision);
 /* An object with every field of the decision; texts of the arm's column null while blinded, with "hidden": true. */
 void decision_json(const struct view *view, const struct decision *decision, bool stands, struct json *json);
 

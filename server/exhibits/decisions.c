@@ -20,7 +20,7 @@ static bool compute(struct view *view, struct fault *fault) {
     size_t without_evidence = 0;
     for (size_t i = 0; i < result->count; i++) {
         const struct decision *decision = &frame->decisions[i];
-        result->hidden[i] = decision->column && arms_hide_column(frame, decision->column);
+        result->hidden[i] = decision_hidden(view, decision);
         without_evidence += frame->stands[i] && decision->kind == DECISION_CORRECT && !decision->evidence;
     }
     view->result = result;
@@ -62,8 +62,8 @@ static void tables(const struct view *view, struct table **tables, size_t *count
         if (decision->participant) {
             table_cell_opens(table, decision->participant, result->hidden[i] ? NULL : decision->column);
         }
-        table_put_text(table, decision->reason);
-        table_put_text(table, decision->evidence);
+        table_put_text(table, result->hidden[i] ? "not shown while blinded" : decision->reason);
+        table_put_text(table, result->hidden[i] ? NULL : decision->evidence);
         table_put_text(table, decision->blinding);
     }
     table_note(table, arena_format(view->arena, "Head of the chain: %s", head_of(view)));

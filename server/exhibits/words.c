@@ -16,6 +16,16 @@ static bool hidden(const struct view *view, const struct decision *decision) {
     return decision->column && arms_hide_column(view->frame, decision->column);
 }
 
+bool decision_hidden(const struct view *view, const struct decision *decision) {
+    while (!hidden(view, decision)) {
+        if (decision->reverses == 0 || decision->reverses >= decision->number) {
+            return false;
+        }
+        decision = &view->frame->decisions[decision->reverses - 1]; /* a reversal or a response speaks of that one */
+    }
+    return true;
+}
+
 static const char *or_nothing(const char *text) {
     return text ? *text ? text : "blank" : "nothing";
 }
@@ -51,7 +61,8 @@ const char *decision_words(const struct view *view, const struct decision *decis
         return arena_format(arena, "%s%s%s%s%s", label, *label && *who ? " of " : "", who, *label || *who ? ": " : "",
             decision->text ? decision->text : "");
     case DECISION_RESPONSE:
-        return arena_format(arena, "To decision %u: %s", decision->reverses, decision->text ? decision->text : "");
+        return arena_format(arena, "To decision %u: %s", decision->reverses,
+            decision_hidden(view, decision) ? "not shown while blinded" : decision->text ? decision->text : "");
     case DECISION_EXCLUDE:
         return arena_format(arena, "%s is left out of the %s set", who, decision->set);
     case DECISION_FLAG:
@@ -76,7 +87,7 @@ const char *decision_words(const struct view *view, const struct decision *decis
 }
 
 void decision_json(const struct view *view, const struct decision *decision, bool stands, struct json *json) {
-    bool hide = hidden(view, decision);
+    bool hide = decision_hidden(view, decision);
     json_object(json);
     json_field_integer(json, "number", decision->number);
     json_field_string(json, "at", decision->at);
@@ -92,7 +103,7 @@ void decision_json(const struct view *view, const struct decision *decision, boo
     json_field_string(json, "evidence", hide ? NULL : decision->evidence);
     json_field_string(json, "discrepancy", hide ? NULL : decision->discrepancy);
     json_field_string(json, "exhibit", decision->exhibit);
-    json_field_string(json, "text", decision->text);
+    json_field_string(json, "text", hide ? NULL : decision->text);
     json_field_string(json, "words", decision_words(view, decision));
     json_field_bool(json, "stands", stands);
     json_field_bool(json, "reversible", stands && decision_rules[decision->kind].reversible);

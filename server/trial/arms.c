@@ -53,7 +53,7 @@ bool arms_given_away(const struct frame *frame, const struct column *column) {
     arena_init(&arena);
     size_t *count = ARENA_NEW(&arena, levels * arms, size_t);
     for (size_t p = 0; p < frame->participant_count; p++) {
-        if (column->level[p] != NOWHERE && frame->arm->level[p] != NOWHERE) {
+        if (column->level[p] != NOWHERE && has_arm(frame, p)) { /* a misspelt arm must not make its level look mixed */
             count[(size_t)column->level[p] * arms + (size_t)frame->arm->level[p]]++;
             all++;
         }
