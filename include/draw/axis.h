@@ -1,8 +1,8 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Axes: which values get a tick and where a value lies. Linear ticks step by 1, 2 or 5 times a power of ten; ticks of
  * log axes stand at 1, 2 and 5 times powers of ten, with labels at the powers alone when room is short; over more than
- * seven powers, at every second or third power.
- * Pure arithmetic, thread-safe. */
+ * seven powers, at every second or third power; where the high end is less than three times the low one, at linear
+ * steps. Pure arithmetic, thread-safe. */
 #ifndef EVENHAND_DRAW_AXIS_H
 #define EVENHAND_DRAW_AXIS_H
 #include "base/text.h"

@@ -97,6 +97,13 @@ static void logarithmic(struct axis *axis, size_t wanted, bool exact) {
         axis->low /= 2.0;
         axis->high *= 2.0;
     }
+    if (axis->high < 3.0 * axis->low) { /* within one power 1-2-5 leaves hardly a tick: whole steps serve better */
+        double step = nice_step(axis->high - axis->low, wanted), low = floor(axis->low / step + 1e-9) * step;
+        axis->low = exact || low <= 0.0 ? axis->low : low;
+        axis->high = exact ? axis->high : ceil(axis->high / step - 1e-9) * step;
+        linear_ticks(axis, step);
+        return;
+    }
     if (!exact) {
         axis->low = log_nice(axis->low, false);
         axis->high = log_nice(axis->high, true);

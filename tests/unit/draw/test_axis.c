@@ -27,6 +27,8 @@ static const struct {
     {AXIS_LINEAR, 18.0, 85.0, 7, false, false, "10 20 30 40 50 60 70 80 90"},
     {AXIS_LOG10, 0.3, 41.0, 7, false, false, "0.2 0.5 1 2 5 10 20 50"},
     {AXIS_LOG10, 0.5, 2.0, 5, false, false, "0.5 1 2"},
+    {AXIS_LOG10, 139.0, 178.0, 4, false, false, "130 140 150 160 170 180"},
+    {AXIS_LOG10, 0.9, 2.6, 2, false, false, "1 2 3"},
     {AXIS_LOG10, 0.2, 5.0, 2, false, false, "0.2 0.5 1 2 5"},
     {AXIS_LOG10, 0.003, 9000.0, 6, false, false, "0.01 0.1 1 10 100 1000 10000"},
     {AXIS_LOG10, 1e-9, 1e9, 5, false, false, "10\u207b\u2079 10\u207b\u2076 0.001 1 1000 1000000 10\u2079"},
