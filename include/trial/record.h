@@ -44,7 +44,7 @@ struct decision_rule {
 };
 extern const struct decision_rule decision_rules[DECISION_KIND_COUNT];
 
-/* One decision. Texts are owned by the arena it was read into and NULL where not given; to_null says JSON null stood there. */
+/* One decision. Texts are owned by the arena it was read into and NULL where not given or null in JSON. */
 struct decision {
     uint32_t number;
     enum decision_kind kind;
@@ -69,7 +69,8 @@ struct record {
  * the arena. Checks kinds, fields and types; `from` against the data is the frame's business. fault.row: 1-based entry. */
 bool decisions_read(struct arena *arena, const char *json, size_t length, const char *name, struct decision **decisions,
     size_t *count, uint32_t *version, struct fault *fault);
-/* Fills value, meaning ... row, reverses, planned from the body (as read from the study file). */
+/* Fills value, meaning ... row, reverses, planned from the body (as read from the study file), number, kind and the fields with
+ * columns of their own being there already; refuses what a replay could not use. */
 bool decision_unpack(struct arena *arena, struct decision *decision, struct fault *fault);
 int decision_kind_of(const char *name); /* or NOWHERE */
 

@@ -71,6 +71,7 @@ struct finding { /* a run of the checks over one frame */
     struct arena *arena;
     struct discrepancy *list;
     size_t count, room;
+    const bool *hidden; /* [variables] whose text may not be shown now */
 };
 
 static struct discrepancy *found(struct finding *finding, enum check_kind check, const char *column, const char *what) {
@@ -659,7 +660,7 @@ static void check_variable(struct finding *finding, enum check_kind check, size_
     const struct frame *frame = finding->frame;
     const struct variable *variable = &frame->plan->variables[v];
     const struct column *column = frame->columns[v];
-    if (arms_hide_column(frame, variable->column)) {
+    if (finding->hidden[v]) {
         return;
     }
     bool number = variable->kind == VARIABLE_NUMBER, category = variable->kind == VARIABLE_CATEGORY;
@@ -687,11 +688,17 @@ static void check_variable(struct finding *finding, enum check_kind check, size_
 }
 
 static void run(struct finding *finding) {
+    const struct plan *plan = finding->frame->plan;
+    bool *hidden = ARENA_NEW(finding->arena, plan->variable_count, bool);
+    for (size_t v = 0; v < plan->variable_count; v++) {
+        hidden[v] = arms_hide_column(finding->frame, plan->variables[v].column);
+    }
+    finding->hidden = hidden;
     check_repeated(finding);
     check_no_identifier(finding);
     check_arm(finding);
     for (int check = CHECK_MISSING_CODE; check < CHECK_COUNT; check++) {
-        for (size_t v = 0; v < finding->frame->plan->variable_count; v++) {
+        for (size_t v = 0; v < plan->variable_count; v++) {
             check_variable(finding, (enum check_kind)check, v);
         }
     }

@@ -60,6 +60,13 @@ static bool plan_fits(const struct plan *plan, const struct cells *cells, const 
             return false;
         }
     }
+    for (size_t i = 0; i < plan->event_count; i++) {
+        const struct event *event = &plan->events[i];
+        if ((event->date && !column_is_there(cells, event->date, "an event's date", data_name, plan_name, fault)) ||
+            (event->reason && !column_is_there(cells, event->reason, "an event's reason", data_name, plan_name, fault))) {
+            return false;
+        }
+    }
     return cells->records > 0 || fault_at(fault, FAULT_INPUT, 2, 0, "%s has a header and no record below it; load a file with at least one participant",
                                     data_name);
 }
@@ -100,8 +107,10 @@ static const char *letters_text(struct arena *arena, const unsigned char *letter
 }
 
 static const char *account_name(struct arena *arena) {
-    const struct passwd *entry = getpwuid(geteuid());
-    return entry ? arena_text(arena, entry->pw_name) : arena_format(arena, "account %u", (unsigned)geteuid());
+    char room[4096];
+    struct passwd entry, *found = NULL;
+    bool known = getpwuid_r(geteuid(), &entry, room, sizeof room, &found) == 0 && found;
+    return known ? arena_text(arena, entry.pw_name) : arena_format(arena, "account %u", (unsigned)geteuid());
 }
 
 /* The plan's codes for missing as the first decisions: one for each column and code. */
