@@ -11,7 +11,7 @@ let serial = 0;
 export function whoFields(force = false) {
   const known = deciding.get();
   if (known.name && !force) return null;
-  const name = make("input", { name: "who", required: true, autocomplete: "off", value: known.name, maxlength: "120" });
+  const name = make("input", { name: "who", "data-path": "who", required: true, autocomplete: "off", value: known.name, maxlength: "120" });
   const role = make("input", { name: "role", required: true, autocomplete: "off", value: known.role, maxlength: "120" });
   return make("fieldset", { class: "who" }, make("legend", {}, "Who is deciding"),
     make("label", {}, make("span", {}, "Name"), name),
@@ -74,6 +74,7 @@ export function decisionForm(spec) {
   const submit = make("button", { type: "submit", class: "strong" }, spec.action ?? "Record the decision");
   const form = make("form", { class: "decision", "aria-labelledby": `${id}-title` },
     make("h3", { id: `${id}-title` }, spec.title),
+    whoFields(),
     (spec.fields ?? []).map(fieldOf),
     shown,
     spec.alike ? make("label", { class: "tick" }, make("input", { type: "checkbox", name: "alike" }), make("span", {}, spec.alike.words)) : null,
@@ -81,7 +82,7 @@ export function decisionForm(spec) {
       make("input", { name: "reason", required: true, autocomplete: "off", list: `${id}-reasons`, maxlength: "2000" })),
     spec.reason === false ? null : make("label", {}, make("span", {}, "Evidence seen, if any ", make("small", {}, "(source document, page, date)")),
       make("input", { name: "evidence", autocomplete: "off", maxlength: "2000" })),
-    whoFields(), reasons, trouble,
+    reasons, trouble,
     make("p", { class: "buttons" }, submit, button("Cancel", () => spec.cancel?.())));
   const values = () => {
     const data = Object.fromEntries(new FormData(form));

@@ -105,11 +105,11 @@ function settlePart(discrepancy) {
     make("div", { class: "actions" },
       open && discrepancy.proposal ? act("a", discrepancy.proposal_words ?? decisionWords(discrepancy.proposal), { class: "strong" }) : null,
       open && discrepancy.rows ? discrepancy.rows.map((row) => button(`Keep record ${row}`, () => offer(keepRecord(list[0], row, discrepancy)), { "data-key": `keep-${row}` })) : null,
-      valued ? act("c", "Confirm as recorded") : null,
+      valued ? act("c", "Confirm") : null,
       valued ? act("s", "Set missing") : null,
       valued ? act("e", "Correct") : null,
       open ? act("q", "Raise a query") : null,
-      list.length ? act("Enter", list.length === 1 ? `Participant ${list[0]}` : "First participant") : null,
+      list.length ? act("Enter", "Participant") : null,
       open ? act("l", "Later") : null),
     make("div", { class: "form-host" })];
 }

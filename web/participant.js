@@ -105,12 +105,12 @@ function actionsFor(value, discrepancy) {
       before: () => currentWords(value),
       after: () => proposal.to ?? (proposal.kind === "set-missing" || proposal.kind === "missing-code" ? "missing" : "read anew"),
       decisions: () => [{ ...proposal, discrepancy: discrepancy.id }],
-    }, value.column), { class: "strong", "data-key": "act-accept" }) : null,
-    button("Correct", offer("correct"), { "data-key": "act-correct" }),
-    has ? button("Set missing", offer("set-missing"), { "data-key": "act-set-missing" }) : null,
-    has ? button("Confirm as recorded", offer("confirm"), { "data-key": "act-confirm" }) : null,
-    has ? button("Read as…", offer("read-as"), { "data-key": "act-read-as" }) : null,
-    button("Raise a query", offer("query"), { "data-key": "act-query" })), host];
+    }, value.column), { class: "strong", "data-key": `act-accept-${value.column}` }) : null,
+    button("Correct", offer("correct"), { "data-key": `act-correct-${value.column}` }),
+    has ? button("Set missing", offer("set-missing"), { "data-key": `act-set-missing-${value.column}` }) : null,
+    has ? button("Confirm as recorded", offer("confirm"), { "data-key": `act-confirm-${value.column}` }) : null,
+    has ? button("Read as…", offer("read-as"), { "data-key": `act-read-as-${value.column}` }) : null,
+    button("Raise a query", offer("query"), { "data-key": `act-query-${value.column}` })), host];
 }
 
 function keepActions(discrepancy) {

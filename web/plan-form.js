@@ -362,7 +362,7 @@ function draw() {
     form.element.elements.role.value = typed.role;
   }
   changed(false);
-  if (form.fault) place(form.fault);
+  if (form.fault) fill($("plan-trouble"), form.fault);
   if (key) restoreFocus(`[data-key="${CSS.escape(key)}"]`);
 }
 
@@ -401,8 +401,7 @@ function pathOf(sentence) {
   return field?.dataset.path ?? (/\.study\b/.test(sentence) ? "file" : "");
 }
 
-function place(sentence) {
-  const path = pathOf(sentence);
+function place(sentence, path = pathOf(sentence)) {
   const note = make("p", { class: "fault" }, sentence);
   const field = path && form.element.querySelector(`[data-path="${CSS.escape(path)}"]`);
   let part = path;
@@ -419,34 +418,28 @@ function place(sentence) {
   if (field) restoreFocus(`[data-path="${CSS.escape(path)}"]`);
 }
 
-// What can be said without asking the server.
+// What can be said without asking the server: where, and what.
 function missing() {
   const { plan } = form;
-  if (!plan.title.trim()) return "title is empty: give the trial its title.";
-  if (!form.file.trim()) return "The study file (NAME.study) needs a name.";
-  if (!plan.participant) return "participant is not chosen: say which column identifies a participant.";
-  if (!plan.outcomes.length) return "outcomes are missing: say which column is the primary outcome.";
-  for (const [at, outcome] of plan.outcomes.entries()) {
-    if (outcome.plausible?.includes(null)) return `outcomes[${at}].plausible needs both ends, or neither.`;
-  }
-  for (const [at, covariate] of plan.covariates.entries()) {
-    for (const key of ["eligible", "plausible"]) if (covariate[key]?.includes(null)) return `covariates[${at}].${key} needs both ends, or neither.`;
-  }
-  const who = form.element.elements.who;
-  if (who && (!who.value.trim() || !form.element.elements.role.value.trim())) {
-    who.setAttribute("aria-invalid", "true");
-    return "Say who is deciding: a name and a role go into the record.";
-  }
-  return "";
+  if (!plan.title.trim()) return ["title", "The trial has no title yet."];
+  if (!form.file.trim()) return ["file", "The study file needs a name."];
+  const { who, role } = form.element.elements;
+  if (who && (!who.value.trim() || !role.value.trim())) return ["who", "Say who is deciding: a name and a role go into the record."];
+  if (!plan.participant) return ["participant", "Say which column identifies a participant."];
+  if (!plan.outcomes.length) return ["outcomes", "Say which column is the primary outcome: choose it in the table of columns above."];
+  const both = (list, name) => list.flatMap((one, at) => ["plausible", "eligible"].filter((key) => one[key]?.includes(null))
+    .map((key) => [`${name}[${at}].${key}`, "A range needs both ends, or neither."]));
+  return [...both(plan.outcomes, "outcomes"), ...both(plan.covariates, "covariates")][0] ?? null;
 }
 
 async function makeStudy(event) {
   event.preventDefault();
   for (const note of form.element.querySelectorAll(".fault")) note.remove();
   for (const field of form.element.querySelectorAll("[aria-invalid=true]")) field.removeAttribute("aria-invalid");
-  form.fault = missing() || null;
-  if (form.fault) {
-    place(form.fault);
+  const fault = missing();
+  form.fault = fault?.[1] ?? null;
+  if (fault) {
+    place(fault[1], fault[0]);
     return;
   }
   takeWho(form.element);
