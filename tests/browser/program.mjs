@@ -18,7 +18,7 @@ export function temporary() {
 
 // Resolves with the printed address once the program serves.
 export function start(...words) {
-  const child = spawn(join(root, "build", "evenhand"), [...words, "--no-browser", "--port", "0"], { stdio: ["ignore", "pipe", "pipe"] });
+  const child = spawn(process.env.EVENHAND ?? join(root, "build", "evenhand"), [...words, "--no-browser", "--port", "0"], { stdio: ["ignore", "pipe", "pipe"] });
   let said = "";
   const address = new Promise((resolve, reject) => {
     const listen = (bytes) => {
@@ -125,17 +125,30 @@ function boxesInPage() {
       if (box.width < 1) continue;
       // Letters fill the middle of their line box.
       const trim = box.height * 0.2;
-      boxes.push({ text: text.slice(0, 60), part: part?.id ?? "", size, left: box.left + 1, right: box.right - 1, top: box.top + trim, bottom: box.bottom - trim, svg: svg ? svg.getBoundingClientRect().toJSON() : null,
-        parent, clip: clipOf(parent) });
+      const seen = { left: box.left + 1, right: box.right - 1, top: box.top + trim, bottom: box.bottom - trim };
+      const clip = clipTo(parent, seen);
+      if (seen.right <= seen.left || seen.bottom <= seen.top) continue; // scrolled out of its box
+      boxes.push({ text: text.slice(0, 60), part: part?.id ?? "", size, ...seen, svg: svg && !clip.scrolls ? svg.getBoundingClientRect().toJSON() : null, parent, clip: clip.hides });
     }
   }
-  function clipOf(element) {
+  // What can be scrolled to is not cut off: only what is in sight of it counts. What is hidden for good is.
+  function clipTo(element, seen) {
+    let scrolls = false;
     for (let at = element; at && at !== document.body; at = at.parentElement) {
+      if (at instanceof SVGElement) continue;
       const style = getComputedStyle(at);
-      if (/(auto|scroll)/.test(style.overflowX + style.overflowY)) return null; // can be scrolled to
-      if (/(hidden|clip)/.test(style.overflowX + style.overflowY) && !(at instanceof SVGElement)) return at.getBoundingClientRect().toJSON();
+      const box = at.getBoundingClientRect();
+      if (/(auto|scroll)/.test(style.overflowX + style.overflowY)) {
+        scrolls = true;
+        seen.left = Math.max(seen.left, box.left);
+        seen.right = Math.min(seen.right, box.right);
+        seen.top = Math.max(seen.top, box.top);
+        seen.bottom = Math.min(seen.bottom, box.bottom);
+      } else if (!scrolls && /(hidden|clip)/.test(style.overflowX + style.overflowY)) {
+        return { scrolls, hides: box.toJSON() };
+      }
     }
-    return null;
+    return { scrolls, hides: null };
   }
   return boxes;
 }
