@@ -78,7 +78,7 @@ export function drawAgenda(place, showKeys) {
         title: item.open ? `${item.name}: ${item.open}` : item.name, "aria-current": item.number === here ? "true" : null },
       make("span", { class: "count" }, String(item.number)),
       make("span", { class: "name" }, item.name),
-      item.open ? make("span", { class: "open" }, item.open) : null),
+      item.open || item.later ? make("span", { class: "open" }, item.open || "in a later version") : null),
       item.number === here && item.exhibits.length > 1 ? make("ol", { class: "exhibits", "aria-label": `Exhibits of ${item.name}` },
         item.exhibits.map((exhibit) => make("li", {}, make("a", {
           href: address.write({ ...place, exhibit: exhibit.name, args: {}, show: "", at: "" }), "data-key": `exhibit-${exhibit.name}`,

@@ -16,9 +16,16 @@ const people = (discrepancy) => discrepancy.participants?.length ? discrepancy.p
 export async function makeDoubtful(entry, place, signal) {
   const answer = await server.json("/exhibit/discrepancies.json", signal);
   const article = make("article", { class: "exhibit doubtful-list", "data-exhibit": entry.name, "data-version": String(answer.version ?? "") });
+  const kept = state.form?.isConnected && state.list.some((discrepancy) => discrepancy.id === state.at) ? state.form : null;
   Object.assign(state, { article, list: answer.discrepancies, counts: answer.counts, show: place.show || "open", form: null });
   if (place.at) state.at = place.at;
   draw(entry);
+  // Somebody else recorded something while a form was open here: what was typed stays.
+  const host = article.querySelector(".settle .form-host");
+  if (kept && host) {
+    host.append(kept);
+    state.form = kept;
+  }
   return article;
 }
 

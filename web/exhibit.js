@@ -98,7 +98,7 @@ function absent(place) {
   const item = study.agenda.items.find((one) => place.exhibit === `item-${one.number}`);
   return make("article", { class: "exhibit failing" },
     head(null, item ? String(item.number) : "", item ? item.name : "This address leads to no exhibit"),
-    make("p", { class: "sentence" }, item ? item.says ?? item.open ?? "This item has no exhibit yet in this version of the program." : `No exhibit is called “${place.exhibit}”.`),
+    make("p", { class: "sentence" }, item ? item.later || "This item has no exhibit yet in this version of the program." : `No exhibit is called “${place.exhibit}”.`),
     make("p", { class: "actions" }, make("a", { href: address.write({ exhibit: study.exhibits()[0].name, args: {} }) }, "Go to the first exhibit")));
 }
 
@@ -112,6 +112,11 @@ async function place_article(main, article, entry, place) {
   const question = article.querySelector(".question");
   if (question) question.tabIndex = -1;
   article.querySelector(".number")?.append(make("span", { class: "whereabouts" }, whereabouts(entry)));
+  const rows = [...article.querySelectorAll(".tabs")];
+  if (rows.length > 1) {
+    rows[0].before(make("div", { class: "tab-rows" }));
+    article.querySelector(".tab-rows").append(...rows);
+  }
   for (const tab of article.querySelectorAll(".tabs a")) rewrite(tab);
   for (const table of article.querySelectorAll("table.table")) {
     if (!table.parentElement.matches(".scroll")) {
@@ -124,7 +129,7 @@ async function place_article(main, article, entry, place) {
   if (svg) article.classList.add("with-figure");
   const notes = make("section", { class: "concluded", "aria-label": "What the team concluded" });
   fill(main, article,
-    entry.item.number === 4 ? scalePart(place) : null,
+    entry.item.number === 4 ? scalePart(place, article) : null,
     entry.name === "decisions" ? blindingPart() : null,
     notes,
     saves(entry, place, Boolean(svg)),

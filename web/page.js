@@ -57,6 +57,7 @@ export function openDialog(title, content, closed) {
   dialog.onclose = () => {
     const then = afterDialog;
     afterDialog = null;
+    fill(dialog);
     then?.();
   };
   dialog.showModal();
@@ -78,6 +79,7 @@ export function focusKey(element) {
   if (data.participant) {
     return `[data-participant="${quote(data.participant)}"]` + (data.column ? `[data-column="${quote(data.column)}"]` : "");
   }
+  if (element.closest?.("form.decision")) return `form.decision ${element.name ? `[name="${quote(element.name)}"]` : "button[type=submit]"}`;
   const tabs = element.closest?.("[data-argument]");
   if (tabs && data.value !== undefined) {
     return `[data-argument="${quote(tabs.dataset.argument)}"] [data-value="${quote(data.value)}"]`;

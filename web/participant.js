@@ -65,7 +65,7 @@ const levelWords = (value) => value.levels?.find((level) => level.code === value
 
 // Who this is, in a line: what does not belong to an outcome or an event.
 function facts() {
-  return data.values.filter((value) => !study.outcomeOf(value.column) && value.kind !== "event" && value.current)
+  return data.values.filter((value) => !study.outcomeOf(value.label) && value.kind !== "event" && value.current)
     .slice(0, 4)
     .map((value) => (value.kind === "category" ? levelWords(value) : `${value.label} ${value.current}${value.unit ? ` ${value.unit}` : ""}`))
     .join(", ");
@@ -116,7 +116,13 @@ function actionsFor(value, discrepancy) {
 function keepActions(discrepancy) {
   const host = make("div", { class: "form-host" });
   return [make("div", { class: "actions" }, (discrepancy.rows ?? []).map((row) =>
-    button(`Keep record ${row}`, () => offerForm(host, keepRecord(data.participant, row, discrepancy), ""), { "data-key": `keep-${row}` }))), host];
+    button(`Keep record ${row}`, () => offerForm(host, keepRecord(data.participant, row, discrepancy), ""), { "data-key": `panel-keep-${row}` })),
+  button("Raise a query", () => offerForm(host, {
+    title: `Ask the site about ${data.participant}`,
+    fields: [{ name: "question", label: "Question to the site", long: true }],
+    says: () => "The records stay aside until one is kept.",
+    decisions: (values) => [{ kind: "query", participant: data.participant, question: values.question.trim(), discrepancy: discrepancy.id }],
+  }, ""), { "data-key": "act-query-records" })), host];
 }
 
 export function keepRecord(participant, row, discrepancy) {
@@ -153,12 +159,28 @@ function valueRow(value, chosen) {
   open ? make("tr", { class: "chosen" }, make("td", { colspan: "3" }, above ? make("small", {}, "What can be done stands with its discrepancy above.") : actionsFor(value, null))) : null];
 }
 
+// While several records are held aside: what each of them says, so that one can be chosen.
+function recordsTable(records) {
+  return make("table", { class: "values by-record" },
+    make("thead", {}, make("tr", {}, make("th", { scope: "col" }, "Variable"), records.map((record) => make("th", { scope: "col" }, `Record ${record}`)))),
+    make("tbody", {}, data.values.map((value) => make("tr", { class: new Set(value.on_records).size > 1 ? "differs" : null },
+      make("th", { scope: "row" }, value.label, value.unit ? make("small", {}, ` ${value.unit}`) : null),
+      value.on_records.map((text) => make("td", {}, text === "" ? make("em", {}, "blank") : text))))));
+}
+
+function valuesTable(place) {
+  const ordered = [...data.values].sort((a, b) => Number(b.doubtful ?? false) - Number(a.doubtful ?? false));
+  return [make("table", { class: "values" },
+    make("thead", {}, make("tr", {}, make("th", { scope: "col" }, "Variable"), make("th", { scope: "col" }, "Received"), make("th", { scope: "col" }, "Current"))),
+    make("tbody", {}, ordered.map((value) => valueRow(value, place.cell)))),
+  make("p", { class: "quiet-text" }, "Choose a variable to correct it, set it missing, confirm it, read it as another value or ask the site.")];
+}
+
 function draw(place) {
   if (busy || !data || data.participant !== place.panel) return;
   const panel = $("panel");
   const keep = panel.contains(document.activeElement) ? focusKey(document.activeElement) : null;
   const scroll = panel.scrollTop;
-  const ordered = [...data.values].sort((a, b) => Number(b.doubtful ?? false) - Number(a.doubtful ?? false));
   const open = data.discrepancies.filter((discrepancy) => discrepancy.state !== "settled");
   const settled = data.discrepancies.filter((discrepancy) => discrepancy.state === "settled");
   const records = data.records ?? [];
@@ -168,10 +190,7 @@ function draw(place) {
     open.length ? [make("h3", {}, open.length === 1 ? "Open discrepancy" : `${open.length} open discrepancies`),
       make("ul", { class: "plain discrepancies" }, open.map(discrepancyPart))] : null,
     make("h3", {}, "Values"),
-    make("table", { class: "values" },
-      make("thead", {}, make("tr", {}, make("th", { scope: "col" }, "Variable"), make("th", { scope: "col" }, "Received"), make("th", { scope: "col" }, "Current"))),
-      make("tbody", {}, ordered.map((value) => valueRow(value, place.cell)))),
-    make("p", { class: "quiet-text" }, "Choose a variable to correct it, set it missing, confirm it, read it as another value or ask the site."),
+    data.held_aside && data.values.every((value) => value.on_records?.length) ? recordsTable(records) : valuesTable(place),
     settled.length ? [make("h3", {}, "Settled discrepancies"), make("ul", { class: "plain discrepancies" }, settled.map(discrepancyPart))] : null,
     make("h3", {}, "Decisions"),
     data.decisions.length ? make("ol", { class: "plain decisions" }, data.decisions.map((decision) => make("li", {},

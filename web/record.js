@@ -1,8 +1,8 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // What is done to the record itself: reversals, unblinding, scales, and the notes of what the team concluded.
 import * as address from "./address.js";
-import { decisionForm, focusForm } from "./decide.js";
-import { $, button, closeDialog, fill, make, openDialog, restoreFocus } from "./page.js";
+import { decisionForm } from "./decide.js";
+import { $, button, closeDialog, fill, make, openDialog } from "./page.js";
 import { study } from "./study.js";
 import { decisionWords, moment } from "./words.js";
 
@@ -33,6 +33,7 @@ export async function addReversals(article) {
     table.querySelector("thead tr")?.append(make("th", { scope: "col", class: "act" }, make("span", { class: "unseen" }, "Reverse")));
     for (const row of table.tBodies[0]?.rows ?? []) {
       const number = Number(row.cells[0]?.textContent);
+      for (const cell of row.cells) if (/^\d{4}-\d\d-\d\dT[\d:.]+Z$/.test(cell.textContent)) shorten(cell);
       const decision = decisions.find((one) => one.number === number);
       const can = decision && (decision.reversible ?? !lasting.includes(decision.kind)) && !reversed.has(number) && decision.stands !== false;
       row.append(make("td", { class: "act" }, can
@@ -40,6 +41,11 @@ export async function addReversals(article) {
         : reversed.has(number) || decision?.stands === false ? make("small", {}, "reversed") : null));
     }
   }
+}
+
+function shorten(cell) {
+  cell.title = cell.textContent;
+  cell.textContent = moment(cell.title).replace(" UTC", "");
 }
 
 const arms = { pooled: "all participants together, no arms", coded: "arms as letters", unblinded: "arms by name" };
@@ -68,8 +74,9 @@ function unblind(now, to) {
 
 const scaleWords = { linear: "linear", log10: "log10 (effects as ratios)" };
 
-export function scalePart(place) {
-  const outcome = study.outcome(place.args.outcome) ?? study.outcomeOf(place.args.variable) ?? study.agenda.outcomes[0];
+export function scalePart(place, article) {
+  const variable = article.querySelector('.tabs[data-argument="variable"] [aria-current]')?.textContent;
+  const outcome = variable ? study.outcomeOf(variable) : study.outcome(place.args.outcome) ?? study.agenda.outcomes[0];
   if (!outcome) return null;
   const now = outcome.scale;
   const choose = (scale) => () => openDialog(`Scale of ${outcome.label}`, decisionForm({
@@ -94,30 +101,22 @@ async function notesOf(name) {
   return decisions.filter((decision) => decision.kind === "note" && decision.exhibit === name && !reversed.has(decision.number));
 }
 
-export function noteForm(name, host, back) {
-  const close = () => {
-    fill(host);
-    restoreFocus(back);
-  };
-  const form = decisionForm({
-    title: "What the team concluded",
-    fields: [{ name: "text", label: "In a sentence or two; it stands in the report beside this exhibit", long: true }],
+export function openNote(name) {
+  openDialog("What the team concluded", decisionForm({
+    title: "In a sentence or two",
+    fields: [{ name: "text", label: "It stands in the report beside this exhibit", long: true }],
     reason: false,
     action: "Record the note",
     decisions: (values) => [{ kind: "note", exhibit: name, text: values.text.trim() }],
-    done: () => fill(host),
-    after_moved: () => restoreFocus(back),
-    cancel: close,
-  });
-  fill(host, form);
-  focusForm(form);
+    done: closeDialog,
+    cancel: closeDialog,
+  }));
 }
 
 export async function drawNotes(section, name) {
-  const host = make("div", { class: "form-host" });
   const list = make("div", {});
   fill(section, make("h3", {}, "What the team concluded"), list,
-    make("p", { class: "actions" }, button("Add a note", () => noteForm(name, host, '[data-key="note"]'), { "data-key": "note" })), host);
+    make("p", { class: "actions" }, button("Add a note", () => openNote(name), { "data-key": "note" })));
   try {
     const notes = await notesOf(name);
     fill(list, notes.length ? notes.map((note) => make("blockquote", {}, make("p", {}, note.text), make("footer", {}, `${note.by}, ${moment(note.at)}, decision ${note.number}`)))
@@ -136,7 +135,7 @@ export async function drawFoot(place) {
     return;
   }
   const item = study.exhibit(place.exhibit)?.item.number ?? 0;
-  const open = (one) => one.exhibits.length && /\d/.test(one.open ?? "") && /\bopen\b/.test(one.open ?? "");
+  const open = (one) => one.exhibits?.length && /\d/.test(one.open ?? "") && /\bopen\b/.test(one.open ?? "");
   const items = study.agenda.items;
   const next = items.find((one) => one.number > item && open(one)) ?? items.find((one) => one.number !== item && open(one)) ?? null;
   const notes = await notesOf(place.exhibit).catch(() => []);
@@ -145,18 +144,5 @@ export async function drawFoot(place) {
     make("p", { class: "note" }, last ? [make("strong", {}, last.text), ` ${last.by}, ${moment(last.at)}`] : "What the team concluded: nothing noted yet."),
     button("Note", () => openNote(place.exhibit), { "data-key": "foot-note" }),
     next ? make("a", { href: address.write({ ...place, exhibit: next.exhibits[0].name, args: {}, panel: "", cell: "", show: "", at: "" }), "data-key": "foot-next" },
-      `Next open item: ${next.number} ${next.name}, ${next.open}`) : make("span", {}, "No item is open"));
+      `Next open item: ${next.number} ${next.name}, ${next.open}`) : make("span", {}, open(items[item - 1] ?? {}) ? "No other item is open" : "No item is open"));
 }
-
-function openNote(name) {
-  openDialog("What the team concluded", decisionForm({
-    title: "In a sentence or two",
-    fields: [{ name: "text", label: "It stands in the report beside this exhibit", long: true }],
-    reason: false,
-    action: "Record the note",
-    decisions: (values) => [{ kind: "note", exhibit: name, text: values.text.trim() }],
-    done: closeDialog,
-    cancel: closeDialog,
-  }));
-}
-

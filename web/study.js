@@ -45,8 +45,9 @@ export const study = Object.assign(new EventTarget(), {
     return study.agenda.outcomes.find((outcome) => outcome.id === id) ?? null;
   },
 
-  outcomeOf(column) {
-    return study.agenda.outcomes.find((outcome) => (outcome.visits ?? []).some((visit) => visit.column === column)) ?? null;
+  // A variable of an outcome is called by the outcome and the visit: "Systolic blood pressure, 26 weeks".
+  outcomeOf(label) {
+    return study.agenda.outcomes.find((outcome) => label === outcome.label || label?.startsWith(`${outcome.label}, `)) ?? null;
   },
 });
 

@@ -13,6 +13,7 @@ struct value {
     enum cell_state state;
     uint32_t origin;
     bool doubtful, hidden;
+    const char **on_records; /* what each record says while none is kept, else NULL */
 };
 
 struct analysis_of {
@@ -57,6 +58,11 @@ static void take_values(struct view *view, struct participant_result *result) {
             value->current = column_text(frame, column, record);
             value->origin = column->origin ? column->origin[record] : 0;
             value->doubtful = is_doubtful(result, value->variable->column);
+        } else if (!value->hidden) {
+            value->on_records = ARENA_NEW(view->arena, result->record_count, const char *);
+            for (size_t i = 0; i < result->record_count; i++) {
+                value->on_records[i] = cells_at(frame->cells, result->records[i], column->index);
+            }
         }
     }
 }
@@ -115,7 +121,7 @@ static bool compute(struct view *view, struct fault *fault) {
     return true;
 }
 
-static void value_json(const struct value *value, struct json *json) {
+static void value_json(const struct participant_result *result, const struct value *value, struct json *json) {
     static const char *const kinds[] = {"number", "category", "event"};
     json_object(json);
     json_field_string(json, "column", value->variable->column);
@@ -128,6 +134,11 @@ static void value_json(const struct value *value, struct json *json) {
     json_field_string(json, "words", value->hidden ? "hidden while blinded: its levels tell the arms apart" : cell_state_words(value->state));
     json_field_integer(json, "origin", value->origin);
     json_field_bool(json, "doubtful", value->doubtful);
+    json_key_array(json, "on_records");
+    for (size_t i = 0; value->on_records && i < result->record_count; i++) {
+        json_string(json, value->on_records[i]);
+    }
+    json_close(json);
     json_key_array(json, "levels");
     for (size_t l = 0; value->variable->kind == VARIABLE_CATEGORY && !value->hidden && l < value->column->level_count; l++) {
         json_object(json);
@@ -173,7 +184,7 @@ static void json(const struct view *view, struct json *json) {
     json_close(json);
     json_key_array(json, "values");
     for (size_t i = 0; i < result->value_count; i++) {
-        value_json(&result->values[i], json);
+        value_json(result, &result->values[i], json);
     }
     json_close(json);
     json_key_array(json, "discrepancies");

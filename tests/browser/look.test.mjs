@@ -48,7 +48,7 @@ for (const size of sizes) {
 
   test(`a participant's panel at ${size.width} x ${size.height}`, async () => {
     const page = await openPage(browser, address, size);
-    const { participant } = await page.evaluate(async () => (await (await fetch("/exhibit/discrepancies.json")).json()).discrepancies.find((one) => one.participant));
+    const { participant } = await page.evaluate(async () => (await (await fetch("/exhibit/discrepancies.json")).json()).discrepancies.find((one) => one.participant && one.column));
     await goTo(page, `#change-by-arm?panel=${participant}`);
     await page.waitForSelector("#participant");
     await picture(page, `${size.width}-panel`);

@@ -59,8 +59,9 @@ export async function openPage(browser, address, size = { width: 1366, height: 7
   });
   page.on("response", (response) => {
     if (response.status() >= 300 && response.status() < 400) return;
-    const body = response.text().then((text) => watch.replies.push({ url: response.url(), status: response.status(), text })).catch(() => {});
-    watch.reading.push(body);
+    const late = new Promise((resolve) => setTimeout(resolve, 10000).unref());
+    const body = response.text().then((text) => watch.replies.push({ url: response.url(), status: response.status(), text }));
+    watch.reading.push(Promise.race([body, late]).catch(() => {})); // a request given up has no body
   });
   page.on("pageerror", (error) => watch.faults.push(error.stack ?? String(error)));
   page.on("console", (message) => {

@@ -230,8 +230,7 @@ test("the scale of an outcome is decided in item 4 and the effect follows", asyn
   const was = (await json(page, `/exhibit/effect.json?outcome=${outcome.id}`)).contrasts[0].estimates[0];
   await page.click('[data-key="agenda-4"]');
   await settled(page);
-  const tab = page.locator(`#main .tabs [data-value="${outcome.visits[0].column}"], #main .tabs [data-value="${outcome.id}"]`).first();
-  await tab.click();
+  await page.locator("#main .tabs a", { hasText: outcome.label }).first().click();
   await settled(page);
   const current = outcome.scale ?? "log10";
   await page.click(`[data-key="scale-${current === "log10" ? "linear" : "log10"}"]`);
