@@ -143,6 +143,24 @@ test("the study is made, kept in the folder and shown with its agenda", async ()
   assert.equal(made.title, "Weights after counselling");
   assert.equal(await text("#top h1"), "Weights after counselling");
   assert.equal(await text("#top .blinding"), "CODED");
+});
+
+test("its decimal commas are settled by one decision for each column, and the effect is there", async () => {
+  assert.notEqual((await json(page, "/exhibit/effect.json")).contrasts[0].estimates[0].status, "ok");
+  for (const column of ["Weight baseline", "Weight week 12"]) {
+    await page.click('[data-key="agenda-2"]');
+    await settled(page);
+    const { discrepancies } = await json(page, "/exhibit/discrepancies.json");
+    const found = discrepancies.find((one) => one.column === column && one.state === "open" && one.proposal?.kind === "number-format");
+    const item = page.locator(`[data-key="item-${found.id}"]`);
+    if ((await item.getAttribute("aria-expanded")) !== "true") await item.click();
+    await page.click('[data-key="do-a"]');
+    await page.fill("form.decision [name=reason]", "The export writes a decimal comma");
+    const { version } = await agenda(page);
+    await page.click("form.decision button[type=submit]");
+    await page.waitForFunction((before) => document.querySelector("#top .facts").innerText.includes(`after decision ${before + 1}`), version);
+    await settled(page);
+  }
   const effect = await json(page, "/exhibit/effect.json");
   assert.equal(effect.contrasts.length, 2);
   assert.equal(effect.contrasts[0].estimates[0].status, "ok");
