@@ -139,8 +139,15 @@ export function decisionForm(spec) {
 
 export function focusForm(form) {
   const empty = [...form.elements].find((element) => element.matches("input:not([type=checkbox]), textarea, select") && !element.value);
-  (empty ?? form.querySelector("button[type=submit]")).focus();
-  form.scrollIntoView({ block: "nearest" });
+  const box = form.closest("#panel");
+  (empty ?? form.querySelector("button[type=submit]")).focus({ preventScroll: box !== null });
+  if (!box) {
+    form.scrollIntoView({ block: "nearest" });
+    return;
+  }
+  // The panel stands still on the screen: only what is in it moves.
+  const [inner, outer] = [form.getBoundingClientRect(), box.getBoundingClientRect()];
+  box.scrollTop += Math.max(0, Math.min(inner.bottom - outer.bottom + 16, inner.top - outer.top - 16));
 }
 
 // The forms for one value of one participant. value: {column, label, unit, received, current, levels, kind}.
@@ -148,7 +155,7 @@ export function valueDecision(kind, participant, value, more) {
   const { column, current } = value;
   const name = value.label ?? column;
   const unit = value.unit ? ` ${value.unit}` : "";
-  const worded = (text) => (text === null || text === undefined ? "missing" : text === "" ? "blank" : `${text}${unit}`);
+  const worded = (text) => (text === null || text === undefined ? "missing" : text === "" ? "blank" : text.trim() === text ? `${text}${unit}` : `“${text}”${unit}`);
   const base = { column, participant, ...(more.discrepancy ? { discrepancy: more.discrepancy } : {}) };
   const options = (value.levels ?? []).map((level) => ({ value: level.code, label: `${level.code} · ${level.label}` }));
   const forms = {

@@ -117,6 +117,7 @@ async function place_article(main, article, entry, place) {
     rows[0].before(make("div", { class: "tab-rows" }));
     article.querySelector(".tab-rows").append(...rows);
   }
+  for (const row of rows) sayWhich(row);
   for (const tab of article.querySelectorAll(".tabs a")) rewrite(tab);
   for (const table of article.querySelectorAll("table.table")) {
     if (!table.parentElement.matches(".scroll")) {
@@ -138,6 +139,27 @@ async function place_article(main, article, entry, place) {
   mark(place.panel);
   drawNotes(notes, entry.name);
   if (entry.name === "decisions") await addReversals(article).catch((fault) => say(fault.message));
+}
+
+// Where values alone would not say what they choose, words stand before them; the visits of an outcome share its name.
+const before = { arm: "Against the reference:", order: "In order of:" };
+function sayWhich(row) {
+  const words = before[row.dataset.argument];
+  if (words) row.prepend(make("span", {}, words));
+  if (row.dataset.argument !== "variable") return;
+  let group = null;
+  let last = null;
+  for (const tab of [...row.querySelectorAll("a")]) {
+    const outcome = study.outcomeOf(tab.textContent);
+    const visit = outcome && tab.textContent.slice(outcome.label.length + 2);
+    if (visit) {
+      if (outcome !== last) tab.before((group = make("span", { class: "group" }, make("span", { "aria-hidden": "true" }, outcome.label))));
+      tab.setAttribute("aria-label", tab.textContent);
+      tab.textContent = visit;
+      group.append(tab);
+    }
+    last = outcome;
+  }
 }
 
 // A box that need not scroll is no stop for the keyboard.

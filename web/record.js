@@ -75,8 +75,8 @@ function unblind(now, to) {
 const scaleWords = { linear: "linear", log10: "log10 (effects as ratios)" };
 
 export function scalePart(place, article) {
-  const variable = article.querySelector('.tabs[data-argument="variable"] [aria-current]')?.textContent;
-  const outcome = variable ? study.outcomeOf(variable) : study.outcome(place.args.outcome) ?? study.agenda.outcomes[0];
+  const variable = article.querySelector('.tabs[data-argument="variable"] [aria-current]');
+  const outcome = variable ? study.outcomeOf(variable.getAttribute("aria-label") ?? variable.textContent) : study.outcome(place.args.outcome) ?? study.agenda.outcomes[0];
   if (!outcome) return null;
   const now = outcome.scale;
   const choose = (scale) => () => openDialog(`Scale of ${outcome.label}`, decisionForm({
@@ -135,7 +135,7 @@ export async function drawFoot(place) {
     return;
   }
   const item = study.exhibit(place.exhibit)?.item.number ?? 0;
-  const open = (one) => one.exhibits?.length && /\d/.test(one.open ?? "") && /\bopen\b/.test(one.open ?? "");
+  const open = (one) => one.exhibits?.length && /\d/.test(one.open ?? "") && /\bopen\b/.test(one.open ?? "") && !/^none\b/.test(one.open);
   const items = study.agenda.items;
   const next = items.find((one) => one.number > item && open(one)) ?? items.find((one) => one.number !== item && open(one)) ?? null;
   const notes = await notesOf(place.exhibit).catch(() => []);

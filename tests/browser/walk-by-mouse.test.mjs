@@ -230,7 +230,7 @@ test("the scale of an outcome is decided in item 4 and the effect follows", asyn
   const was = (await json(page, `/exhibit/effect.json?outcome=${outcome.id}`)).contrasts[0].estimates[0];
   await page.click('[data-key="agenda-4"]');
   await settled(page);
-  await page.locator("#main .tabs a", { hasText: outcome.label }).first().click();
+  await page.locator(`#main .tabs a[aria-label^="${outcome.label}"], #main .tabs a[data-value="${outcome.id}"]`).first().click();
   await settled(page);
   const current = outcome.scale ?? "log10";
   await page.click(`[data-key="scale-${current === "log10" ? "linear" : "log10"}"]`);
