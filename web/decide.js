@@ -100,14 +100,16 @@ export function decisionForm(spec) {
     const decisions = spec.decisions(told).map((decision) => ({ ...decision, ...common }));
     submit.disabled = true;
     fill(trouble);
+    let said = "";
     try {
       const recorded = await server.post("/decisions", { version, by: deciding.words(), decisions });
       const first = decisionWords(decisions[0]);
       const last = recorded.version;
-      say(decisions.length > 1 ? `Decisions ${last - decisions.length + 1} to ${last} recorded: ${first}, and ${decisions.length - 1} alike.`
-        : `Decision ${last} recorded: ${first}.`);
+      said = decisions.length > 1 ? `Decisions ${last - decisions.length + 1} to ${last} recorded: ${first}, and ${decisions.length - 1} alike.`
+        : `Decision ${last} recorded: ${first}.`;
       spec.done?.(last);
       await study.moved();
+      say(said);
       spec.after_moved?.();
     } catch (fault) {
       submit.disabled = false;

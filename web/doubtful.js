@@ -3,7 +3,7 @@
 import * as address from "./address.js";
 import { decisionForm, focusForm, valueDecision } from "./decide.js";
 import { button, fill, make, restoreFocus, say } from "./page.js";
-import { keepRecord, openParticipant } from "./participant.js";
+import { answerForm, keepRecord, openParticipant } from "./participant.js";
 import * as server from "./server.js";
 import { count, decisionWords } from "./words.js";
 
@@ -115,6 +115,7 @@ function settlePart(discrepancy) {
       valued ? act("c", "Confirm") : null,
       valued ? act("s", "Set missing") : null,
       valued ? act("e", "Correct") : null,
+      discrepancy.state === "queried" ? act("r", "Enter the answer") : null,
       open ? act("q", "Raise a query") : null,
       list.length ? act("Enter", "Participant") : null,
       open ? act("l", "Later") : null),
@@ -222,6 +223,11 @@ export const keys = {
   q: () => offerValue("query"),
   s: () => offerValue("set-missing"),
   e: () => offerValue("correct"),
+  r: async () => {
+    const discrepancy = current();
+    const form = discrepancy?.state === "queried" ? await answerForm(discrepancy) : null;
+    if (form) offer(form);
+  },
   l: () => {
     state.later.add(state.at);
     step(1);

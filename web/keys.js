@@ -58,7 +58,7 @@ const others = [
 ];
 const settling = [
   ["n", "next discrepancy"], ["p", "previous discrepancy"], ["a", "accept the proposal"], ["c", "confirm as recorded"],
-  ["q", "raise a query"], ["s", "set missing"], ["e", "correct"], ["l", "later"], ["Enter", "the participant"],
+  ["q", "raise a query"], ["s", "set missing"], ["e", "correct"], ["r", "enter the site’s answer to a query"], ["l", "later"], ["Enter", "the participant"],
 ];
 
 export function showKeys() {

@@ -3,6 +3,7 @@
 import * as address from "./address.js";
 import { decisionForm, focusForm, valueDecision } from "./decide.js";
 import { $, button, fill, focusKey, make, restoreFocus } from "./page.js";
+import { reverse } from "./record.js";
 import * as server from "./server.js";
 import { study } from "./study.js";
 import { count, decisionWords, moment } from "./words.js";
@@ -110,6 +111,10 @@ function actionsFor(value, discrepancy) {
     has ? button("Set missing", offer("set-missing"), { "data-key": `act-set-missing-${value.column}` }) : null,
     has ? button("Confirm as recorded", offer("confirm"), { "data-key": `act-confirm-${value.column}` }) : null,
     has ? button("Read as…", offer("read-as"), { "data-key": `act-read-as-${value.column}` }) : null,
+    discrepancy?.state === "queried" ? button("Enter the answer", async () => {
+      const form = await answerForm(discrepancy);
+      if (form) offerForm(host, form, value.column);
+    }, { "data-key": `act-answer-${value.column}` }) : null,
     button("Raise a query", offer("query"), { "data-key": `act-query-${value.column}` })), host];
 }
 
@@ -133,6 +138,19 @@ export function keepRecord(participant, row, discrepancy) {
     after: () => `record ${row} in force; ${others.join(", ")} stays aside`,
     decisions: () => [{ kind: "keep-record", participant, row, discrepancy: discrepancy.id }],
   };
+}
+
+// The site's answer to the last query about a discrepancy, as a form; null where none was asked.
+export async function answerForm(discrepancy) {
+  const query = (await study.record()).filter((decision) => decision.kind === "query" && decision.discrepancy === discrepancy.id && decision.stands !== false).at(-1);
+  return query ? {
+    title: `The site’s answer to query ${query.number}`,
+    fields: [{ name: "text", label: "Answer, as the site gave it", long: true }],
+    says: () => `Asked: ${query.text ?? query.words} The answer changes no value; correct or confirm it afterwards.`,
+    reason: false,
+    action: "Record the answer",
+    decisions: (values) => [{ kind: "response", number: query.number, text: values.text.trim() }],
+  } : null;
 }
 
 function discrepancyPart(discrepancy) {
@@ -196,7 +214,9 @@ function draw(place) {
     data.decisions.length ? make("ol", { class: "plain decisions" }, data.decisions.map((decision) => make("li", {},
       make("span", { class: "count" }, String(decision.number)),
       make("div", {}, make("p", {}, decision.words ?? decisionWords(decision)),
-        make("p", { class: "quiet-text" }, [decision.by, moment(decision.at), decision.reason, decision.evidence].filter(Boolean).join(" · "))))))
+        make("p", { class: "quiet-text" }, [decision.by, moment(decision.at), decision.reason, decision.evidence].filter(Boolean).join(" · ")),
+        decision.stands === false ? make("p", { class: "quiet-text" }, "Reversed.")
+          : decision.reversible ? button("Reverse", () => reverse(decision), { class: "quiet", "data-key": `panel-reverse-${decision.number}`, "aria-label": `Reverse decision ${decision.number}` }) : null))))
       : make("p", { class: "quiet-text" }, "None concerns this participant."),
     make("h3", {}, "Counts in"),
     make("ul", { class: "plain counts" }, (data.analyses ?? []).map((analysis) => make("li", {},

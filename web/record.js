@@ -52,7 +52,7 @@ const arms = { pooled: "all participants together, no arms", coded: "arms as let
 
 export function blindingPart() {
   const now = study.agenda.blinding;
-  if (now === "unblinded") return null;
+  if (now === "unblinded" || study.agenda.has_arm === false) return null;
   const steps = now === "pooled" ? ["coded", "unblinded"] : ["unblinded"];
   return make("section", { class: "strip", "aria-label": "Blinding" },
     make("p", {}, make("strong", {}, "Blinding. "), `Now ${arms[now]}. Lifting it is a decision that cannot be reversed.`),

@@ -52,7 +52,7 @@ async function record(reason, fields = {}) {
   await form.locator("button[type=submit]").click();
   await page.waitForFunction((before) => Number(document.querySelector("#top .facts").innerText.match(/after decision (\d+)/)?.[1] ?? 0) > before, was);
   await settled(page);
-  assert.match(await text("#live"), /^Decisions? \d+.* recorded/);
+  await page.waitForFunction(() => /^Decisions? \d+.* recorded/.test(document.querySelector("#live").textContent));
   return versionShown();
 }
 
@@ -209,6 +209,27 @@ test("a query is a question to the site; the discrepancy waits for its answer", 
   await page.click('[data-key="do-q"]');
   await record("Not to be settled from here", { question: "What does the source say?" });
   assert.equal(await stateOf(found.id), "queried");
+  await goTo(page, `#discrepancies?${new URLSearchParams({ show: "all", at: found.id })}`);
+  await page.waitForSelector(`li.at[data-id="${found.id}"]`);
+  await page.click('[data-key="do-r"]');
+  await page.waitForSelector("form.decision");
+  assert.match(await text("form.decision"), /What does the source say\?/);
+  await record(null, { text: "The source says the same." });
+  const { decisions } = await json(page, "/exhibit/decisions.json");
+  assert.equal(decisions.at(-1).kind, "response");
+  assert.match(decisions.at(-1).words, /The source says the same\./);
+});
+
+test("a decision is reversed where it stands, in the participant's panel", async () => {
+  const { decisions } = await json(page, "/exhibit/decisions.json");
+  const correction = decisions.find((decision) => decision.kind === "correct" && decision.column === "age");
+  await goTo(page, `#baseline?panel=${correction.participant}`);
+  await page.click(`[data-key="panel-reverse-${correction.number}"]`);
+  await record("Not yet seen at the source");
+  await page.waitForFunction(() => /Reversed/.test(document.querySelector("#panel .decisions").innerText));
+  const answer = await json(page, `/exhibit/participant.json?participant=${correction.participant}`);
+  assert.equal(answer.values.find((value) => value.column === "age").current, "460");
+  await page.click('[data-key="panel-close"]');
 });
 
 test("a reversal is an entry of its own, and what it took back is open again", async () => {
