@@ -23,6 +23,7 @@ struct discrepancy {
     size_t participant_count;
     const unsigned *rows;       /* repeated participant: 1-based data records; else NULL */
     size_t row_count;
+    const char *file;           /* several records: the file's id in the plan, where it has one */
     enum discrepancy_state state;
     uint32_t settled_by; /* number of the decision, 0 where open or where no single one did it */
 };

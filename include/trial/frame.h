@@ -28,7 +28,10 @@ const char *cell_state_words(enum cell_state state); /* "code for missing" */
 struct column {
     atomic_uint references;
     struct arena arena;
-    size_t index; /* column of the cells */
+    const struct cells *cells; /* of the file it lives in; borrowed */
+    size_t index;              /* column of those cells */
+    size_t file;               /* of the plan's files */
+    size_t slot;               /* which of a participant's records it is read from: frame.place[slot] */
     enum variable_kind kind;
     const char **changed; /* [records] current text (NULL: set missing), where any cell has changed; else NULL: as received */
     uint32_t *origin;     /* [records] number of the decision that made it, 0: as received; NULL like changed */
@@ -43,11 +46,21 @@ struct column {
 };
 
 #define NO_RECORD ((size_t)-1)
+#define HELD_RECORD ((size_t)-2) /* in frame.place: several records, and none kept yet */
 struct participant {
     const char *id;
-    size_t record;       /* 0-based record in force, or NO_RECORD while held aside */
+    size_t record;       /* 0-based record of the first file in force, or NO_RECORD while held aside */
     size_t record_count; /* how many records bear this identifier */
     bool excluded_full, excluded_per_protocol;
+};
+
+/* How a file's records fit the participants of the first file; counts of records but for `doubled`. */
+struct join {
+    size_t matched;   /* of a participant of the first file (and a planned visit) */
+    size_t blank;     /* without an identifier */
+    size_t unmatched; /* of an identifier that the first file does not have */
+    size_t unplanned; /* of a visit that is not among the codes */
+    size_t doubled;   /* participants and visits with several records, none kept yet */
 };
 
 struct frame {
@@ -55,7 +68,7 @@ struct frame {
     struct arena arena;
     uint32_t version;
     const struct plan *plan;     /* borrowed from the study, as are cells, letters and data_sha256 */
-    const struct cells *cells;
+    const struct cells *cells;   /* [plan->file_count] */
     struct decision *decisions;  /* [version], a copy of the list; texts are borrowed */
     const bool *stands;          /* [version] which decisions stand */
     struct participant *participants;
@@ -63,7 +76,13 @@ struct frame {
     size_t held_aside;           /* records held aside: repeated, or without an identifier */
     struct column **columns;     /* [plan->variable_count], same order */
     struct column *arm;          /* NULL where the plan has none */
-    struct column *identifier;   /* text and origin only */
+    struct column *identifier;   /* of the first file; texts only, as are the next two */
+    struct column **identifiers; /* [files] identifiers[0] == identifier */
+    struct column **visits;      /* [files] visit codes; NULL where a file has one row per participant */
+    size_t **place;              /* [slots][participants] 0-based record of the slot's file, NO_RECORD or HELD_RECORD */
+    struct join *joins;          /* [files] */
+    size_t roster;               /* records that stand for participants in the first file: all of them, or with one row per
+                                    visit one for each identifier */
     enum scale *scales;          /* [outcomes] latest decision, else the plan */
     bool *flagged;               /* [outcomes * participants] */
     enum blinding blinding;
@@ -73,7 +92,7 @@ struct frame {
     char state_sha256[HASH_SIZE];
 };
 
-/* Builds the frame after `count` decisions; `previous` (may be NULL) lends columns that nothing has touched. With `check`
+/* Builds the frame after `count` decisions over `cells` (one for each file of the plan, in its order); `previous` (may be NULL) lends columns that nothing has touched. With `check`
  * (which needs previous) decisions beyond previous->version are held against the data on the way: a `from` that is not the
  * current text, an unknown column or participant, a lock ... are refused, the position among the new ones in fault.row.
  * Texts of decisions, plan, cells and letters are borrowed and must outlive the frame. */
@@ -87,12 +106,19 @@ void frame_release(struct frame *frame); /* NULL is fine */
 int frame_participant(const struct frame *frame, const char *id);
 /* Current text of a column in a 0-based record: NULL where set missing. */
 static inline const char *column_text(const struct frame *frame, const struct column *column, size_t record) {
-    return column->changed ? column->changed[record] : cells_at(frame->cells, record, column->index);
+    (void)frame;
+    return column->changed ? column->changed[record] : cells_at(column->cells, record, column->index);
 }
-/* Current text of a column for a participant: NULL where set missing or held aside. */
+/* The record a participant's value of a column is read from, NO_RECORD (no such visit) or HELD_RECORD. */
+static inline size_t frame_place(const struct frame *frame, const struct column *column, size_t participant) {
+    return frame->participants[participant].record == NO_RECORD ? HELD_RECORD : frame->place[column->slot][participant];
+}
+/* The text as received, NULL where the participant has no record to read it from. */
+const char *frame_received(const struct frame *frame, const struct column *column, size_t participant);
+/* Current text of a column for a participant: NULL where set missing, held aside or without a record of the visit. */
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant);
 /* The frame's column of that name (variable, arm, identifier) or NULL. */
 const struct column *frame_column(const struct frame *frame, const char *name);
-/* The 0-based records that bear a participant's identifier, in file order: at most `room` are written; returns how many. */
+/* The 0-based records of the first file that bear a participant's identifier, in file order: at most `room` are written; returns how many. */
 size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room);
 #endif

@@ -11,7 +11,7 @@
 
 enum scale { SCALE_LINEAR, SCALE_LOG10 };
 enum blinding { BLINDING_POOLED, BLINDING_CODED, BLINDING_UNBLINDED };
-enum variable_kind { VARIABLE_NUMBER, VARIABLE_CATEGORY, VARIABLE_EVENT, VARIABLE_ARM, VARIABLE_PARTICIPANT };
+enum variable_kind { VARIABLE_NUMBER, VARIABLE_CATEGORY, VARIABLE_EVENT, VARIABLE_ARM, VARIABLE_PARTICIPANT, VARIABLE_VISIT };
 enum { NOWHERE = -1 }; /* an index that points at nothing */
 
 struct texts {
@@ -28,6 +28,31 @@ struct level {
     const char *code, *label;
 };
 
+/* A file the plan expects. Without "files" in the plan there is one, with NULL id, one row per participant. */
+struct plan_file {
+    const char *id, *name;   /* name: of the file as it comes, NULL: any; files are then taken in the order given */
+    const char *sheet;       /* of a spreadsheet with several, NULL: the only one */
+    bool by_visit;           /* one row per participant and visit, else one per participant */
+    const char *participant; /* its column of the identifier, as in the header */
+    const char *visit;       /* by_visit: its column of the visit's code */
+    struct texts codes;      /* by_visit: the planned codes, in order of time */
+    const char *identifier_name, *visit_name; /* the same as decisions name them */
+    size_t first_slot;       /* see plan.slots */
+};
+
+/* Where a participant has at most one record: a file, or one visit of a file with one row per visit. */
+struct slot {
+    size_t file;
+    const char *code; /* NULL: the file has one row per participant */
+};
+
+/* Where a column lives. Its name in the plan, in decisions and in exhibits is COLUMN without files, else FILE.COLUMN, or
+ * FILE.COLUMN@CODE in a file with one row per visit. */
+struct place {
+    size_t file, slot;
+    const char *column; /* as in that file's header */
+};
+
 struct arm_level {
     const char *code, *label;
     bool reference; /* exactly one */
@@ -36,6 +61,7 @@ struct arm_level {
 
 struct visit {
     const char *label, *column;
+    struct place place;
     int variable; /* index into plan.variables */
 };
 
@@ -55,6 +81,7 @@ struct outcome {
 
 struct covariate {
     const char *id, *label, *unit, *column;
+    struct place place;
     bool number;          /* else a category */
     struct level *levels; /* categories: as the plan lists them; may be empty */
     size_t level_count;
@@ -67,6 +94,7 @@ struct covariate {
 
 struct event {
     const char *id, *label, *column;
+    struct place place;
     struct texts yes, no;
     const char *kind, *date, *reason; /* NULL where none */
     int variable;
@@ -76,6 +104,7 @@ struct event {
  * participant are not among them. */
 struct variable {
     const char *column, *label, *unit; /* of an outcome's visit: "Systolic blood pressure, 26 weeks" */
+    struct place place;
     enum variable_kind kind;
     int outcome, visit, covariate, event; /* where it comes from, else NOWHERE */
     struct range plausible, eligible;
@@ -84,8 +113,13 @@ struct variable {
 
 struct plan {
     struct arena arena;
-    const char *title, *participant;
+    struct plan_file *files; /* the first has every participant; the others are joined to it by their identifiers */
+    size_t file_count;       /* at least 1 */
+    struct slot *slots;
+    size_t slot_count;
+    const char *title, *participant; /* participant: the name of the first file's column of identifiers */
     const char *arm_column; /* NULL: no arms yet, only pooled exhibits work */
+    struct place arm_place;
     struct arm_level *arms;
     size_t arm_count, reference;
     struct texts missing_codes;
@@ -108,6 +142,7 @@ struct plan {
     enum blinding blinding;
     uint64_t seed;
     const char *site_column; /* NULL where none */
+    struct place site_place;
     struct variable *variables;
     size_t variable_count;
 };
@@ -120,6 +155,11 @@ int plan_outcome(const struct plan *plan, const char *id); /* index or NOWHERE *
 int plan_covariate(const struct plan *plan, const char *id);
 int plan_event(const struct plan *plan, const char *id);
 int plan_variable(const struct plan *plan, const char *column); /* index into variables or NOWHERE */
+/* The file whose identifiers (or, by_visit, visit codes) the name means: "FILE.COLUMN". NOWHERE where it means neither. */
+int plan_identifier_file(const struct plan *plan, const char *column);
+int plan_visit_file(const struct plan *plan, const char *column);
+/* The name of a file's column in decisions, without a visit: COLUMN or FILE.COLUMN. */
+const char *plan_column_name(struct arena *arena, const struct plan *plan, size_t file, const char *column);
 
 const char *scale_name(enum scale scale); /* "linear", "log10" */
 bool scale_read(const char *name, enum scale *scale);

@@ -53,6 +53,7 @@ struct decision {
     const char *body;         /* canonical JSON of the fields that have no column of their own, "{}" where none */
     /* taken out of the body for use: */
     const char *value, *meaning, *decimal, *outcome, *scale, *set, *text, *exhibit;
+    const char *file;   /* keep-record: id of the file, NULL for the first */
     const char *people; /* attending: the list as JSON */
     uint32_t row;      /* 1-based data record in the file, 0 where not given */
     uint32_t reverses; /* number of the decision that a reverse takes back */

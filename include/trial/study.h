@@ -13,6 +13,13 @@ struct study;
  * overwrite. `account` gets a short account of what was read, for a person (may be NULL). */
 bool study_create(const char *path, const char *data_name, const char *data, size_t data_length, const char *plan_name,
     const char *plan, size_t plan_length, const char *by, struct text *account, struct fault *fault);
+/* The same from several files, matched to the plan's "files" by name where the plan gives names, else in order. */
+struct study_file {
+    const char *name, *bytes;
+    size_t length;
+};
+bool study_create_from(const char *path, const struct study_file *files, size_t count, const char *plan_name, const char *plan,
+    size_t plan_length, const char *by, struct text *account, struct fault *fault);
 struct study *study_open(const char *path, struct fault *fault);
 void study_close(struct study *study); /* no frame of it may be in use */
 
@@ -30,9 +37,17 @@ bool study_decide(struct study *study, const char *by, const char *json, size_t 
 bool study_look(struct study *study, const struct frame *frame, const char *exhibit, const char *arguments, const char *by,
     struct fault *fault);
 
+struct study_file_facts {
+    const char *id; /* in the plan, NULL where it has no "files" */
+    const char *name, *sha256, *encoding, *delimiter;
+    size_t length, records, columns;
+};
 struct study_facts { /* for the identifying line; texts live as long as the study */
-    const char *data_name, *received_at, *data_sha256, *encoding, *delimiter;
-    size_t data_length;
+    const char *data_name, *received_at, *data_sha256, *encoding, *delimiter; /* of several files: names with
+                               commas between, the fingerprint of the list of fingerprints, the first file's encoding */
+    size_t data_length;    /* of all */
+    struct study_file_facts *files;
+    size_t file_count;
 };
 void study_facts(struct study *study, struct study_facts *facts);
 /* The head of the chain at a version (64 hexadecimal digits). */

@@ -54,6 +54,7 @@ void discrepancy_json(const struct discrepancy *discrepancy, struct json *json) 
     } else {
         json_field_null(json, "rows");
     }
+    json_field_string(json, "file", discrepancy->file);
     if (discrepancy->settled_by) {
         json_field_integer(json, "settled_by", discrepancy->settled_by);
     } else {

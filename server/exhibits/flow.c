@@ -48,7 +48,7 @@ static bool compute(struct view *view, struct fault *fault) {
     const struct outcome *outcome = &frame->plan->outcomes[view->outcome];
     struct flow_result *result = ARENA_NEW(view->arena, 1, struct flow_result);
     result->stages = ARENA_NEW(view->arena, FIXED_STAGES + outcome->visit_count + 1, struct stage);
-    add(view, result, "records", "records in the file", false)->total = frame->cells->records;
+    add(view, result, "records", "records in the file", false)->total = frame->roster;
     add(view, result, "held-aside", "records held aside", false)->total = frame->held_aside;
     struct stage *no_arm = add(view, result, "no-arm", "no arm that the plan lists", false);
     result->randomised = result->count;

@@ -47,15 +47,15 @@ static bool is_doubtful(const struct participant_result *result, const char *col
 
 static void take_values(struct view *view, struct participant_result *result) {
     const struct frame *frame = view->frame;
-    size_t record = frame->participants[result->participant].record;
     for (size_t v = 0; v < frame->plan->variable_count; v++) {
         struct value *value = &result->values[result->value_count++];
         const struct column *column = frame->columns[v];
         *value = (struct value){.variable = &frame->plan->variables[v], .column = column, .state = (enum cell_state)column->state[result->participant]};
         value->hidden = arms_hide_column(frame, value->variable->column);
-        if (record != NO_RECORD && !value->hidden) {
-            value->received = cells_at(frame->cells, record, column->index);
-            value->current = column_text(frame, column, record);
+        size_t record = frame_place(frame, column, result->participant);
+        if (record != NO_RECORD && record != HELD_RECORD && !value->hidden) {
+            value->received = frame_received(frame, column, result->participant);
+            value->current = frame_text(frame, column, result->participant);
             value->origin = column->origin ? column->origin[record] : 0;
             value->doubtful = is_doubtful(result, value->variable->column);
         } else if (!value->hidden) {

@@ -26,6 +26,9 @@ const char *discrepancy_state_name(enum discrepancy_state state) {
 enum check_kind {
     CHECK_REPEATED,
     CHECK_NO_IDENTIFIER,
+    CHECK_UNMATCHED,
+    CHECK_DOUBLE_VISIT,
+    CHECK_UNPLANNED_VISIT,
     CHECK_ARM,
     CHECK_MISSING_CODE,
     CHECK_VARIANT,
@@ -43,6 +46,12 @@ const struct check checks[] = {
         SEVERITY_MUST_SETTLE},
     [CHECK_NO_IDENTIFIER] = {"no-identifier", "Records without an identifier", "A record names no participant.",
         SEVERITY_MUST_SETTLE},
+    [CHECK_UNMATCHED] = {"unmatched-participant", "Identifiers the first file does not have",
+        "A record of another file names a participant who is not in the first.", SEVERITY_MUST_SETTLE},
+    [CHECK_DOUBLE_VISIT] = {"double-visit", "Several records of one visit", "A participant has more than one record of a visit or file.",
+        SEVERITY_MUST_SETTLE},
+    [CHECK_UNPLANNED_VISIT] = {"unplanned-visit", "Visits never planned", "A visit's code that the plan does not list.",
+        SEVERITY_WORTH_A_LOOK},
     [CHECK_ARM] = {"unlisted-arm", "Arms that are blank or not in the plan", "A participant has no arm the plan lists.",
         SEVERITY_MUST_SETTLE},
     [CHECK_MISSING_CODE] = {"missing-code", "Codes for missing", "A value that looks like a code for missing.",
@@ -139,6 +148,42 @@ static const char *number_words(struct finding *finding, double value) {
     return arena_format(finding->arena, "%.15g", value);
 }
 
+/* ---- texts that are variants of each other ---- */
+
+static bool is_letter(ucs4_t c) {
+    return uc_is_general_category(c, UC_LETTER);
+}
+
+/* The text that variants share: compatibility form, no case, no space or invisible characters, no hyphen, underscore or
+ * full stop after a letter but where a sign may be meant (A- and A+, 1.5 and 15 stay apart). */
+static const char *folded(struct arena *arena, const char *text) {
+    size_t length = 0;
+    uint8_t *made = u8_casefold((const uint8_t *)text, strlen(text), NULL, UNINORM_NFKC, NULL, &length);
+    if (!made) { /* not UTF-8, or nothing to fold */
+        return arena_text(arena, text);
+    }
+    char *kept = ARENA_NEW(arena, length + 1, char);
+    size_t used = 0;
+    ucs4_t before = 0;
+    for (size_t i = 0; i < length;) {
+        ucs4_t c = 0, next = 0;
+        size_t width = (size_t)u8_mbtouc(&c, made + i, length - i);
+        if (i + width < length) {
+            u8_mbtouc(&next, made + i + width, length - i - width);
+        }
+        bool joins = (c == '-' || c == '_' || c == 0x2010) && is_letter(before) && is_letter(next);
+        bool ends = c == '.' && is_letter(before) && (next == 0 || is_letter(next));
+        if (!joins && !ends && !uc_is_property_white_space(c) && !uc_is_general_category(c, UC_FORMAT)) {
+            memcpy(kept + used, made + i, width);
+            used += width;
+            before = c;
+        }
+        i += width;
+    }
+    free(made); /* libunistring's own allocation */
+    return kept;
+}
+
 /* ---- records ---- */
 
 static const char *differing_columns(struct finding *finding, const size_t *records, size_t count) {
@@ -150,7 +195,7 @@ static const char *differing_columns(struct finding *finding, const size_t *reco
         for (size_t i = 1; i < count && !differs; i++) {
             differs = strcmp(cells_at(frame->cells, records[0], c), cells_at(frame->cells, records[i], c)) != 0;
         }
-        if (!differs || arms_hide_column(frame, frame->cells->names[c])) {
+        if (!differs || arms_hide_column(frame, plan_column_name(finding->arena, frame->plan, 0, frame->cells->names[c]))) {
             continue;
         }
         if (used + 48 < sizeof words) {
@@ -202,6 +247,148 @@ static void check_no_identifier(struct finding *finding) {
         struct discrepancy *new = found(finding, CHECK_NO_IDENTIFIER, frame->plan->participant, "blank");
         new->message = arena_format(finding->arena, "%zu record%s no identifier, the first is record %zu; %s held aside and counted.", blank,
             blank == 1 ? " has" : "s have", first, blank == 1 ? "it is" : "they are");
+    }
+}
+
+/* ---- several files ---- */
+
+/* The identifier of the first file that an unmatched one is a variant of, NULL where there is none. */
+static const char *similar_identifier(struct finding *finding, struct map *folds, const char *id) {
+    const struct frame *frame = finding->frame;
+    if (!folds->room) {
+        for (size_t p = 0; p < frame->participant_count; p++) {
+            map_put(folds, folded(finding->arena, frame->participants[p].id), (int32_t)p);
+        }
+    }
+    int32_t found_at = map_get(folds, folded(finding->arena, id));
+    return found_at == NOWHERE ? NULL : frame->participants[found_at].id;
+}
+
+static void unmatched(struct finding *finding, struct map *folds, size_t f, size_t record, const char *id) {
+    const struct plan_file *file = &finding->frame->plan->files[f];
+    const char *column = file->identifier_name, *like = similar_identifier(finding, folds, id);
+    struct discrepancy *new = found(finding, CHECK_UNMATCHED, column, id);
+    new->value = id;
+    new->message = arena_format(finding->arena, "%s, record %zu: the identifier \"%s\" is not in the first file; what it says is joined to nobody, "
+        "and counted.", file->id, record + 1, id);
+    if (like) {
+        const char *const fields[][2] = {{"column", column}, {"from", id}, {"to", like}};
+        new->proposal = proposal(finding, "read-as", fields, 3);
+        new->proposal_words = arena_format(finding->arena, "Read \"%s\" as \"%s\"", id, like);
+    }
+}
+
+static void check_unmatched(struct finding *finding) {
+    const struct frame *frame = finding->frame;
+    struct map folds;
+    map_init(&folds);
+    for (size_t f = 1; f < frame->plan->file_count; f++) {
+        struct map seen;
+        map_init(&seen);
+        for (size_t r = 0; frame->joins[f].unmatched && r < frame->cells[f].records; r++) {
+            const char *id = column_text(frame, frame->identifiers[f], r);
+            bool blank = !id || id[strspn(id, " \t\r\n\f\v")] == '\0';
+            if (!blank && frame_participant(frame, id) == NOWHERE && map_get(&seen, id) == NOWHERE) {
+                map_put(&seen, id, 1);
+                unmatched(finding, &folds, f, r, id);
+            }
+        }
+        map_release(&seen);
+    }
+    map_release(&folds);
+}
+
+static size_t records_of(const struct frame *frame, size_t slot, const char *id, unsigned *rows, size_t room) {
+    size_t f = frame->plan->slots[slot].file, count = 0;
+    const char *code = frame->plan->slots[slot].code;
+    for (size_t r = 0; r < frame->cells[f].records && count < room; r++) {
+        const char *here = column_text(frame, frame->identifiers[f], r);
+        const char *visit = code ? column_text(frame, frame->visits[f], r) : NULL;
+        if (here && strcmp(here, id) == 0 && (!code || (visit && strcmp(visit, code) == 0))) {
+            rows[count++] = (unsigned)r + 1;
+        }
+    }
+    return count;
+}
+
+static void double_visit(struct finding *finding, size_t slot, const char *id) {
+    enum { SHOWN = 16 };
+    const struct frame *frame = finding->frame;
+    const struct plan_file *file = &frame->plan->files[frame->plan->slots[slot].file];
+    const char *code = frame->plan->slots[slot].code;
+    unsigned *rows = ARENA_NEW(finding->arena, SHOWN, unsigned);
+    size_t count = records_of(frame, slot, id, rows, SHOWN);
+    struct discrepancy *new = found(finding, CHECK_DOUBLE_VISIT, NULL,
+        code ? arena_format(finding->arena, "%s@%s/%s", file->id, code, id) : arena_format(finding->arena, "%s/%s", file->id, id));
+    concerns(finding, new, id);
+    new->rows = rows;
+    new->row_count = count;
+    new->file = file->id;
+    new->message = arena_format(finding->arena, "%s has %zu records of %s%s%s (the first is record %u); all are held aside until one is kept.", id,
+        count, file->id, code ? " at visit " : "", code ? code : "", rows[0]);
+}
+
+static void check_double_visits(struct finding *finding) {
+    const struct frame *frame = finding->frame;
+    for (size_t s = frame->plan->files[0].by_visit ? 0 : 1; s < frame->plan->slot_count; s++) {
+        bool any = frame->joins[frame->plan->slots[s].file].doubled > 0;
+        for (size_t p = 0; any && p < frame->participant_count; p++) {
+            if (frame->place[s][p] == HELD_RECORD) {
+                double_visit(finding, s, frame->participants[p].id);
+            }
+        }
+    }
+}
+
+static const char *similar_code(struct finding *finding, const struct plan_file *file, const char *code) {
+    for (size_t c = 0; c < file->codes.count; c++) {
+        if (strcmp(folded(finding->arena, file->codes.item[c]), folded(finding->arena, code)) == 0) {
+            return file->codes.item[c];
+        }
+    }
+    return NULL;
+}
+
+static void unplanned_visit(struct finding *finding, const struct plan_file *file, const char *code, size_t count) {
+    const char *like = similar_code(finding, file, code);
+    struct discrepancy *new = found(finding, CHECK_UNPLANNED_VISIT, file->visit_name, code);
+    new->value = code;
+    new->message = arena_format(finding->arena, "%s reads the visit \"%s\" %s, which is not among the planned codes; those records are in no "
+        "analysis, and counted.", file->id, code, times(finding, count));
+    if (like) {
+        const char *const fields[][2] = {{"column", file->visit_name}, {"from", code}, {"to", like}};
+        new->proposal = proposal(finding, "read-as", fields, 3);
+        new->proposal_words = arena_format(finding->arena, "Read \"%s\" as \"%s\"", code, like);
+    }
+}
+
+static void check_unplanned_visits(struct finding *finding) {
+    enum { MOST = 1000 }; /* more kinds of visit than that are no kinds of visit */
+    const struct frame *frame = finding->frame;
+    for (size_t f = 0; f < frame->plan->file_count; f++) {
+        const struct plan_file *file = &frame->plan->files[f];
+        struct map places;
+        map_init(&places);
+        const char *codes[MOST];
+        size_t counts[MOST], kinds = 0;
+        for (size_t c = 0; c < file->codes.count; c++) {
+            map_put(&places, file->codes.item[c], MOST);
+        }
+        for (size_t r = 0; file->by_visit && r < frame->cells[f].records; r++) {
+            const char *code = column_text(frame, frame->visits[f], r);
+            int32_t place = code ? map_put(&places, code, kinds < MOST ? (int32_t)kinds : MOST) : MOST;
+            if (place == (int32_t)kinds && place != MOST) {
+                codes[kinds] = code;
+                counts[kinds++] = 0;
+            }
+            if (place != MOST) {
+                counts[place]++;
+            }
+        }
+        for (size_t k = 0; k < kinds; k++) {
+            unplanned_visit(finding, file, codes[k], counts[k]);
+        }
+        map_release(&places);
     }
 }
 
@@ -385,40 +572,6 @@ static void settled_codes(struct finding *finding, const struct column *column, 
 }
 
 /* ---- categories ---- */
-
-static bool is_letter(ucs4_t c) {
-    return uc_is_general_category(c, UC_LETTER);
-}
-
-/* The text that variants share: compatibility form, no case, no space or invisible characters, no hyphen, underscore or
- * full stop after a letter but where a sign may be meant (A- and A+, 1.5 and 15 stay apart). */
-static const char *folded(struct arena *arena, const char *text) {
-    size_t length = 0;
-    uint8_t *made = u8_casefold((const uint8_t *)text, strlen(text), NULL, UNINORM_NFKC, NULL, &length);
-    if (!made) { /* not UTF-8, or nothing to fold */
-        return arena_text(arena, text);
-    }
-    char *kept = ARENA_NEW(arena, length + 1, char);
-    size_t used = 0;
-    ucs4_t before = 0;
-    for (size_t i = 0; i < length;) {
-        ucs4_t c = 0, next = 0;
-        size_t width = (size_t)u8_mbtouc(&c, made + i, length - i);
-        if (i + width < length) {
-            u8_mbtouc(&next, made + i + width, length - i - width);
-        }
-        bool joins = (c == '-' || c == '_' || c == 0x2010) && is_letter(before) && is_letter(next);
-        bool ends = c == '.' && is_letter(before) && (next == 0 || is_letter(next));
-        if (!joins && !ends && !uc_is_property_white_space(c) && !uc_is_general_category(c, UC_FORMAT)) {
-            memcpy(kept + used, made + i, width);
-            used += width;
-            before = c;
-        }
-        i += width;
-    }
-    free(made); /* libunistring's own allocation */
-    return kept;
-}
 
 struct spelling { /* one code as variants see it */
     const char *key;
@@ -696,6 +849,9 @@ static void run(struct finding *finding) {
     finding->hidden = hidden;
     check_repeated(finding);
     check_no_identifier(finding);
+    check_unmatched(finding);
+    check_double_visits(finding);
+    check_unplanned_visits(finding);
     check_arm(finding);
     for (int check = CHECK_MISSING_CODE; check < CHECK_COUNT; check++) {
         for (size_t v = 0; v < plan->variable_count; v++) {

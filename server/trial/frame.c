@@ -96,6 +96,7 @@ static bool is_blank(const char *text) {
 
 static void build_roster(struct build *build) {
     struct frame *frame = build->frame;
+    bool by_visit = frame->plan->files[0].by_visit;
     size_t records = frame->cells->records, used = 0;
     struct roster_row *rows = memory_new(records, sizeof *rows);
     for (size_t r = 0; r < records; r++) {
@@ -116,6 +117,9 @@ static void build_roster(struct build *build) {
     for (size_t i = 0; i < used; i++) {
         struct participant *last = frame->participant_count ? &frame->participants[frame->participant_count - 1] : NULL;
         if (last && strcmp(last->id, rows[i].id) == 0) {
+            if (by_visit) {
+                continue; /* rows of one participant are visits, not repetitions */
+            }
             last->record_count++;
             last->record = NO_RECORD;
         } else {
@@ -123,6 +127,7 @@ static void build_roster(struct build *build) {
         }
     }
     memory_free(rows);
+    frame->roster = by_visit ? frame->participant_count + frame->held_aside : records;
     for (size_t i = 0; i < frame->participant_count; i++) {
         frame->held_aside += frame->participants[i].record_count > 1 ? frame->participants[i].record_count : 0;
     }
@@ -191,8 +196,13 @@ size_t frame_records(const struct frame *frame, size_t participant, size_t *reco
 
 /* ---- columns: replay of the decisions about them ---- */
 
+/* FILE.COLUMN in a file with one row per visit means the column at every visit. */
 static bool about_column(const struct decision *decision, const char *name) {
-    return decision->column && decision->kind <= DECISION_CONFIRM && strcmp(decision->column, name) == 0;
+    if (!decision->column || decision->kind > DECISION_CONFIRM) {
+        return false;
+    }
+    size_t length = strlen(decision->column);
+    return strncmp(decision->column, name, length) == 0 && (name[length] == '\0' || name[length] == '@');
 }
 
 /* Whether any decision about the column has come, gone or come back since the previous frame. */
@@ -217,12 +227,13 @@ static bool roster_touched(const struct build *build) {
 }
 
 static void put_cell(struct build *build, struct column *column, size_t record, const char *text, uint32_t number) {
-    size_t records = build->frame->cells->records;
+    (void)build;
+    size_t records = column->cells->records;
     if (!column->origin) {
         column->origin = ARENA_NEW(&column->arena, records, uint32_t);
         column->changed = ARENA_NEW(&column->arena, records, const char *);
         for (size_t r = 0; r < records; r++) {
-            column->changed[r] = cells_at(build->frame->cells, r, column->index);
+            column->changed[r] = cells_at(column->cells, r, column->index);
         }
     }
     column->changed[record] = text;
@@ -236,7 +247,7 @@ static bool same_text(const char *a, const char *b) {
 /* How many of the current texts read so. */
 static size_t count_text(const struct build *build, const struct column *column, const char *text) {
     size_t count = 0;
-    for (size_t r = 0; r < build->frame->cells->records; r++) {
+    for (size_t r = 0; r < column->cells->records; r++) {
         count += same_text(column_text(build->frame, column, r), text);
     }
     return count;
@@ -246,7 +257,7 @@ static size_t count_text(const struct build *build, const struct column *column,
 static size_t record_of_identifier(
     const struct frame *frame, const struct column *column, const char *id, const char **why) {
     size_t found = NO_RECORD;
-    for (size_t r = 0; r < frame->cells->records; r++) {
+    for (size_t r = 0; r < column->cells->records; r++) {
         if (same_text(column_text(frame, column, r), id) && found != NO_RECORD) {
             *why = "is about an identifier that several records bear; say which one with \"row\"";
             return NO_RECORD;
@@ -261,11 +272,11 @@ static size_t record_of_identifier(
 static size_t record_meant(
     const struct build *build, const struct decision *decision, const struct column *column, const char **why) {
     const struct frame *frame = build->frame;
-    const struct column *identifier = column->kind == VARIABLE_PARTICIPANT ? column : frame->identifier;
+    const struct column *identifier = column->kind == VARIABLE_PARTICIPANT ? column : frame->identifiers[column->file];
     if (decision->row) {
         size_t record = decision->row - 1;
         *why = "names a row that is not one of the participant's records";
-        bool fits = record < frame->cells->records &&
+        bool fits = record < column->cells->records &&
                     (!is_new(build, (size_t)(decision - frame->decisions)) || same_text(column_text(frame, identifier, record), decision->participant));
         return fits ? record : NO_RECORD;
     }
@@ -275,7 +286,9 @@ static size_t record_meant(
     int who = participant_meant(build, (size_t)(decision - frame->decisions));
     *why = who == NOWHERE ? "names a participant who is not in the file" :
                             "is about a participant with several records; say which one with \"row\", or keep one first";
-    return who == NOWHERE ? NO_RECORD : frame->participants[who].record;
+    size_t record = who == NOWHERE ? NO_RECORD : frame_place(frame, column, (size_t)who);
+    *why = who != NOWHERE && record == NO_RECORD ? "is about a visit of which the participant has no record" : *why;
+    return record == HELD_RECORD ? NO_RECORD : record;
 }
 
 static bool from_differs(struct build *build, size_t i, const char *now) {
@@ -311,7 +324,7 @@ static bool apply_read_as(struct build *build, size_t i, struct column *column) 
     if (is_new(build, i) && count_text(build, column, decision->from) == 0) {
         return refuse(build, i, "reads a code as another, but no value of the column now reads so");
     }
-    for (size_t r = 0; r < build->frame->cells->records; r++) {
+    for (size_t r = 0; r < column->cells->records; r++) {
         if (same_text(column_text(build->frame, column, r), decision->from)) {
             put_cell(build, column, r, decision->to, decision->number);
         }
@@ -449,9 +462,10 @@ static void interpret_category(const struct frame *frame, struct column *column,
     const char **extra = NULL;
     for (size_t p = 0; p < frame->participant_count; p++) {
         const char *text = frame_text(frame, column, p);
-        bool there = frame->participants[p].record != NO_RECORD;
+        size_t place = frame_place(frame, column, p);
         column->level[p] = NOWHERE;
-        column->state[p] = !there ? CELL_HELD_ASIDE :
+        column->state[p] = place == HELD_RECORD ? CELL_HELD_ASIDE :
+            place == NO_RECORD    ? CELL_BLANK :
             !text                 ? CELL_SET_MISSING :
             is_blank(text)        ? CELL_BLANK :
             is_code(codes, text)  ? CELL_MISSING_CODE :
@@ -494,8 +508,9 @@ static void interpret_category(const struct frame *frame, struct column *column,
 static void interpret_cell(const struct frame *frame, struct column *column, size_t p, const struct codes *codes,
     const struct event *event, char sign) {
     const char *text = frame_text(frame, column, p);
-    if (frame->participants[p].record == NO_RECORD) {
-        column->state[p] = CELL_HELD_ASIDE;
+    size_t place = frame_place(frame, column, p);
+    if (place == HELD_RECORD || place == NO_RECORD) {
+        column->state[p] = place == HELD_RECORD ? CELL_HELD_ASIDE : CELL_BLANK;
     } else if (!text) {
         column->state[p] = CELL_SET_MISSING;
     } else if (event) {
@@ -553,11 +568,14 @@ static void interpret(struct build *build, struct column *column, const char *na
     hash_column(frame, column);
 }
 
-static struct column *column_new(const struct frame *frame, const char *name, enum variable_kind kind) {
+static struct column *column_new(const struct frame *frame, const struct place *place, enum variable_kind kind) {
     struct column *column = memory_new(1, sizeof *column);
     atomic_init(&column->references, 1);
     arena_init(&column->arena);
-    column->index = cells_column(frame->cells, name);
+    column->file = place->file;
+    column->slot = place->slot;
+    column->cells = &frame->cells[place->file];
+    column->index = cells_column(column->cells, place->column);
     column->kind = kind;
     return column;
 }
@@ -576,23 +594,169 @@ static void column_release(struct column *column) {
 
 /* ---- the parts of a frame ---- */
 
-static bool build_identifier(struct build *build) {
-    struct frame *frame = build->frame;
-    const char *name = frame->plan->participant;
-    if (build->previous && !column_touched(build, name)) {
-        frame->identifier = column_retain(build->previous->identifier);
+/* A column of texts only, shared where nothing has touched it. */
+static bool build_texts(struct build *build, const char *name, const struct place *place, enum variable_kind kind,
+    struct column *before, struct column **column) {
+    if (before && !column_touched(build, name)) {
+        *column = column_retain(before);
         return true;
     }
-    frame->identifier = column_new(frame, name, VARIABLE_PARTICIPANT);
-    return replay(build, frame->identifier, name);
+    *column = column_new(build->frame, place, kind);
+    return replay(build, *column, name);
+}
+
+static bool build_identifiers(struct build *build) {
+    struct frame *frame = build->frame;
+    const struct plan *plan = frame->plan;
+    frame->identifiers = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
+    frame->visits = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
+    for (size_t f = 0; f < plan->file_count; f++) {
+        const struct plan_file *file = &plan->files[f];
+        struct place identifier = {f, file->first_slot, file->participant}, visit = {f, file->first_slot, file->visit};
+        const struct frame *previous = build->previous;
+        if (!build_texts(build, file->identifier_name, &identifier, VARIABLE_PARTICIPANT,
+                previous ? previous->identifiers[f] : NULL, &frame->identifiers[f]) ||
+            (file->by_visit && !build_texts(build, file->visit_name, &visit, VARIABLE_VISIT, previous ? previous->visits[f] : NULL,
+                                   &frame->visits[f]))) {
+            return false;
+        }
+    }
+    frame->identifier = frame->identifiers[0];
+    return true;
+}
+
+/* ---- the join: which record of each file and visit is a participant's ---- */
+
+struct joining {
+    struct frame *frame;
+    struct map participants; /* identifier to index */
+    struct map codes;        /* visit code to place among the file's codes */
+};
+
+static void join_record(struct joining *joining, size_t f, size_t record) {
+    struct frame *frame = joining->frame;
+    const struct plan_file *file = &frame->plan->files[f];
+    struct join *join = &frame->joins[f];
+    const char *id = column_text(frame, frame->identifiers[f], record);
+    const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
+    if (!id || is_blank(id)) {
+        join->blank++;
+        return;
+    }
+    int32_t who = map_get(&joining->participants, id), visit = file->by_visit ? code ? map_get(&joining->codes, code) : NOWHERE : 0;
+    if (who == NOWHERE) {
+        join->unmatched++;
+        return;
+    }
+    if (visit == NOWHERE) {
+        join->unplanned++;
+        return;
+    }
+    join->matched++;
+    size_t *place = &frame->place[file->first_slot + (size_t)visit][who];
+    join->doubled += *place != NO_RECORD && *place != HELD_RECORD ? 1 : 0;
+    *place = *place == NO_RECORD ? record : HELD_RECORD;
+}
+
+static void join_file(struct joining *joining, size_t f) {
+    const struct plan_file *file = &joining->frame->plan->files[f];
+    map_init(&joining->codes);
+    for (size_t c = 0; c < file->codes.count; c++) {
+        map_put(&joining->codes, file->codes.item[c], (int32_t)c);
+    }
+    for (size_t r = 0; r < joining->frame->cells[f].records; r++) {
+        join_record(joining, f, r);
+    }
+    map_release(&joining->codes);
+}
+
+static void build_places(struct build *build) {
+    struct frame *frame = build->frame;
+    const struct plan *plan = frame->plan;
+    size_t n = frame->participant_count;
+    frame->place = ARENA_NEW(&frame->arena, plan->slot_count, size_t *);
+    frame->joins = ARENA_NEW(&frame->arena, plan->file_count, struct join);
+    for (size_t s = 0; s < plan->slot_count; s++) {
+        frame->place[s] = ARENA_NEW(&frame->arena, n, size_t);
+        for (size_t p = 0; p < n; p++) {
+            frame->place[s][p] = s == 0 && !plan->files[0].by_visit ? frame->participants[p].record : NO_RECORD;
+        }
+    }
+    frame->joins[0].matched = frame->cells[0].records;
+    if (plan->file_count == 1 && !plan->files[0].by_visit) {
+        return;
+    }
+    struct joining joining = {.frame = frame};
+    map_init(&joining.participants);
+    for (size_t p = 0; p < n; p++) {
+        map_put(&joining.participants, frame->participants[p].id, (int32_t)p);
+    }
+    for (size_t f = plan->files[0].by_visit ? 0 : 1; f < plan->file_count; f++) {
+        frame->joins[f].matched = 0;
+        join_file(&joining, f);
+    }
+    map_release(&joining.participants);
+}
+
+/* The file a keep-record is about: the first unless it says. */
+static int file_meant(const struct frame *frame, const struct decision *decision) {
+    for (size_t f = 0; f < frame->plan->file_count; f++) {
+        if (!decision->file || (frame->plan->files[f].id && strcmp(frame->plan->files[f].id, decision->file) == 0)) {
+            return (int)f;
+        }
+    }
+    return NOWHERE;
+}
+
+static size_t slot_of_record(const struct frame *frame, size_t f, size_t record) {
+    const struct plan_file *file = &frame->plan->files[f];
+    const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
+    for (size_t c = 0; code && c < file->codes.count; c++) {
+        if (strcmp(file->codes.item[c], code) == 0) {
+            return file->first_slot + c;
+        }
+    }
+    return file->by_visit ? NO_RECORD : file->first_slot;
+}
+
+/* keep-record in a file beside the first, or of one visit: that record stands. */
+static bool apply_keep_of_file(struct build *build, size_t i, size_t f) {
+    struct frame *frame = build->frame;
+    const struct decision *decision = &frame->decisions[i];
+    size_t record = decision->row - 1;
+    const char *there = record < frame->cells[f].records ? column_text(frame, frame->identifiers[f], record) : NULL;
+    int who = there ? frame_participant(frame, there) : NOWHERE;
+    size_t slot = there ? slot_of_record(frame, f, record) : NO_RECORD;
+    if (is_new(build, i) && (who == NOWHERE || strcmp(there, decision->participant) != 0 || slot == NO_RECORD)) {
+        return refuse(build, i, "names a row that is not one of the participant's records at a planned visit of that file");
+    }
+    if (who != NOWHERE && slot != NO_RECORD) {
+        frame->joins[f].doubled -= frame->place[slot][who] == HELD_RECORD ? 1 : 0;
+        frame->place[slot][who] = record;
+    }
+    return true;
 }
 
 static bool build_participants(struct build *build) {
     struct frame *frame = build->frame;
     build_roster(build);
-    for (size_t i = 0; i < build->count; i++) {
-        if (build->stands[i] && frame->decisions[i].kind == DECISION_KEEP_RECORD && !apply_keep(build, i)) {
-            return false;
+    bool whole = !frame->plan->files[0].by_visit;
+    for (size_t pass = 0; pass < 2; pass++) { /* records of the first file first: places start from them */
+        if (pass == 1) {
+            build_places(build);
+        }
+        for (size_t i = 0; i < build->count; i++) {
+            if (!build->stands[i] || frame->decisions[i].kind != DECISION_KEEP_RECORD) {
+                continue;
+            }
+            int f = file_meant(frame, &frame->decisions[i]);
+            if (f == NOWHERE) {
+                return !is_new(build, i) || refuse(build, i, "names a file that is not in the plan");
+            }
+            bool first = f == 0 && whole;
+            if (first == (pass == 0) && !(first ? apply_keep(build, i) : apply_keep_of_file(build, i, (size_t)f))) {
+                return false;
+            }
         }
     }
     return true;
@@ -611,13 +775,13 @@ static void list_levels(struct column *column, const struct plan *plan, int cova
     }
 }
 
-static bool build_column(struct build *build, const char *name, enum variable_kind kind, int covariate, int event,
-    struct column *before, bool share, struct column **column) {
+static bool build_column(struct build *build, const char *name, const struct place *place, enum variable_kind kind,
+    int covariate, int event, struct column *before, bool share, struct column **column) {
     if (before && share && !column_touched(build, name)) {
         *column = column_retain(before);
         return true;
     }
-    *column = column_new(build->frame, name, kind);
+    *column = column_new(build->frame, place, kind);
     list_levels(*column, build->frame->plan, covariate);
     if (!replay(build, *column, name)) {
         return false;
@@ -629,16 +793,19 @@ static bool build_column(struct build *build, const char *name, enum variable_ki
 static bool build_columns(struct build *build) {
     struct frame *frame = build->frame;
     const struct plan *plan = frame->plan;
-    bool share = build->previous && build->previous->identifier == frame->identifier && !roster_touched(build);
+    bool share = build->previous && !roster_touched(build);
+    for (size_t f = 0; share && f < plan->file_count; f++) {
+        share = build->previous->identifiers[f] == frame->identifiers[f] && build->previous->visits[f] == frame->visits[f];
+    }
     frame->columns = ARENA_NEW(&frame->arena, plan->variable_count, struct column *);
     for (size_t v = 0; v < plan->variable_count; v++) {
         const struct variable *variable = &plan->variables[v];
-        if (!build_column(build, variable->column, variable->kind, variable->covariate, variable->event,
+        if (!build_column(build, variable->column, &variable->place, variable->kind, variable->covariate, variable->event,
                 build->previous ? build->previous->columns[v] : NULL, share, &frame->columns[v])) {
             return false;
         }
     }
-    return !plan->arm_column || build_column(build, plan->arm_column, VARIABLE_ARM, NOWHERE, NOWHERE,
+    return !plan->arm_column || build_column(build, plan->arm_column, &plan->arm_place, VARIABLE_ARM, NOWHERE, NOWHERE,
                                     build->previous ? build->previous->arm : NULL, share, &frame->arm);
 }
 
@@ -740,17 +907,23 @@ static bool column_fits(struct build *build, size_t i) {
     const struct frame *frame = build->frame;
     const struct decision *decision = &frame->decisions[i];
     const struct plan *plan = frame->plan;
-    bool known = plan_variable(plan, decision->column) != NOWHERE || strcmp(decision->column, plan->participant) == 0 ||
-                 (plan->arm_column && strcmp(decision->column, plan->arm_column) == 0);
+    bool known = plan_identifier_file(plan, decision->column) != NOWHERE || plan_visit_file(plan, decision->column) != NOWHERE ||
+                 (plan->arm_column && about_column(decision, plan->arm_column));
+    for (size_t v = 0; v < plan->variable_count && !known; v++) {
+        known = about_column(decision, plan->variables[v].column);
+    }
     if (!known) {
         return refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
             decision->column));
     }
-    int variable = plan_variable(plan, decision->column);
-    if (decision->kind == DECISION_NUMBER_FORMAT && (variable == NOWHERE || plan->variables[variable].kind != VARIABLE_NUMBER)) {
+    bool number = false;
+    for (size_t v = 0; v < plan->variable_count && !number; v++) {
+        number = plan->variables[v].kind == VARIABLE_NUMBER && about_column(decision, plan->variables[v].column);
+    }
+    if (decision->kind == DECISION_NUMBER_FORMAT && !number) {
         return refuse(build, i, arena_format(&build->frame->arena, "is about the column \"%.60s\", which holds no numbers", decision->column));
     }
-    return decision->kind != DECISION_MISSING_CODE || strcmp(decision->column, plan->participant) != 0 ||
+    return decision->kind != DECISION_MISSING_CODE || plan_identifier_file(plan, decision->column) == NOWHERE ||
            refuse(build, i, "is about the identifier, which cannot be missing; correct it, or set it missing to hold the record aside");
 }
 
@@ -823,9 +996,20 @@ static void hash_state(struct frame *frame) {
         hash_field(&hash, who->record == NO_RECORD ? "held-aside" : who->excluded_full ? "excluded" :
             who->excluded_per_protocol ? "excluded-per-protocol" : "in");
     }
-    for (size_t v = 0; v < frame->plan->variable_count; v++) {
-        hash_field(&hash, frame->plan->variables[v].column);
-        hash_field(&hash, frame->columns[v]->hash);
+    /* By what the values are, not by where they came from: the same data in other files have the same fingerprint. */
+    for (size_t i = 0; i < frame->plan->covariate_count; i++) {
+        hash_field(&hash, frame->plan->covariates[i].id);
+        hash_field(&hash, frame->columns[frame->plan->covariates[i].variable]->hash);
+    }
+    for (size_t i = 0; i < frame->plan->outcome_count; i++) {
+        for (size_t v = 0; v < frame->plan->outcomes[i].visit_count; v++) {
+            hash_field(&hash, frame->plan->outcomes[i].visits[v].label);
+            hash_field(&hash, frame->columns[frame->plan->outcomes[i].visits[v].variable]->hash);
+        }
+    }
+    for (size_t i = 0; i < frame->plan->event_count; i++) {
+        hash_field(&hash, frame->plan->events[i].id);
+        hash_field(&hash, frame->columns[frame->plan->events[i].variable]->hash);
     }
     hash_field(&hash, frame->arm ? frame->arm->hash : NULL);
     for (size_t i = 0; i < frame->plan->outcome_count; i++) {
@@ -856,7 +1040,7 @@ struct frame *frame_build(const struct plan *plan, const struct cells *cells, co
     frame->decisions = copy;
     frame->stands = stands;
     struct build build = {frame, previous, check && previous, count, stands, fault};
-    if (!new_ones_fit(&build) || !build_identifier(&build) || !build_participants(&build) || !build_columns(&build) ||
+    if (!new_ones_fit(&build) || !build_identifiers(&build) || !build_participants(&build) || !build_columns(&build) ||
         !build_settings(&build)) {
         frame_release(frame);
         return NULL;
@@ -878,20 +1062,29 @@ void frame_release(struct frame *frame) {
         column_release(frame->columns[v]);
     }
     column_release(frame->arm);
-    column_release(frame->identifier);
+    for (size_t f = 0; frame->identifiers && f < frame->plan->file_count; f++) {
+        column_release(frame->identifiers[f]);
+        column_release(frame->visits[f]);
+    }
     arena_release(&frame->arena);
     memory_free(frame);
 }
 
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant) {
-    size_t record = frame->participants[participant].record;
-    return record == NO_RECORD ? NULL : column_text(frame, column, record);
+    size_t record = frame_place(frame, column, participant);
+    return record == NO_RECORD || record == HELD_RECORD ? NULL : column_text(frame, column, record);
+}
+
+const char *frame_received(const struct frame *frame, const struct column *column, size_t participant) {
+    size_t record = frame_place(frame, column, participant);
+    return record == NO_RECORD || record == HELD_RECORD ? NULL : cells_at(column->cells, record, column->index);
 }
 
 const struct column *frame_column(const struct frame *frame, const char *name) {
     int variable = plan_variable(frame->plan, name);
     return variable != NOWHERE                                                       ? frame->columns[variable] :
         frame->plan->arm_column && strcmp(frame->plan->arm_column, name) == 0        ? frame->arm :
-        strcmp(frame->plan->participant, name) == 0                                  ? frame->identifier :
+        plan_identifier_file(frame->plan, name) != NOWHERE                           ? frame->identifiers[plan_identifier_file(frame->plan, name)] :
+        plan_visit_file(frame->plan, name) != NOWHERE                                ? frame->visits[plan_visit_file(frame->plan, name)] :
                                                                                        NULL;
 }

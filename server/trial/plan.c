@@ -166,6 +166,163 @@ static bool read_choice(struct reader *reader, const cJSON *object, const char *
     return true;
 }
 
+static bool read_list(struct reader *reader, const cJSON *root, const char *key, void **memory, size_t size,
+    bool (*read)(struct reader *, const cJSON *, const char *)) {
+    const cJSON *list = member(root, key);
+    if (!list) {
+        return true;
+    }
+    if (!cJSON_IsArray(list)) {
+        return wrong(reader, key, "must be a list in square brackets");
+    }
+    *memory = arena_new(&reader->plan->arena, (size_t)cJSON_GetArraySize(list), size);
+    size_t index = 0;
+    for (const cJSON *item = list->child; item; item = item->next) {
+        if (!read(reader, item, at_index(reader, key, index++))) {
+            return false;
+        }
+    }
+    return true;
+}
+
+/* ---- files, and where columns live in them ---- */
+
+static bool read_file(struct reader *reader, const cJSON *item, const char *path) {
+    struct plan *plan = reader->plan;
+    struct plan_file *file = &plan->files[plan->file_count];
+    if (!keys_known(reader, item, path, "id name sheet layout participant visit codes") ||
+        !read_text(reader, item, path, "id", true, &file->id) || !read_text(reader, item, path, "name", false, &file->name) ||
+        !read_text(reader, item, path, "sheet", false, &file->sheet) ||
+        !read_choice(reader, item, path, "layout", "participant", "visit", &file->by_visit) ||
+        !read_text(reader, item, path, "participant", true, &file->participant) ||
+        !read_text(reader, item, path, "visit", file->by_visit, &file->visit) ||
+        !read_texts(reader, item, path, "codes", &file->codes)) {
+        return false;
+    }
+    if (strpbrk(file->id, ".@,=& ")) {
+        return wrong(reader, join(reader, path, "id"), "must be one word without . @ , = or &");
+    }
+    for (size_t i = 0; i < plan->file_count; i++) {
+        if (strcmp(plan->files[i].id, file->id) == 0) {
+            return wrong(reader, join(reader, path, "id"), "is that of a file before it; each file needs its own");
+        }
+    }
+    if (file->by_visit != (file->codes.count > 0)) {
+        return wrong(reader, join(reader, path, "codes"), file->by_visit ?
+            "must list the planned visit codes, in order of time" : "belongs to the layout \"visit\"");
+    }
+    file->identifier_name = arena_format(&plan->arena, "%s.%s", file->id, file->participant);
+    file->visit_name = file->by_visit ? arena_format(&plan->arena, "%s.%s", file->id, file->visit) : NULL;
+    plan->file_count++;
+    return true;
+}
+
+/* Slots: one for a file with a row per participant, one for each planned visit of a file with a row per visit. */
+static void settle_slots(struct plan *plan) {
+    size_t room = 0;
+    for (size_t f = 0; f < plan->file_count; f++) {
+        room += plan->files[f].by_visit ? plan->files[f].codes.count : 1;
+    }
+    plan->slots = ARENA_NEW(&plan->arena, room, struct slot);
+    for (size_t f = 0; f < plan->file_count; f++) {
+        struct plan_file *file = &plan->files[f];
+        file->first_slot = plan->slot_count;
+        for (size_t c = 0; c < (file->by_visit ? file->codes.count : 1); c++) {
+            plan->slots[plan->slot_count++] = (struct slot){f, file->by_visit ? file->codes.item[c] : NULL};
+        }
+    }
+}
+
+static bool settle_files(struct reader *reader, const cJSON *root) {
+    struct plan *plan = reader->plan;
+    if (!member(root, "files")) {
+        plan->files = ARENA_NEW(&plan->arena, 1, struct plan_file);
+        plan->files[0].participant = plan->files[0].identifier_name = plan->participant;
+        plan->file_count = 1;
+        settle_slots(plan);
+        return true;
+    }
+    if (!read_list(reader, root, "files", (void **)&plan->files, sizeof *plan->files, read_file)) {
+        return false;
+    }
+    if (plan->file_count == 0) {
+        return wrong(reader, "files", "is empty; name at least one file, or leave the key out");
+    }
+    const struct plan_file *first = &plan->files[0];
+    if (strcmp(plan->participant, first->participant) != 0 && strcmp(plan->participant, first->identifier_name) != 0) {
+        return wrong(reader, "participant", "must be the first file's column of identifiers");
+    }
+    plan->participant = first->identifier_name;
+    settle_slots(plan);
+    return true;
+}
+
+static int file_of(const struct plan *plan, const char *id, size_t length) {
+    for (size_t f = 0; f < plan->file_count; f++) {
+        if (plan->files[f].id && strlen(plan->files[f].id) == length && memcmp(plan->files[f].id, id, length) == 0) {
+            return (int)f;
+        }
+    }
+    return NOWHERE;
+}
+
+/* Settles a place from its parts and gives its name; visit may be NULL. */
+static bool settle_place(struct reader *reader, const char *path, size_t file, const char *column, const char *visit,
+    const char **name, struct place *place) {
+    struct plan *plan = reader->plan;
+    const struct plan_file *from = &plan->files[file];
+    *place = (struct place){file, from->first_slot, column};
+    if (!from->id) {
+        *name = column;
+        return true;
+    }
+    if (!from->by_visit) {
+        *name = arena_format(&plan->arena, "%s.%s", from->id, column);
+        return !visit || wrong(reader, join(reader, path, "visit"), "is said of a file that has one row per participant");
+    }
+    if (!visit) {
+        return wrong(reader, join(reader, path, "visit"),
+            arena_format(&plan->arena, "is missing: \"%s\" has one row per visit, so say the visit's code", from->id));
+    }
+    *name = arena_format(&plan->arena, "%s.%s@%s", from->id, column, visit);
+    for (size_t c = 0; c < from->codes.count; c++) {
+        if (strcmp(from->codes.item[c], visit) == 0) {
+            place->slot = from->first_slot + c;
+            return true;
+        }
+    }
+    return wrong(reader, join(reader, path, "visit"),
+        arena_format(&plan->arena, "\"%.60s\" is not among the codes of the file \"%s\"", visit, from->id));
+}
+
+/* "column", with "file" and "visit" beside it where there are several files. */
+static bool read_place(struct reader *reader, const cJSON *item, const char *path, const char **name, struct place *place) {
+    struct plan *plan = reader->plan;
+    const char *column = NULL, *file = NULL, *visit = NULL;
+    if (!read_text(reader, item, path, "column", true, &column) || !read_text(reader, item, path, "file", false, &file) ||
+        !read_text(reader, item, path, "visit", false, &visit)) {
+        return false;
+    }
+    if (!file && !visit) { /* FILE.COLUMN or FILE.COLUMN@CODE in one text, or a column of the first file */
+        const char *dot = strchr(column, '.');
+        int found = dot ? file_of(plan, column, (size_t)(dot - column)) : NOWHERE;
+        if (found != NOWHERE) {
+            const char *at = plan->files[found].by_visit ? strrchr(dot, '@') : NULL;
+            const char *rest = at ? arena_bytes(&plan->arena, dot + 1, (size_t)(at - dot - 1)) : dot + 1;
+            return settle_place(reader, path, (size_t)found, rest, at ? at + 1 : NULL, name, place);
+        }
+    }
+    int found = file ? file_of(plan, file, strlen(file)) : 0;
+    if (found == NOWHERE || (file && !plan->files[0].id)) {
+        return wrong(reader, join(reader, path, "file"),
+            arena_format(&plan->arena, "\"%.60s\" is not the id of a file of this plan", file));
+    }
+    if (visit && !plan->files[0].id) {
+        return wrong(reader, join(reader, path, "visit"), "needs \"files\" in the plan, with a file that has one row per visit");
+    }
+    return settle_place(reader, path, (size_t)found, column, visit, name, place);
+}
+
 /* ---- the parts of a plan ---- */
 
 static bool read_arms(struct reader *reader, const cJSON *root) {
@@ -174,8 +331,8 @@ static bool read_arms(struct reader *reader, const cJSON *root) {
     if (!arm) {
         return true;
     }
-    if (!keys_known(reader, arm, "arm", "column levels") ||
-        !read_text(reader, arm, "arm", "column", true, &plan->arm_column)) {
+    if (!keys_known(reader, arm, "arm", "column levels file visit") ||
+        !read_place(reader, arm, "arm", &plan->arm_column, &plan->arm_place)) {
         return false;
     }
     const cJSON *levels = member(arm, "levels");
@@ -227,9 +384,9 @@ static bool read_visits(struct reader *reader, const cJSON *item, const char *pa
     for (const cJSON *child = visits->child; child; child = child->next) {
         struct visit *visit = &outcome->visits[outcome->visit_count];
         const char *place = at_index(reader, where, outcome->visit_count);
-        if (!keys_known(reader, child, place, "label column") ||
+        if (!keys_known(reader, child, place, "label column file visit") ||
             !read_text(reader, child, place, "label", true, &visit->label) ||
-            !read_text(reader, child, place, "column", true, &visit->column)) {
+            !read_place(reader, child, place, &visit->column, &visit->place)) {
             return false;
         }
         for (size_t i = 0; i < outcome->visit_count; i++) {
@@ -366,10 +523,10 @@ static bool read_covariate(struct reader *reader, const cJSON *item, const char 
     struct plan *plan = reader->plan;
     struct covariate *covariate = &plan->covariates[plan->covariate_count];
     *covariate = (struct covariate){.unit = ""};
-    if (!keys_known(reader, item, path, "id label column kind levels unit eligible plausible bands missing_codes") ||
+    if (!keys_known(reader, item, path, "id label column file visit kind levels unit eligible plausible bands missing_codes") ||
         !read_text(reader, item, path, "id", true, &covariate->id) || !id_is_new(reader, path, covariate->id) ||
         !read_text(reader, item, path, "label", false, &covariate->label) ||
-        !read_text(reader, item, path, "column", true, &covariate->column) ||
+        !read_place(reader, item, path, &covariate->column, &covariate->place) ||
         !read_text(reader, item, path, "unit", false, &covariate->unit) ||
         !read_choice(reader, item, path, "kind", "category", "number", &covariate->number) ||
         !read_levels(reader, item, path, covariate) || !read_range(reader, item, path, "eligible", &covariate->eligible) ||
@@ -395,10 +552,10 @@ static bool read_event(struct reader *reader, const cJSON *item, const char *pat
     static const char *const kinds[] = {"stopped-treatment", "rescue", "withdrew", "died"};
     struct plan *plan = reader->plan;
     struct event *event = &plan->events[plan->event_count];
-    if (!keys_known(reader, item, path, "id label column yes no date reason kind") ||
+    if (!keys_known(reader, item, path, "id label column file visit yes no date reason kind") ||
         !read_text(reader, item, path, "id", true, &event->id) || !id_is_new(reader, path, event->id) ||
         !read_text(reader, item, path, "label", false, &event->label) ||
-        !read_text(reader, item, path, "column", true, &event->column) ||
+        !read_place(reader, item, path, &event->column, &event->place) ||
         !read_texts(reader, item, path, "yes", &event->yes) || !read_texts(reader, item, path, "no", &event->no) ||
         !read_text(reader, item, path, "date", false, &event->date) ||
         !read_text(reader, item, path, "reason", false, &event->reason) ||
@@ -422,25 +579,6 @@ static bool read_event(struct reader *reader, const cJSON *item, const char *pat
     event->label = event->label ? event->label : event->id;
     plan->event_count++;
     return known || wrong(reader, join(reader, path, "kind"), "must be stopped-treatment, rescue, withdrew or died");
-}
-
-static bool read_list(struct reader *reader, const cJSON *root, const char *key, void **memory, size_t size,
-    bool (*read)(struct reader *, const cJSON *, const char *)) {
-    const cJSON *list = member(root, key);
-    if (!list) {
-        return true;
-    }
-    if (!cJSON_IsArray(list)) {
-        return wrong(reader, key, "must be a list in square brackets");
-    }
-    *memory = arena_new(&reader->plan->arena, (size_t)cJSON_GetArraySize(list), size);
-    size_t index = 0;
-    for (const cJSON *item = list->child; item; item = item->next) {
-        if (!read(reader, item, at_index(reader, key, index++))) {
-            return false;
-        }
-    }
-    return true;
 }
 
 /* A list of covariates' ids as indices. */
@@ -483,11 +621,11 @@ static bool settle_primary(struct reader *reader) {
 /* Adds the column to the variables, or finds it there; a column has one kind. */
 static bool place_variable(struct reader *reader, const struct variable *wanted, int *index) {
     struct plan *plan = reader->plan;
-    if (strcmp(wanted->column, plan->participant) == 0 ||
-        (plan->arm_column && strcmp(wanted->column, plan->arm_column) == 0)) {
+    bool identifier = plan_identifier_file(plan, wanted->column) != NOWHERE;
+    if (identifier || (plan->arm_column && strcmp(wanted->column, plan->arm_column) == 0)) {
         return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is both %s and %s; a column has one meaning",
             reader->name, wanted->column, wanted->label,
-            strcmp(wanted->column, plan->participant) == 0 ? "the participant's identifier" : "the arm");
+            identifier ? "the participant's identifier" : "the arm");
     }
     *index = plan_variable(plan, wanted->column);
     if (*index == NOWHERE) {
@@ -526,6 +664,7 @@ static bool settle_variables(struct reader *reader) {
         struct covariate *covariate = &plan->covariates[i];
         struct variable variable = none;
         variable.column = covariate->column;
+        variable.place = covariate->place;
         variable.label = covariate->label;
         variable.unit = covariate->unit;
         variable.kind = covariate->number ? VARIABLE_NUMBER : VARIABLE_CATEGORY;
@@ -542,6 +681,7 @@ static bool settle_variables(struct reader *reader) {
         for (size_t v = 0; v < outcome->visit_count; v++) {
             struct variable variable = none;
             variable.column = outcome->visits[v].column;
+            variable.place = outcome->visits[v].place;
             variable.label = outcome->visit_count == 1 ? outcome->label :
                 arena_format(&plan->arena, "%s, %s", outcome->label, outcome->visits[v].label);
             variable.unit = outcome->unit;
@@ -559,6 +699,7 @@ static bool settle_variables(struct reader *reader) {
         struct event *event = &plan->events[i];
         struct variable variable = none;
         variable.column = event->column;
+        variable.place = event->place;
         variable.label = event->label;
         variable.unit = "";
         variable.kind = VARIABLE_EVENT;
@@ -612,12 +753,12 @@ static bool settle_settings(struct reader *reader, const cJSON *root) {
         return wrong(reader, "blinding", "must be \"pooled\" while the plan has no arm");
     }
     const cJSON *site = member(root, "site");
-    return !site || (keys_known(reader, site, "site", "column") &&
-                        read_text(reader, site, "site", "column", true, &plan->site_column));
+    return !site || (keys_known(reader, site, "site", "column file visit") &&
+                        read_place(reader, site, "site", &plan->site_column, &plan->site_place));
 }
 
 static bool refuse_later_keys(struct reader *reader, const cJSON *root) {
-    static const char *const later[] = {"dates", "derived", "screening", "files"};
+    static const char *const later[] = {"dates", "derived", "screening"};
     for (size_t i = 0; i < sizeof later / sizeof *later; i++) {
         if (member(root, later[i])) {
             return fault_set(reader->fault, FAULT_INPUT,
@@ -632,9 +773,10 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (!refuse_later_keys(reader, root) ||
         !keys_known(reader, root, "",
             "title participant arm missing_codes outcomes covariates events adjust_for missing_baseline subgroups confidence "
-            "blinding seed site stratified_by standard_error") ||
+            "blinding seed site stratified_by standard_error files") ||
         !read_text(reader, root, "", "title", true, &plan->title) ||
-        !read_text(reader, root, "", "participant", true, &plan->participant) || !read_arms(reader, root) ||
+        !read_text(reader, root, "", "participant", true, &plan->participant) || !settle_files(reader, root) ||
+        !read_arms(reader, root) ||
         !read_code_list(reader, root, "", &plan->missing_codes) ||
         !read_list(reader, root, "outcomes", (void **)&plan->outcomes, sizeof *plan->outcomes, read_outcome) ||
         !read_list(reader, root, "covariates", (void **)&plan->covariates, sizeof *plan->covariates, read_covariate) ||
@@ -723,6 +865,28 @@ int plan_event(const struct plan *plan, const char *id) {
     for (size_t i = 0; i < plan->event_count; i++) {
         if (strcmp(plan->events[i].id, id) == 0) {
             return (int)i;
+        }
+    }
+    return NOWHERE;
+}
+
+int plan_identifier_file(const struct plan *plan, const char *column) {
+    for (size_t f = 0; f < plan->file_count; f++) {
+        if (strcmp(plan->files[f].identifier_name, column) == 0) {
+            return (int)f;
+        }
+    }
+    return NOWHERE;
+}
+
+const char *plan_column_name(struct arena *arena, const struct plan *plan, size_t file, const char *column) {
+    return plan->files[file].id ? arena_format(arena, "%s.%s", plan->files[file].id, column) : column;
+}
+
+int plan_visit_file(const struct plan *plan, const char *column) {
+    for (size_t f = 0; f < plan->file_count; f++) {
+        if (plan->files[f].visit_name && strcmp(plan->files[f].visit_name, column) == 0) {
+            return (int)f;
         }
     }
     return NOWHERE;

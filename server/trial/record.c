@@ -18,7 +18,7 @@ const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
     [DECISION_SET_MISSING] = {"set-missing", "One value is set missing", "column participant from", "", true, true, true},
     [DECISION_CONFIRM] = {"confirm", "A doubtful value is right as recorded", "column value", "participant", true, true,
         true},
-    [DECISION_KEEP_RECORD] = {"keep-record", "Of a repeated participant's records this one stands", "participant row", "",
+    [DECISION_KEEP_RECORD] = {"keep-record", "Of a repeated participant's records this one stands", "participant row", "file",
         true, true, true},
     [DECISION_QUERY] = {"query", "A question to the site", "question", "column participant", false, true, true},
     [DECISION_RESPONSE] = {"response", "The site's answer to a query", "number text", "", false, true, false},

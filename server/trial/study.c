@@ -22,7 +22,7 @@ struct study {
     pthread_mutex_t mutex;
     struct arena arena; /* what lives as long as the study: plan text, facts, decisions' texts */
     struct store *store;
-    struct cells cells;
+    struct cells *cells; /* [plan.file_count] */
     struct plan plan;
     struct record record;
     unsigned char letters[32];
@@ -32,51 +32,87 @@ struct study {
     struct look *looks; /* entered by this process, so that drawing the same screen again is one look */
 };
 
-/* ---- the plan against the file ---- */
-
-static bool column_is_there(const struct cells *cells, const char *column, const char *what, const char *data_name,
-    const char *plan_name, struct fault *fault) {
-    if (cells_column(cells, column) != SIZE_MAX) {
-        return true;
-    }
-    char names[256] = "";
-    size_t used = 0;
-    for (size_t i = 0; i < cells->columns && used + 40 < sizeof names; i++) {
-        used += (size_t)snprintf(names + used, sizeof names - used, "%s%.32s", i ? ", " : "", cells->names[i]);
-    }
-    return fault_set(fault, FAULT_INPUT, "%s: the column \"%.60s\" (%.80s) is not in %s, line 1, which has: %s; mend the plan or the header",
-        plan_name, column, what, data_name, names);
-}
-
-static bool plan_fits(const struct plan *plan, const struct cells *cells, const char *data_name, const char *plan_name,
-    struct fault *fault) {
-    if (!column_is_there(cells, plan->participant, "the participant's identifier", data_name, plan_name, fault) ||
-        (plan->arm_column && !column_is_there(cells, plan->arm_column, "the arm", data_name, plan_name, fault)) ||
-        (plan->site_column && !column_is_there(cells, plan->site_column, "the site", data_name, plan_name, fault))) {
-        return false;
-    }
-    for (size_t i = 0; i < plan->variable_count; i++) {
-        if (!column_is_there(cells, plan->variables[i].column, plan->variables[i].label, data_name, plan_name, fault)) {
-            return false;
-        }
-    }
-    for (size_t i = 0; i < plan->event_count; i++) {
-        const struct event *event = &plan->events[i];
-        if ((event->date && !column_is_there(cells, event->date, "an event's date", data_name, plan_name, fault)) ||
-            (event->reason && !column_is_there(cells, event->reason, "an event's reason", data_name, plan_name, fault))) {
-            return false;
-        }
-    }
-    return cells->records > 0 || fault_at(fault, FAULT_INPUT, 2, 0, "%s has a header and no record below it; load a file with at least one participant",
-                                    data_name);
-}
-
-/* ---- making a study ---- */
-
 static const char *file_part(const char *path) {
     const char *slash = strrchr(path, '/');
     return slash ? slash + 1 : path;
 }
+
+/* ---- the plan against the files ---- */
+
+static bool column_is_there(const struct plan *plan, const struct cells *cells, const struct place *place, const char *what,
+    const char *const *names, const char *plan_name, struct fault *fault) {
+    const struct cells *file = &cells[place->file];
+    if (cells_column(file, place->column) != SIZE_MAX) {
+        return true;
+    }
+    (void)plan;
+    char listed[256] = "";
+    size_t used = 0;
+    for (size_t i = 0; i < file->columns && used + 40 < sizeof listed; i++) {
+        used += (size_t)snprintf(listed + used, sizeof listed - used, "%s%.32s", i ? ", " : "", file->names[i]);
+    }
+    return fault_set(fault, FAULT_INPUT, "%s: the column \"%.60s\" (%.80s) is not in %s, line 1, which has: %s; mend the plan or the header",
+        plan_name, place->column, what, names[place->file], listed);
+}
+
+static bool file_fits(const struct plan *plan, const struct cells *cells, size_t f, const char *const *names, const char *plan_name,
+    struct fault *fault) {
+    struct place identifier = {f, 0, plan->files[f].participant}, visit = {f, 0, plan->files[f].visit};
+    return column_is_there(plan, cells, &identifier, "the participant's identifier", names, plan_name, fault) &&
+           (!plan->files[f].by_visit || column_is_there(plan, cells, &visit, "the visit's code", names, plan_name, fault)) &&
+           (cells[f].records > 0 || fault_at(fault, FAULT_INPUT, 2, 0,
+               "%s has a header and no record below it; load a file with at least one participant", names[f]));
+}
+
+static bool plan_fits(const struct plan *plan, const struct cells *cells, const char *const *names, const char *plan_name,
+    struct fault *fault) {
+    for (size_t f = 0; f < plan->file_count; f++) {
+        if (!file_fits(plan, cells, f, names, plan_name, fault)) {
+            return false;
+        }
+    }
+    if ((plan->arm_column && !column_is_there(plan, cells, &plan->arm_place, "the arm", names, plan_name, fault)) ||
+        (plan->site_column && !column_is_there(plan, cells, &plan->site_place, "the site", names, plan_name, fault))) {
+        return false;
+    }
+    for (size_t i = 0; i < plan->variable_count; i++) {
+        if (!column_is_there(plan, cells, &plan->variables[i].place, plan->variables[i].label, names, plan_name, fault)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+/* Which of the files received is each of the plan's: by name where the plan gives one, else in the order given. */
+static bool match_files(const struct plan *plan, const struct study_file *files, size_t count, const struct study_file **matched,
+    const char *plan_name, struct fault *fault) {
+    if (count != plan->file_count) {
+        return fault_set(fault, FAULT_INPUT, plan->files[0].id ?
+            "%s: the plan's \"files\" lists %zu, and %zu came; load all of them together" :
+            "%s: the plan takes %zu file, and %zu came; list them under \"files\" in the plan, or load one", plan_name,
+            plan->file_count, count);
+    }
+    for (size_t f = 0; f < count; f++) {
+        const char *wanted = plan->files[f].name;
+        matched[f] = wanted ? NULL : &files[f];
+        for (size_t i = 0; wanted && i < count; i++) {
+            matched[f] = strcmp(file_part(files[i].name), wanted) == 0 ? &files[i] : matched[f];
+        }
+        if (!matched[f]) {
+            return fault_set(fault, FAULT_INPUT, "%s: no file named \"%.80s\" came, which the plan's file \"%s\" asks for; load it too, or mend the name",
+                plan_name, wanted, plan->files[f].id);
+        }
+        for (size_t g = 0; g < f; g++) {
+            if (matched[g] == matched[f]) {
+                return fault_set(fault, FAULT_INPUT, "%s: the files \"%s\" and \"%s\" of the plan are both %s; name each in the plan", plan_name,
+                    plan->files[g].id, plan->files[f].id, file_part(matched[f]->name));
+            }
+        }
+    }
+    return true;
+}
+
+/* ---- making a study ---- */
 
 /* A random order of the arms' letters from the system's randomness (Fisher & Yates; rejection keeps it even). */
 static bool draw_letters(unsigned char *letters, size_t count, struct fault *fault) {
@@ -122,7 +158,13 @@ static size_t planned_decisions(const struct plan *plan, struct arena *arena, st
     *decisions = ARENA_NEW(arena, room, struct decision);
     for (size_t v = 0; v < plan->variable_count; v++) {
         const struct variable *variable = &plan->variables[v];
-        for (size_t c = 0; c < variable->missing_codes->count; c++) {
+        const char *column = arena_bytes(arena, variable->column, plan->files[variable->place.file].by_visit ?
+            (size_t)(strrchr(variable->column, '@') - variable->column) : strlen(variable->column));
+        bool entered = false; /* at another visit of the same column */
+        for (size_t i = 0; i < count && !entered; i++) {
+            entered = strcmp((*decisions)[i].column, column) == 0;
+        }
+        for (size_t c = 0; c < variable->missing_codes->count && !entered; c++) {
             struct text body;
             text_init(&body);
             struct json json;
@@ -132,7 +174,7 @@ static size_t planned_decisions(const struct plan *plan, struct arena *arena, st
             json_field_bool(&json, "planned", true);
             json_close(&json);
             struct decision *decision = &(*decisions)[count++];
-            *decision = (struct decision){.number = (uint32_t)count, .kind = DECISION_MISSING_CODE, .column = variable->column,
+            *decision = (struct decision){.number = (uint32_t)count, .kind = DECISION_MISSING_CODE, .column = column,
                 .value = variable->missing_codes->item[c], .reason = "The plan lists it as a code for missing.",
                 .planned = true, .body = arena_text(arena, body.data)};
             text_release(&body);
@@ -149,18 +191,34 @@ static void to_stored(const struct decision *decision, struct stored_decision *s
         .body = decision->body, .state_sha256 = decision->state};
 }
 
-static void tell_account(struct text *account, const char *data_name, const struct cells *cells, const struct frame *frame,
-    size_t planned) {
+static void tell_file(struct text *account, const char *name, const struct cells *cells) {
+    text_format(account, "%s: %zu records of %zu columns, %s, delimiter %s%s.\n", name, cells->records, cells->columns,
+        cells->encoding, cells->delimiter_word, cells->byte_order_mark ? ", byte order mark" : "");
+}
+
+static void tell_join(struct text *account, const struct frame *frame, size_t f) {
+    const struct join *join = &frame->joins[f];
+    text_format(account, "%s: %zu records joined, %zu of participants the first file does not have, %zu of visits never planned, %zu without an "
+        "identifier; %zu participants and visits with several records, held aside.\n", frame->plan->files[f].id, join->matched,
+        join->unmatched, join->unplanned, join->blank, join->doubled);
+}
+
+static void tell_account(struct text *account, const char *const *names, const struct frame *frame, size_t planned) {
+    const struct plan *plan = frame->plan;
     size_t repeated = 0;
     for (size_t p = 0; p < frame->participant_count; p++) {
         repeated += frame->participants[p].record_count > 1;
     }
-    text_format(account, "%s: %zu records of %zu columns, %s, delimiter %s%s.\n", data_name, cells->records, cells->columns,
-        cells->encoding, cells->delimiter_word, cells->byte_order_mark ? ", byte order mark" : "");
+    for (size_t f = 0; f < plan->file_count; f++) {
+        tell_file(account, names[f], &frame->cells[f]);
+    }
     text_format(account, "%zu participants; %zu repeated, %zu records held aside until a decision says which stands.\n",
         frame->participant_count, repeated, frame->held_aside);
+    for (size_t f = plan->files[0].by_visit ? 0 : 1; f < plan->file_count; f++) {
+        tell_join(account, frame, f);
+    }
     text_format(account, "%zu columns have a meaning in the plan; %zu codes for missing entered from it.\n",
-        frame->plan->variable_count + 1 + (frame->plan->arm_column != NULL), planned);
+        plan->variable_count + 1 + (plan->arm_column != NULL), planned);
     struct arena arena;
     arena_init(&arena);
     struct discrepancies found;
@@ -171,13 +229,25 @@ static void tell_account(struct text *account, const char *data_name, const stru
 
 struct birth { /* everything on the way to a new study */
     struct arena arena;
-    struct cells cells;
     struct plan plan;
+    const struct study_file **files; /* [plan.file_count] in the plan's order */
+    const char **names;
+    struct cells *cells;
     struct frame *frame;
 };
 
-static bool write_birth(struct birth *birth, const char *path, const char *data_name, const char *data, size_t data_length,
-    const char *plan_text, const char *by, struct text *account, struct fault *fault) {
+static bool read_files(struct birth *birth, struct fault *fault) {
+    for (size_t f = 0; f < birth->plan.file_count; f++) {
+        birth->names[f] = file_part(birth->files[f]->name);
+        if (!cells_read(&birth->cells[f], birth->files[f]->bytes, birth->files[f]->length, birth->names[f], fault)) {
+            return false;
+        }
+    }
+    return true;
+}
+
+static bool write_birth(struct birth *birth, const char *path, const char *plan_text, const char *by, struct text *account,
+    struct fault *fault) {
     unsigned char letters[32];
     char at[CLOCK_SIZE];
     clock_utc(at);
@@ -185,8 +255,8 @@ static bool write_birth(struct birth *birth, const char *path, const char *data_
         return false;
     }
     struct decision *planned;
-    size_t count = planned_decisions(&birth->plan, &birth->arena, &planned);
-    birth->frame = frame_build(&birth->plan, &birth->cells, "", letters, planned, count, NULL, false, fault);
+    size_t count = planned_decisions(&birth->plan, &birth->arena, &planned), files = birth->plan.file_count;
+    birth->frame = frame_build(&birth->plan, birth->cells, "", letters, planned, count, NULL, false, fault);
     if (!birth->frame) {
         return false;
     }
@@ -199,37 +269,54 @@ static bool write_birth(struct birth *birth, const char *path, const char *data_
         planned[i].state = birth->frame->state_sha256;
         to_stored(&planned[i], &stored[i]);
     }
-    struct store_file file = {.name = data_name, .bytes = data, .length = data_length};
-    struct store_table table = {birth->cells.records, birth->cells.columns, birth->cells.names, birth->cells.bytes, birth->cells.start};
+    struct store_file *received = ARENA_NEW(&birth->arena, files, struct store_file);
+    struct store_table *tables = ARENA_NEW(&birth->arena, files, struct store_table);
+    for (size_t f = 0; f < files; f++) {
+        const struct cells *cells = &birth->cells[f];
+        received[f] = (struct store_file){.name = birth->names[f], .bytes = birth->files[f]->bytes, .length = birth->files[f]->length};
+        tables[f] = (struct store_table){cells->records, cells->columns, cells->names, cells->bytes, cells->start};
+    }
     struct store_value values[] = {{"letters", letters_text(&birth->arena, letters, birth->plan.arm_count)},
         {"program", "Evenhand " EVENHAND_VERSION}};
-    struct store_birth store = {.files = &file, .tables = &table, .file_count = 1, .plan = plan_text, .values = values,
+    struct store_birth store = {.files = received, .tables = tables, .file_count = files, .plan = plan_text, .values = values,
         .value_count = 2, .by = by, .at = at, .decisions = stored, .decision_count = count};
     if (account) {
-        tell_account(account, data_name, &birth->cells, birth->frame, count);
+        tell_account(account, birth->names, birth->frame, count);
     }
     return store_create(path, &store, fault);
 }
 
-bool study_create(const char *path, const char *data_name, const char *data, size_t data_length, const char *plan_name,
-    const char *plan, size_t plan_length, const char *by, struct text *account, struct fault *fault) {
+bool study_create_from(const char *path, const struct study_file *files, size_t count, const char *plan_name, const char *plan,
+    size_t plan_length, const char *by, struct text *account, struct fault *fault) {
     struct birth birth = {0};
     if (!by || !by[strspn(by, " \t")]) {
         return fault_set(fault, FAULT_INPUT, "say who is loading, by name and role, such as --by \"A. Reader, data manager\"");
     }
-    data_name = file_part(data_name);
     plan_name = file_part(plan_name);
     arena_init(&birth.arena);
     const char *plan_text = arena_bytes(&birth.arena, plan, plan_length);
-    bool done = cells_read(&birth.cells, data, data_length, data_name, fault);
-    done = done && plan_read(&birth.plan, plan, plan_length, plan_name, fault);
-    done = done && plan_fits(&birth.plan, &birth.cells, data_name, plan_name, fault);
-    done = done && write_birth(&birth, path, data_name, data, data_length, plan_text, by, account, fault);
+    bool done = plan_read(&birth.plan, plan, plan_length, plan_name, fault);
+    if (done) {
+        birth.files = ARENA_NEW(&birth.arena, birth.plan.file_count, const struct study_file *);
+        birth.names = ARENA_NEW(&birth.arena, birth.plan.file_count, const char *);
+        birth.cells = ARENA_NEW(&birth.arena, birth.plan.file_count, struct cells);
+        done = match_files(&birth.plan, files, count, birth.files, plan_name, fault) && read_files(&birth, fault) &&
+               plan_fits(&birth.plan, birth.cells, birth.names, plan_name, fault) &&
+               write_birth(&birth, path, plan_text, by, account, fault);
+    }
     frame_release(birth.frame);
+    for (size_t f = 0; birth.cells && f < birth.plan.file_count; f++) {
+        cells_release(&birth.cells[f]);
+    }
     plan_release(&birth.plan);
-    cells_release(&birth.cells);
     arena_release(&birth.arena);
     return done;
+}
+
+bool study_create(const char *path, const char *data_name, const char *data, size_t data_length, const char *plan_name,
+    const char *plan, size_t plan_length, const char *by, struct text *account, struct fault *fault) {
+    struct study_file file = {data_name, data, data_length};
+    return study_create_from(path, &file, 1, plan_name, plan, plan_length, by, account, fault);
 }
 
 /* ---- opening ---- */
@@ -277,7 +364,7 @@ static size_t planned_count(const struct record *record) {
 }
 
 static struct frame *build(struct study *study, size_t count, struct frame *previous, struct fault *fault) {
-    return frame_build(&study->plan, &study->cells, study->facts.data_sha256, study->letters, study->record.decisions, count,
+    return frame_build(&study->plan, study->cells, study->facts.data_sha256, study->letters, study->record.decisions, count,
         previous, false, fault);
 }
 
@@ -296,21 +383,72 @@ static bool take_letters(struct study *study, struct fault *fault) {
                        store_path(study->store));
 }
 
-static bool take_file(struct study *study, struct fault *fault) {
+/* The fingerprint of several files is that of the list of their fingerprints. */
+static const char *fingerprint(struct study *study, const struct store_file *files, size_t count) {
+    if (count == 1) {
+        return arena_text(&study->arena, files[0].sha256);
+    }
+    struct hash hash;
+    hash_init(&hash);
+    for (size_t f = 0; f < count; f++) {
+        hash_field(&hash, files[f].sha256);
+    }
+    char digits[HASH_SIZE];
+    hash_finish(&hash, digits);
+    return arena_text(&study->arena, digits);
+}
+
+static void take_facts(struct study *study, const struct store_file *files, size_t count) {
+    struct study_facts *facts = &study->facts;
+    struct text names;
+    text_init(&names);
+    facts->files = ARENA_NEW(&study->arena, count, struct study_file_facts);
+    facts->file_count = count;
+    for (size_t f = 0; f < count; f++) {
+        const struct cells *cells = &study->cells[f];
+        text_format(&names, "%s%s", f ? ", " : "", files[f].name);
+        facts->files[f] = (struct study_file_facts){study->plan.files[f].id, arena_text(&study->arena, files[f].name),
+            arena_text(&study->arena, files[f].sha256), cells->encoding, cells->delimiter_word, files[f].length, cells->records,
+            cells->columns};
+        facts->data_length += files[f].length;
+    }
+    facts->data_name = arena_text(&study->arena, names.data);
+    facts->received_at = arena_text(&study->arena, files[0].at);
+    facts->data_sha256 = fingerprint(study, files, count);
+    facts->encoding = study->cells[0].encoding;
+    facts->delimiter = study->cells[0].delimiter_word;
+    text_release(&names);
+}
+
+static bool take_files(struct study *study, struct fault *fault) {
     struct arena scratch;
     arena_init(&scratch);
-    struct store_file file = {0};
     const char *plan = NULL;
-    bool done = store_received(study->store, &scratch, 0, &file, fault) && store_plan(study->store, &study->arena, &plan, fault) &&
-                cells_read(&study->cells, file.bytes, file.length, file.name, fault) &&
-                plan_read(&study->plan, plan, strlen(plan), "the study's plan", fault);
+    struct store_file *files = NULL;
+    size_t count = 0;
+    bool done = store_plan(study->store, &study->arena, &plan, fault) &&
+                plan_read(&study->plan, plan, strlen(plan), "the study's plan", fault) &&
+                store_files(study->store, &scratch, &files, &count, fault);
+    if (done && count != study->plan.file_count) {
+        done = fault_set(fault, FAULT_INPUT, "%s: it holds %zu files where its plan has %zu; ask for an earlier copy of the file",
+            store_path(study->store), count, study->plan.file_count);
+    }
+    const char **names = ARENA_NEW(&study->arena, count ? count : 1, const char *);
+    study->cells = ARENA_NEW(&study->arena, count ? count : 1, struct cells);
+    for (size_t f = 0; done && f < count; f++) {
+        struct arena bytes;
+        arena_init(&bytes);
+        struct store_file file = {0};
+        names[f] = arena_text(&study->arena, files[f].name);
+        done = store_received(study->store, &bytes, files[f].number, &file, fault) &&
+               cells_read(&study->cells[f], file.bytes, file.length, names[f], fault);
+        arena_release(&bytes);
+    }
     if (done) {
-        study->facts = (struct study_facts){.data_name = arena_text(&study->arena, file.name),
-            .received_at = arena_text(&study->arena, file.at), .data_sha256 = arena_text(&study->arena, file.sha256),
-            .encoding = study->cells.encoding, .delimiter = study->cells.delimiter_word, .data_length = file.length};
+        take_facts(study, files, count);
     }
     arena_release(&scratch);
-    return done && plan_fits(&study->plan, &study->cells, study->facts.data_name, "the study's plan", fault);
+    return done && plan_fits(&study->plan, study->cells, names, "the study's plan", fault);
 }
 
 struct study *study_open(const char *path, struct fault *fault) {
@@ -320,7 +458,7 @@ struct study *study_open(const char *path, struct fault *fault) {
     arena_init(&study->record.arena);
     study->store = store_open(path, false, fault);
     const char *zero = NULL;
-    bool done = study->store && take_file(study, fault) && take_letters(study, fault) && take_decisions(study, fault) &&
+    bool done = study->store && take_files(study, fault) && take_letters(study, fault) && take_decisions(study, fault) &&
                 store_value(study->store, &study->arena, "entry_zero", &zero, fault);
     if (done) {
         snprintf(study->entry_zero, sizeof study->entry_zero, "%s", zero ? zero : "");
@@ -341,8 +479,10 @@ void study_close(struct study *study) {
     frame_release(study->frame);
     frame_release(study->received);
     store_close(study->store);
+    for (size_t f = 0; study->cells && f < study->plan.file_count; f++) {
+        cells_release(&study->cells[f]);
+    }
     plan_release(&study->plan);
-    cells_release(&study->cells);
     memory_free(study->record.decisions);
     arena_release(&study->record.arena);
     arena_release(&study->arena);
@@ -406,7 +546,7 @@ static bool append(struct study *study, const char *by, struct decision *batch, 
         decision->account = account;
         decision->blinding = blinding;
     }
-    struct frame *next = frame_build(&study->plan, &study->cells, study->facts.data_sha256, study->letters,
+    struct frame *next = frame_build(&study->plan, study->cells, study->facts.data_sha256, study->letters,
         study->record.decisions, study->record.count, study->frame, true, fault);
     bool done = next != NULL;
     if (done) {
