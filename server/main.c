@@ -288,29 +288,38 @@ static enum exit_status run_demo(const struct given *given) {
 
 /* ---- load, decide, exhibit, exhibits ---- */
 
+static void print_account(const struct text *account) {
+    fputs(account->data, stdout);
+    if (account->length && account->data[account->length - 1] != '\n') {
+        putchar('\n');
+    }
+}
+
 static enum exit_status run_load(const struct given *given) {
     struct fault fault;
     fault_init(&fault);
-    if (given->word_count > 1) {
-        fault_set(&fault, FAULT_INPUT, "%s: this version loads one data file; join the files into one first",
-            given->words[1]);
-        return refuse(&fault);
-    }
-    struct text data, plan, account;
-    text_init(&data);
+    size_t count = given->word_count;
+    struct text *data = memory_new(count, sizeof *data), plan, account;
+    struct study_file *files = memory_new(count, sizeof *files);
     text_init(&plan);
     text_init(&account);
-    const char *path = given->words[0], *plan_path = given->options[OPTION_PLAN];
-    bool done = read_file(path, &data, &fault) && read_file(plan_path, &plan, &fault) &&
-                study_create(given->options[OPTION_STUDY], last_part(path), data.data, data.length,
-                    last_part(plan_path), plan.data, plan.length, given->options[OPTION_BY], &account, &fault);
-    if (done) {
-        fputs(account.data, stdout);
-        if (account.length && account.data[account.length - 1] != '\n') {
-            putchar('\n');
-        }
+    const char *plan_path = given->options[OPTION_PLAN];
+    bool done = read_file(plan_path, &plan, &fault);
+    for (size_t i = 0; i < count; i++) {
+        text_init(&data[i]);
+        done = done && read_file(given->words[i], &data[i], &fault);
+        files[i] = (struct study_file){last_part(given->words[i]), data[i].data, data[i].length};
     }
-    text_release(&data);
+    done = done && study_create_from(given->options[OPTION_STUDY], files, count, last_part(plan_path), plan.data, plan.length,
+                       given->options[OPTION_BY], &account, &fault);
+    if (done) {
+        print_account(&account);
+    }
+    for (size_t i = 0; i < count; i++) {
+        text_release(&data[i]);
+    }
+    memory_free(data);
+    memory_free(files);
     text_release(&plan);
     text_release(&account);
     return done ? printed() : refuse(&fault);
@@ -464,8 +473,9 @@ static const struct command commands[] = {
         "files it was\n"
         "made from, the right decisions and the truth.",
         WITH(OPTION_PORT) | WITH(OPTION_NO_BROWSER) | WITH(OPTION_FOLDER), 0, 0, 0, run_demo},
-    {"load", "DATA.csv --plan PLAN.json --study FILE.study --by \"Name, role\"",
-        "makes a new study file from an export", "Prints a short account of what was read. Never overwrites a file.",
+    {"load", "DATA.csv [MORE.csv ...] --plan PLAN.json --study FILE.study --by \"Name, role\"",
+        "makes a new study file from an export", "Several files are matched to the plan's \"files\" by name, or in order where it gives no names. Prints a short account\n"
+        "of what was read. Never overwrites a file.",
         WITH(OPTION_PLAN) | WITH(OPTION_STUDY) | WITH(OPTION_BY),
         WITH(OPTION_PLAN) | WITH(OPTION_STUDY) | WITH(OPTION_BY), 1, MOST_WORDS, run_load},
     {"open", "[FILE.study] [--port N] [--no-browser] [--folder DIR]", "serves a study to a browser on this machine",

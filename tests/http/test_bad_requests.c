@@ -121,7 +121,7 @@ static const struct {
     {"\"title\":\"T\"", "\"title\":\"T\",\"colour\":1",
         "the plan: the key \"colour\" is not one a plan has here; known are: title "
         "participant arm missing_codes outcomes covariates events adjust_for missing_baseline "
-        "subgroups confidence blinding seed site stratified_by standard_error"},
+        "subgroups confidence blinding seed site stratified_by standard_error files"},
     {"\"title\":\"T\"", "\"title\":\"T\",\"title\":\"U\"", "the plan: the key \"title\" stands there twice; keep one"},
     {",\"reference\":true", "",
         "the plan: arm.levels must mark exactly one arm as the reference, with \"reference\": true"},
@@ -141,7 +141,7 @@ static const struct {
         "the plan: the column \"arm\" is both Sex and the arm; a column has one meaning"},
     {"\"kind\":\"category\"", "\"type\":\"category\"",
         "the plan: the key \"type\" in covariates[0] is not one a plan has here; "
-        "known are: id label column kind levels unit eligible plausible bands missing_codes"},
+        "known are: id label column file visit kind levels unit eligible plausible bands missing_codes"},
     {"\"kind\":\"category\"", "\"kind\":\"category\",\"bands\":[1]",
         "the plan: covariates[0] is a category; bands, eligible and plausible belong to numbers"},
     {"\"kind\":\"category\"", "\"kind\":\"number\",\"bands\":[2,1]",

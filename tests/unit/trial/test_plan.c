@@ -201,7 +201,7 @@ static const struct {
     const char *find, *put, *sentence;
 } broken[] = {
     {"'title':", "'titel':", "plan.json: the key \"titel\" is not one a plan has here; known are: title participant arm missing_codes "
-        "outcomes covariates events adjust_for missing_baseline subgroups confidence blinding seed site stratified_by standard_error"},
+        "outcomes covariates events adjust_for missing_baseline subgroups confidence blinding seed site stratified_by standard_error files"},
     {"'title': 'Harbour Trial',", "'title': 'A', 'title': 'B',", "plan.json: the key \"title\" stands there twice; keep one"},
     {"'title': 'Harbour Trial',", "", "plan.json: title is missing; a plan needs it"},
     {"'Harbour Trial'", "''", "plan.json: title must be a text in quotes that is not empty"},
@@ -209,7 +209,7 @@ static const struct {
     {"'participant': 'pid',", "", "plan.json: participant is missing; a plan needs it"},
     {"'Harbour Trial',", "'Harbour Trial'", "plan.json, line 1, column 27: this is not JSON from here on; mend the text (a comma, a quote or a "
         "bracket?) and try again"},
-    {"'column': 'grp'", "'columns': 'grp'", "plan.json: the key \"columns\" in arm is not one a plan has here; known are: column levels"},
+    {"'column': 'grp'", "'columns': 'grp'", "plan.json: the key \"columns\" in arm is not one a plan has here; known are: column levels file visit"},
     {"'column': 'grp', 'levels'", "'levels'", "plan.json: arm.column is missing; a plan needs it"},
     {"'grp'", "'pid'", "plan.json: arm.column is the participant's column; a column has one meaning"},
     {"'code': 'W', 'label': 'Walking', 'ratio': 2", "'code': 'W', 'reference': true",
@@ -237,7 +237,7 @@ static const struct {
     {"'primary_visit': '8 weeks'", "'primary_visit': 'Baseline'", "plan.json: outcomes[0].primary_visit is the baseline; name a follow-up"},
     {"'column': 'sbp_8'", "'column': 'sbp_0'", "plan.json: outcomes[0].visits[1] repeats the label or column of a visit before it"},
     {"'column': 'sbp_8'", "'file': 'x', 'column': 'sbp_8'",
-        "plan.json: the key \"file\" in outcomes[0].visits[1] is not one a plan has here; known are: label column"},
+        "plan.json: outcomes[0].visits[1].file \"x\" is not the id of a file of this plan"},
     {"[{'label': 'End', 'column': 'steps'}]", "[]",
         "plan.json: outcomes[1].visits must list at least one visit with its label and column, the baseline first"},
     {"'column': 'steps'", "'column': 'sbp_26'",
@@ -276,7 +276,7 @@ static const struct {
     {"9007199254740992", "-1", "plan.json: seed must be a whole number from 0"},
     {"9007199254740992", "1e300", "plan.json: seed must be a whole number from 0"},
     {"'site': {'column': 'centre'}", "'site': 'centre'", "plan.json: site must be an object in braces"},
-    {"'outcomes': [", "'files': [], 'outcomes': [", "plan.json: this version of Evenhand does not take \"files\" yet; leave the key out"},
+    {"'outcomes': [", "'files': [], 'outcomes': [", "plan.json: files is empty; name at least one file, or leave the key out"},
     {"'outcomes': [", "'dates': {}, 'outcomes': [", "plan.json: this version of Evenhand does not take \"dates\" yet; leave the key out"},
     {"'outcomes': [", "'derived': [], 'outcomes': [", "plan.json: this version of Evenhand does not take \"derived\" yet; leave the key out"},
     {"'outcomes': [", "'screening': {}, 'outcomes': [",
