@@ -96,7 +96,9 @@ struct event {
     const char *id, *label, *column;
     struct place place;
     struct texts yes, no;
-    const char *kind, *date, *reason; /* NULL where none */
+    const char *kind;           /* NULL where none, as the next two */
+    const char *date, *reason;  /* names of columns */
+    struct place date_place, reason_place;
     int variable;
 };
 
@@ -158,6 +160,9 @@ int plan_variable(const struct plan *plan, const char *column); /* index into va
 /* The file whose identifiers (or, by_visit, visit codes) the name means: "FILE.COLUMN". NOWHERE where it means neither. */
 int plan_identifier_file(const struct plan *plan, const char *column);
 int plan_visit_file(const struct plan *plan, const char *column);
+/* Whether what a decision says of a column means the column of that name: the same, or FILE.COLUMN for FILE.COLUMN@CODE, the
+ * column at every visit. */
+bool plan_covers(const char *said, const char *name);
 /* The name of a file's column in decisions, without a visit: COLUMN or FILE.COLUMN. */
 const char *plan_column_name(struct arena *arena, const struct plan *plan, size_t file, const char *column);
 

@@ -159,10 +159,10 @@ static bool about(const struct participant_result *result, const struct decision
     for (size_t i = 0; i < result->value_count; i++) {
         const struct value *value = &result->values[i];
         bool code = decision->kind == DECISION_MISSING_CODE && decision->column && value->state == CELL_MISSING_CODE &&
-                    strcmp(value->variable->column, decision->column) == 0 && value->current && decision->value &&
+                    plan_covers(decision->column, value->variable->column) && value->current && decision->value &&
                     strcmp(value->current, decision->value) == 0;
         bool format = decision->kind == DECISION_NUMBER_FORMAT && decision->column && value->current &&
-                      strcmp(value->variable->column, decision->column) == 0 && strchr(value->current, ',');
+                      plan_covers(decision->column, value->variable->column) && strchr(value->current, ',');
         if (value->origin == decision->number || code || format) {
             return true;
         }

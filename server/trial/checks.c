@@ -544,7 +544,7 @@ static void settled_codes(struct finding *finding, const struct column *column, 
     size_t since = finding->count;
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
-        if (!frame->stands[i] || decision->kind != DECISION_MISSING_CODE || strcmp(decision->column, variable->column) != 0) {
+        if (!frame->stands[i] || decision->kind != DECISION_MISSING_CODE || !plan_covers(decision->column, variable->column)) {
             continue;
         }
         const char *code = code_words(finding, column, decision->value);
@@ -871,7 +871,7 @@ static bool decided_about(const struct decision *decision, const struct discrepa
     if (decision->discrepancy) {
         return strcmp(decision->discrepancy, what->id) == 0;
     }
-    bool about = decision->column ? same(decision->column, what->column) : !what->column && decision->participant;
+    bool about = decision->column ? what->column && plan_covers(decision->column, what->column) : !what->column && decision->participant;
     bool cell = about && (!decision->participant || same(decision->participant, what->participant));
     return cell && (decision->kind == DECISION_QUERY || same(decision->value, what->value));
 }
@@ -896,7 +896,8 @@ static uint32_t settler(const struct frame *frame, const struct discrepancy *wha
         bool keeps = decision->kind == DECISION_KEEP_RECORD && same(decision->participant, what->participant);
         bool other_code = (decision->kind == DECISION_READ_AS && !same(decision->from, what->value)) ||
                           (decision->kind == DECISION_MISSING_CODE && !same(decision->value, what->value));
-        bool column = decision->kind <= DECISION_SET_MISSING && !other_code && same(decision->column, what->column) &&
+        bool column = decision->kind <= DECISION_SET_MISSING && !other_code && decision->column && what->column &&
+                      plan_covers(decision->column, what->column) &&
                       (!decision->participant || same(decision->participant, what->participant));
         if (frame->stands[i] && (keeps || column || same(decision->discrepancy, what->id))) {
             by = decision->number;

@@ -196,15 +196,9 @@ size_t frame_records(const struct frame *frame, size_t participant, size_t *reco
 
 /* ---- columns: replay of the decisions about them ---- */
 
-/* FILE.COLUMN in a file with one row per visit means the column at every visit. */
-static bool covers(const char *said, const char *name) {
-    size_t length = strlen(said);
-    return strncmp(said, name, length) == 0 && (name[length] == '\0' || name[length] == '@');
-}
-
 /* Whether replay applies it to the column of that name. */
 static bool about_column(const struct decision *decision, const char *name) {
-    return decision->column && decision->kind <= DECISION_CONFIRM && covers(decision->column, name);
+    return decision->column && decision->kind <= DECISION_CONFIRM && plan_covers(decision->column, name);
 }
 
 /* Whether any decision about the column has come, gone or come back since the previous frame. */
@@ -910,9 +904,9 @@ static bool column_fits(struct build *build, size_t i) {
     const struct decision *decision = &frame->decisions[i];
     const struct plan *plan = frame->plan;
     bool known = plan_identifier_file(plan, decision->column) != NOWHERE || plan_visit_file(plan, decision->column) != NOWHERE ||
-                 (plan->arm_column && covers(decision->column, plan->arm_column));
+                 (plan->arm_column && plan_covers(decision->column, plan->arm_column));
     for (size_t v = 0; v < plan->variable_count && !known; v++) {
-        known = covers(decision->column, plan->variables[v].column);
+        known = plan_covers(decision->column, plan->variables[v].column);
     }
     if (!known) {
         return refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
@@ -920,7 +914,7 @@ static bool column_fits(struct build *build, size_t i) {
     }
     bool number = false;
     for (size_t v = 0; v < plan->variable_count && !number; v++) {
-        number = plan->variables[v].kind == VARIABLE_NUMBER && covers(decision->column, plan->variables[v].column);
+        number = plan->variables[v].kind == VARIABLE_NUMBER && plan_covers(decision->column, plan->variables[v].column);
     }
     if (decision->kind == DECISION_NUMBER_FORMAT && !number) {
         return refuse(build, i, arena_format(&build->frame->arena, "is about the column \"%.60s\", which holds no numbers", decision->column));

@@ -295,6 +295,27 @@ static bool settle_place(struct reader *reader, const char *path, size_t file, c
         arena_format(&plan->arena, "\"%.60s\" is not among the codes of the file \"%s\"", visit, from->id));
 }
 
+/* A column in one text: FILE.COLUMN, FILE.COLUMN@CODE, or a column of the first file. */
+static bool settle_text(struct reader *reader, const char *path, const char *text, const char **name, struct place *place) {
+    struct plan *plan = reader->plan;
+    const char *dot = strchr(text, '.');
+    int found = dot ? file_of(plan, text, (size_t)(dot - text)) : NOWHERE;
+    if (found == NOWHERE) {
+        return settle_place(reader, path, 0, text, NULL, name, place);
+    }
+    const char *at = plan->files[found].by_visit ? strrchr(dot, '@') : NULL;
+    const char *column = at ? arena_bytes(&plan->arena, dot + 1, (size_t)(at - dot - 1)) : dot + 1;
+    return settle_place(reader, path, (size_t)found, column, at ? at + 1 : NULL, name, place);
+}
+
+/* A key whose text names a column; left alone where the key is not there. */
+static bool read_column(struct reader *reader, const cJSON *item, const char *path, const char *key, const char **name,
+    struct place *place) {
+    const char *text = NULL;
+    return read_text(reader, item, path, key, false, &text) &&
+           (!text || settle_text(reader, join(reader, path, key), text, name, place));
+}
+
 /* "column", with "file" and "visit" beside it where there are several files. */
 static bool read_place(struct reader *reader, const cJSON *item, const char *path, const char **name, struct place *place) {
     struct plan *plan = reader->plan;
@@ -303,14 +324,8 @@ static bool read_place(struct reader *reader, const cJSON *item, const char *pat
         !read_text(reader, item, path, "visit", false, &visit)) {
         return false;
     }
-    if (!file && !visit) { /* FILE.COLUMN or FILE.COLUMN@CODE in one text, or a column of the first file */
-        const char *dot = strchr(column, '.');
-        int found = dot ? file_of(plan, column, (size_t)(dot - column)) : NOWHERE;
-        if (found != NOWHERE) {
-            const char *at = plan->files[found].by_visit ? strrchr(dot, '@') : NULL;
-            const char *rest = at ? arena_bytes(&plan->arena, dot + 1, (size_t)(at - dot - 1)) : dot + 1;
-            return settle_place(reader, path, (size_t)found, rest, at ? at + 1 : NULL, name, place);
-        }
+    if (!file && !visit) {
+        return settle_text(reader, path, column, name, place);
     }
     int found = file ? file_of(plan, file, strlen(file)) : 0;
     if (found == NOWHERE || (file && !plan->files[0].id)) {
@@ -557,8 +572,8 @@ static bool read_event(struct reader *reader, const cJSON *item, const char *pat
         !read_text(reader, item, path, "label", false, &event->label) ||
         !read_place(reader, item, path, &event->column, &event->place) ||
         !read_texts(reader, item, path, "yes", &event->yes) || !read_texts(reader, item, path, "no", &event->no) ||
-        !read_text(reader, item, path, "date", false, &event->date) ||
-        !read_text(reader, item, path, "reason", false, &event->reason) ||
+        !read_column(reader, item, path, "date", &event->date, &event->date_place) ||
+        !read_column(reader, item, path, "reason", &event->reason, &event->reason_place) ||
         !read_text(reader, item, path, "kind", false, &event->kind)) {
         return false;
     }
@@ -877,6 +892,11 @@ int plan_identifier_file(const struct plan *plan, const char *column) {
         }
     }
     return NOWHERE;
+}
+
+bool plan_covers(const char *said, const char *name) {
+    size_t length = strlen(said);
+    return strncmp(said, name, length) == 0 && (name[length] == '\0' || name[length] == '@');
 }
 
 const char *plan_column_name(struct arena *arena, const struct plan *plan, size_t file, const char *column) {

@@ -39,13 +39,12 @@ static const char *file_part(const char *path) {
 
 /* ---- the plan against the files ---- */
 
-static bool column_is_there(const struct plan *plan, const struct cells *cells, const struct place *place, const char *what,
+static bool column_is_there(const struct cells *cells, const struct place *place, const char *what,
     const char *const *names, const char *plan_name, struct fault *fault) {
     const struct cells *file = &cells[place->file];
     if (cells_column(file, place->column) != SIZE_MAX) {
         return true;
     }
-    (void)plan;
     char listed[256] = "";
     size_t used = 0;
     for (size_t i = 0; i < file->columns && used + 40 < sizeof listed; i++) {
@@ -58,8 +57,8 @@ static bool column_is_there(const struct plan *plan, const struct cells *cells, 
 static bool file_fits(const struct plan *plan, const struct cells *cells, size_t f, const char *const *names, const char *plan_name,
     struct fault *fault) {
     struct place identifier = {f, 0, plan->files[f].participant}, visit = {f, 0, plan->files[f].visit};
-    return column_is_there(plan, cells, &identifier, "the participant's identifier", names, plan_name, fault) &&
-           (!plan->files[f].by_visit || column_is_there(plan, cells, &visit, "the visit's code", names, plan_name, fault)) &&
+    return column_is_there(cells, &identifier, "the participant's identifier", names, plan_name, fault) &&
+           (!plan->files[f].by_visit || column_is_there(cells, &visit, "the visit's code", names, plan_name, fault)) &&
            (cells[f].records > 0 || fault_at(fault, FAULT_INPUT, 2, 0,
                "%s has a header and no record below it; load a file with at least one participant", names[f]));
 }
@@ -71,12 +70,19 @@ static bool plan_fits(const struct plan *plan, const struct cells *cells, const 
             return false;
         }
     }
-    if ((plan->arm_column && !column_is_there(plan, cells, &plan->arm_place, "the arm", names, plan_name, fault)) ||
-        (plan->site_column && !column_is_there(plan, cells, &plan->site_place, "the site", names, plan_name, fault))) {
+    if ((plan->arm_column && !column_is_there(cells, &plan->arm_place, "the arm", names, plan_name, fault)) ||
+        (plan->site_column && !column_is_there(cells, &plan->site_place, "the site", names, plan_name, fault))) {
         return false;
     }
     for (size_t i = 0; i < plan->variable_count; i++) {
-        if (!column_is_there(plan, cells, &plan->variables[i].place, plan->variables[i].label, names, plan_name, fault)) {
+        if (!column_is_there(cells, &plan->variables[i].place, plan->variables[i].label, names, plan_name, fault)) {
+            return false;
+        }
+    }
+    for (size_t i = 0; i < plan->event_count; i++) {
+        const struct event *event = &plan->events[i];
+        if ((event->date && !column_is_there(cells, &event->date_place, "an event's date", names, plan_name, fault)) ||
+            (event->reason && !column_is_there(cells, &event->reason_place, "an event's reason", names, plan_name, fault))) {
             return false;
         }
     }

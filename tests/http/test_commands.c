@@ -220,7 +220,7 @@ static const struct {
     {"lode x.csv", 2, "there is no command \"lode\"; see: evenhand help"},
     {"help lode", 2, "there is no command \"lode\"; see: evenhand help"},
     {"load", 2,
-        "something is missing: evenhand load DATA.csv --plan PLAN.json --study FILE.study --by \"Name, role\"; see: "
+        "something is missing: evenhand load DATA.csv [MORE.csv ...] --plan PLAN.json --study FILE.study --by \"Name, role\"; see: "
         "evenhand help load"},
     {"load a.csv", 2, "load needs --plan PLAN.json; see: evenhand help load"},
     {"load a.csv --plan p.json", 2, "load needs --study FILE.study; see: evenhand help load"},
@@ -247,7 +247,7 @@ static const struct {
     {"load demo --plan demo/plan.json --study s.study --by A", 1,
         "demo: cannot be read (Is a directory); check the file"},
     {"load demo/export.csv demo/clean.csv --plan demo/plan.json --study s.study --by A", 1,
-        "demo/clean.csv: this version loads one data file; join the files into one first"},
+        "plan.json: the plan takes 1 file, and 2 came; list them under \"files\" in the plan, or load one"},
     {"load demo/export.csv --plan demo/plan.json --study demo/quayside.study --by A", 1,
         "demo/quayside.study is there already and stays as it is; choose another name or move it away"},
     {"load broken.csv --plan demo/plan.json --study s.study --by A", 1,
