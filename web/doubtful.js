@@ -5,7 +5,8 @@ import { decisionForm, focusForm, valueDecision } from "./decide.js";
 import { button, fill, make, restoreFocus, say } from "./page.js";
 import { answerForm, keepRecord, openParticipant } from "./participant.js";
 import * as server from "./server.js";
-import { count, decisionWords } from "./words.js";
+import { study } from "./study.js";
+import { columns, count, decisionWords } from "./words.js";
 
 const state = { article: null, list: [], counts: null, later: new Set(), at: "", show: "open", form: null };
 
@@ -14,7 +15,8 @@ const states = { open: "open", settled: "settled", queried: "asked the site" };
 const people = (discrepancy) => discrepancy.participants?.length ? discrepancy.participants : discrepancy.participant ? [discrepancy.participant] : [];
 
 export async function makeDoubtful(entry, place, signal) {
-  const answer = await server.json("/exhibit/discrepancies.json", signal);
+  // Without the names the list works too, with the columns' own.
+  const [answer] = await Promise.all([server.json("/exhibit/discrepancies.json", signal), study.names().catch(() => {})]);
   const article = make("article", { class: "exhibit doubtful-list", "data-exhibit": entry.name, "data-version": String(answer.version ?? "") });
   const kept = state.form?.isConnected && state.list.some((discrepancy) => discrepancy.id === state.at) ? state.form : null;
   Object.assign(state, { article, list: answer.discrepancies, counts: answer.counts, show: place.show || "open", form: null });
@@ -99,7 +101,7 @@ function itemPart(discrepancy) {
     at ? make("div", { class: "settle" }, settlePart(discrepancy)) : null);
 }
 
-const value = (discrepancy) => ({ column: discrepancy.column, label: discrepancy.label ?? discrepancy.column, unit: discrepancy.unit ?? "", current: discrepancy.value, levels: discrepancy.levels ?? [] });
+const value = (discrepancy) => ({ column: discrepancy.column, label: columns.get(discrepancy.column)?.label || discrepancy.column, unit: columns.get(discrepancy.column)?.unit ?? "", current: discrepancy.value, levels: [] });
 
 function settlePart(discrepancy) {
   const open = discrepancy.state !== "settled";

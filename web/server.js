@@ -3,11 +3,18 @@
 
 export class Fault extends Error {
   constructor(sentence, status, more = {}) {
-    super(sentence);
+    super(asSentence(sentence));
     this.status = status;
     this.version = more.version;
     this.row = more.row;
   }
+}
+
+// The program's sentences also stand after "evenhand: " in a terminal; here they begin and end as sentences do. Names of
+// files and columns keep their letters.
+function asSentence(text) {
+  const begun = /^[a-z]+ /.test(text) ? text[0].toUpperCase() + text.slice(1) : text;
+  return /[.!?:]$/.test(begun) ? begun : `${begun}.`;
 }
 
 async function answer(request) {

@@ -1,6 +1,9 @@
 // SPDX-License-Identifier: GPL-3.0-or-later
 // The open study as the page knows it: its agenda at one version, and who is deciding.
 import * as server from "./server.js";
+import { columns } from "./words.js";
+
+let names_of = ""; // the data whose columns are named in words.js
 
 export const study = Object.assign(new EventTarget(), {
   agenda: null,
@@ -19,6 +22,15 @@ export const study = Object.assign(new EventTarget(), {
     await study.redraw();
   },
   redraw: async () => {}, // set by the page
+
+  // What the plan calls the columns; the same at every version of a study.
+  async names() {
+    if (names_of === study.agenda.data_sha256) return;
+    const answer = await server.json("/exhibit/columns.json");
+    columns.clear();
+    for (const { column, label, unit } of answer.columns) columns.set(column, { label, unit });
+    names_of = study.agenda.data_sha256;
+  },
 
   async record() {
     const version = study.agenda.version;

@@ -21,19 +21,23 @@ export const fingerprint = (hash) => (hash ? [0, 4, 8].map((at) => hash.slice(at
 export const count = (number, one, many = `${one}s`) => `${number.toLocaleString("en-GB")} ${number === 1 ? one : many}`;
 export const quoted = (text) => (text === null || text === undefined ? "missing" : text === "" ? "blank" : `“${text}”`);
 
+// What the plan calls the columns, once it is known: {label, unit} by name of column.
+export const columns = new Map();
+const named = (column) => columns.get(column)?.label || column;
+
 // A decision as a sentence, for previews and for what is said after it.
 export function decisionWords(decision) {
-  const at = decision.column ? ` in ${decision.column}` : "";
+  const at = decision.column ? ` in ${named(decision.column)}` : "";
   const of = decision.participant ? ` of ${decision.participant}` : "";
   switch (decision.kind) {
     case "read-as": return `Read ${quoted(decision.from)} as ${quoted(decision.to)} everywhere${at}`;
     case "missing-code": return `${quoted(decision.value)} stands for a missing value${at}`;
     case "number-format": return decision.decimal === "," ? `A comma is the decimal mark${at}` : `A point is the decimal mark${at}`;
-    case "correct": return `Correct ${decision.column}${of} from ${quoted(decision.from)} to ${quoted(decision.to)}`;
-    case "set-missing": return `Set ${decision.column}${of} missing (it was ${quoted(decision.from)})`;
-    case "confirm": return `Confirm ${decision.column}${of} as recorded: ${quoted(decision.value)}`;
+    case "correct": return `Correct ${named(decision.column)}${of} from ${quoted(decision.from)} to ${quoted(decision.to)}`;
+    case "set-missing": return `Set ${named(decision.column)}${of} missing (it was ${quoted(decision.from)})`;
+    case "confirm": return `Confirm ${named(decision.column)}${of} as recorded: ${quoted(decision.value)}`;
     case "keep-record": return `Record ${decision.row} stands for ${decision.participant}`;
-    case "query": return `Ask the site about ${decision.column ?? "the record"}${of}: ${decision.question}`;
+    case "query": return `Ask the site about ${decision.column ? named(decision.column) : "the record"}${of}: ${decision.question}`;
     case "response": return `Answer to query ${decision.number}: ${decision.text}`;
     case "flag": return `Mark ${decision.participant} as doubtful for ${decision.outcome}`;
     case "scale": return `Analyse ${decision.outcome} on the ${decision.scale} scale`;
