@@ -28,7 +28,8 @@ const char *cell_state_words(enum cell_state state); /* "code for missing" */
 struct column {
     atomic_uint references;
     struct arena arena;
-    const struct cells *cells; /* of the file it lives in; borrowed */
+    const struct cells *cells; /* of the file it lives in; borrowed. NULL where it is computed */
+    const char **texts;        /* [participants] computed: the value as shown, NULL where there is none; else NULL */
     size_t index;              /* column of those cells */
     size_t file;               /* of the plan's files */
     size_t slot;               /* which of a participant's records it is read from: frame.place[slot] */

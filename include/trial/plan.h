@@ -102,13 +102,45 @@ struct event {
     int variable;
 };
 
-/* Every column the plan gives a meaning to, once: covariates, then outcomes visit by visit, then events. The arm and the
- * participant are not among them. */
+/* A value computed from columns: the plan writes it derived.ID wherever it may write a column. */
+enum derived_formula {
+    DERIVED_MEAN,            /* of the items present */
+    DERIVED_SUM,             /* mean of the items present times the number of items */
+    DERIVED_DIFFERENCE,      /* first minus second */
+    DERIVED_RATIO,           /* first over second */
+    DERIVED_BODY_MASS_INDEX, /* weight in kg over the square of height in m */
+    DERIVED_FORMULA_COUNT
+};
+struct derived_input {
+    const char *column; /* a column's name, or derived.ID of one before it in the list */
+    struct place place; /* without a meaning where derived */
+    int variable;
+};
+struct derived {
+    const char *id, *label, *unit;
+    const char *column; /* "derived.ID" */
+    enum derived_formula formula;
+    struct derived_input *of;
+    size_t of_count;
+    size_t minimum_items; /* mean and sum: as many must be present; of_count for the others */
+    bool height_in_cm;    /* body mass index: else m */
+    const char *claims;   /* the file's own column of the same, NULL where none */
+    struct place claims_place;
+    int claims_variable; /* NOWHERE where none */
+    double tolerance;    /* a claim may differ by as much; NaN: what rounding explains */
+    struct range plausible;
+    const struct texts *missing_codes; /* of inputs and claim, where nothing else in the plan gives them a meaning */
+    int variable;
+};
+
+/* Every column the plan gives a meaning to, once: covariates, then outcomes visit by visit, then events, then derived values and
+ * what only they rest on. The arm and the participant are not among them. */
 struct variable {
     const char *column, *label, *unit; /* of an outcome's visit: "Systolic blood pressure, 26 weeks" */
     struct place place;
     enum variable_kind kind;
     int outcome, visit, covariate, event; /* where it comes from, else NOWHERE */
+    int derived; /* index into plan.derived where it is computed (place.column is NULL then), else NOWHERE */
     struct range plausible, eligible;
     const struct texts *missing_codes;
 };
@@ -143,6 +175,8 @@ struct plan {
     double confidence;
     enum blinding blinding;
     uint64_t seed;
+    struct derived *derived; /* none rests on one after it */
+    size_t derived_count;
     const char *site_column; /* NULL where none */
     struct place site_place;
     struct variable *variables;
@@ -157,6 +191,9 @@ int plan_outcome(const struct plan *plan, const char *id); /* index or NOWHERE *
 int plan_covariate(const struct plan *plan, const char *id);
 int plan_event(const struct plan *plan, const char *id);
 int plan_variable(const struct plan *plan, const char *column); /* index into variables or NOWHERE */
+/* Whether a variable is, or is computed from, an outcome's follow-up (or another column of the same visit in a file with one row
+ * per visit), so that it was recorded after randomisation. */
+bool plan_after_randomisation(const struct plan *plan, int variable);
 /* The file whose identifiers (or, by_visit, visit codes) the name means: "FILE.COLUMN". NOWHERE where it means neither. */
 int plan_identifier_file(const struct plan *plan, const char *column);
 int plan_visit_file(const struct plan *plan, const char *column);

@@ -667,7 +667,8 @@ static bool place_variable(struct reader *reader, const struct variable *wanted,
 }
 
 static bool settle_variables(struct reader *reader) {
-    static const struct variable none = {.outcome = NOWHERE, .visit = NOWHERE, .covariate = NOWHERE, .event = NOWHERE};
+    static const struct variable none = {.outcome = NOWHERE, .visit = NOWHERE, .covariate = NOWHERE, .event = NOWHERE,
+        .derived = NOWHERE};
     static const struct texts no_codes = {0};
     struct plan *plan = reader->plan;
     size_t room = plan->covariate_count + plan->event_count;
