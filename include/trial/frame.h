@@ -6,6 +6,7 @@
 #define EVENHAND_TRIAL_FRAME_H
 #include "base/hash.h"
 #include "intake/cells.h"
+#include "trial/dates.h"
 #include "trial/plan.h"
 #include "trial/record.h"
 #include <stdatomic.h>
@@ -36,7 +37,7 @@ struct column {
     enum variable_kind kind;
     const char **changed; /* [records] current text (NULL: set missing), where any cell has changed; else NULL: as received */
     uint32_t *origin;     /* [records] number of the decision that made it, 0: as received; NULL like changed */
-    double *number;       /* [participants] numbers: the value, NaN unless observed */
+    double *number;       /* [participants] numbers, dates (as days): the value, NaN unless observed */
     double *limit;        /* [participants] numbers: the limit where below or above one, else NaN; NULL where there is none */
     int32_t *level;       /* [participants] categories, events (0 no, 1 yes), arm: index of the level, NOWHERE if missing */
     unsigned char *state; /* [participants] enum cell_state */
@@ -62,6 +63,10 @@ struct join {
     size_t unmatched; /* of an identifier that the first file does not have */
     size_t unplanned; /* of a visit that is not among the codes */
     size_t doubled;   /* participants and visits with several records, none kept yet */
+    /* where visits are found by date (plan_file.window); `unplanned` are then those outside every window: */
+    size_t undated;   /* without a readable date, or of a participant without a date of randomisation */
+    size_t farther;   /* in a window, but another record is nearer to the target day */
+    size_t ties;      /* equally near to two target days, or two records equally near to one: the later was taken */
 };
 
 struct frame {
@@ -80,6 +85,7 @@ struct frame {
     struct column *identifier;   /* of the first file; texts only, as are the next two */
     struct column **identifiers; /* [files] identifiers[0] == identifier */
     struct column **visits;      /* [files] visit codes; NULL where a file has one row per participant */
+    struct column **windows;     /* [files] texts of plan_file.window, NULL where there is none */
     size_t **place;              /* [slots][participants] 0-based record of the slot's file, NO_RECORD or HELD_RECORD */
     struct join *joins;          /* [files] */
     size_t roster;               /* records that stand for participants in the first file: all of them, or with one row per
@@ -118,6 +124,10 @@ static inline size_t frame_place(const struct frame *frame, const struct column 
 const char *frame_received(const struct frame *frame, const struct column *column, size_t participant);
 /* Current text of a column for a participant: NULL where set missing, held aside or without a record of the visit. */
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant);
+/* The participant's site as it now reads, NULL where the plan has none or it is not known. */
+const char *frame_site(const struct frame *frame, size_t participant);
+/* The order in which a date's column is read for a site: the last decision that stands, else the plan. */
+enum date_order frame_date_order(const struct frame *frame, const char *column, size_t file, const char *site);
 /* The frame's column of that name (variable, arm, identifier) or NULL. */
 const struct column *frame_column(const struct frame *frame, const char *name);
 /* The 0-based records of the first file that bear a participant's identifier, in file order: at most `room` are written; returns how many. */

@@ -11,7 +11,15 @@
 
 enum scale { SCALE_LINEAR, SCALE_LOG10 };
 enum blinding { BLINDING_POOLED, BLINDING_CODED, BLINDING_UNBLINDED };
-enum variable_kind { VARIABLE_NUMBER, VARIABLE_CATEGORY, VARIABLE_EVENT, VARIABLE_ARM, VARIABLE_PARTICIPANT, VARIABLE_VISIT };
+enum variable_kind {
+    VARIABLE_NUMBER,
+    VARIABLE_CATEGORY,
+    VARIABLE_EVENT,
+    VARIABLE_ARM,
+    VARIABLE_PARTICIPANT,
+    VARIABLE_VISIT,
+    VARIABLE_DATE /* day numbers, see trial/dates.h */
+};
 enum { NOWHERE = -1 }; /* an index that points at nothing */
 
 struct texts {
@@ -37,6 +45,8 @@ struct plan_file {
     const char *visit;       /* by_visit: its column of the visit's code */
     struct texts codes;      /* by_visit: the planned codes, in order of time */
     const char *identifier_name, *visit_name; /* the same as decisions name them */
+    const char *window, *window_name; /* by_visit: the column of the date by which a record finds its visit, and its name in
+                                         decisions; NULL: the visit's code says */
     size_t first_slot;       /* see plan.slots */
 };
 
@@ -133,14 +143,15 @@ struct derived {
     int variable;
 };
 
-/* Every column the plan gives a meaning to, once: covariates, then outcomes visit by visit, then events, then derived values and
- * what only they rest on. The arm and the participant are not among them. */
+/* Every column the plan gives a meaning to, once: covariates, then outcomes visit by visit, then events, then dates, then
+ * derived values and what only they rest on. The arm and the participant are not among them. */
 struct variable {
     const char *column, *label, *unit; /* of an outcome's visit: "Systolic blood pressure, 26 weeks" */
     struct place place;
     enum variable_kind kind;
     int outcome, visit, covariate, event; /* where it comes from, else NOWHERE */
     int derived; /* index into plan.derived where it is computed (place.column is NULL then), else NOWHERE */
+    int moment;                           /* index into plan.dates->moments, else NOWHERE */
     struct range plausible, eligible;
     const struct texts *missing_codes;
 };
@@ -177,6 +188,7 @@ struct plan {
     uint64_t seed;
     struct derived *derived; /* none rests on one after it */
     size_t derived_count;
+    struct dates *dates;     /* NULL where the plan has none; see trial/dates.h */
     const char *site_column; /* NULL where none */
     struct place site_place;
     struct variable *variables;
