@@ -9,7 +9,7 @@ SERVER := $(shell find server -name '*.c' | sort)
 DEMO := $(shell find demo -name '*.c' | sort)
 WEB := $(shell find web -type f | sort)
 OUT := build/$(VARIANT)
-LIBRARIES := libmicrohttpd gsl sqlite3 libcjson nettle
+LIBRARIES := libmicrohttpd gsl sqlite3 libcjson nettle libzip expat
 WARNINGS := -Wall -Wextra -Wpedantic -Wshadow -Wvla -Wformat=2 -Wstrict-prototypes -Wmissing-prototypes \
             -Wwrite-strings -Wundef -Wconversion -Wdouble-promotion -Werror
 MODE_release := -O2 -g
@@ -20,7 +20,7 @@ MODE_cov := -O0 -g --coverage
 CFLAGS := -std=c11 -D_GNU_SOURCE -Iinclude -I. $(WARNINGS) $(MODE_$(VARIANT)) -ffp-contract=off -pthread \
           $(shell pkg-config --cflags $(LIBRARIES) 2>/dev/null) $(EXTRA_CFLAGS)
 LDFLAGS := $(filter -fsanitize% --coverage,$(MODE_$(VARIANT))) -pthread
-LDLIBS = $(shell pkg-config --libs $(LIBRARIES)) -lunistring -lm
+LDLIBS = $(shell pkg-config --libs $(LIBRARIES)) -lunistring -lreadstat -lm
 
 LIBRARY_OBJECTS := $(patsubst %.c,$(OUT)/%.o,$(filter-out server/main.c,$(SERVER)) $(DEMO)) $(OUT)/assets.o
 TESTS := $(shell find tests/unit tests/reference tests/http -name 'test_*.c' 2>/dev/null | sort)

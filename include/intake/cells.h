@@ -5,10 +5,25 @@
 #ifndef EVENHAND_INTAKE_CELLS_H
 #define EVENHAND_INTAKE_CELLS_H
 #include "base/fault.h"
+#include "base/memory.h"
 #include <stddef.h>
 #include <stdint.h>
 
-/* One file's cells. Filled by cells_read, emptied by cells_release; read-only in between, so any number of threads
+/* A code and what the file says it means. */
+struct cell_label {
+    const char *code, *label; /* code: the text a cell with it has; not empty */
+};
+
+/* What a file says of one of its columns besides the cells; only statistical files do. UTF-8 throughout. */
+struct cell_about {
+    const char *label;               /* the variable's label, "" where it has none */
+    const struct cell_label *values; /* value labels, in the file's order; columns may share one list */
+    size_t value_count;
+    const char *const *missing;      /* cell texts the file itself declares as missing, none twice */
+    size_t missing_count;
+};
+
+/* One file's cells. Filled by cells_read (or read_cells of intake/read.h), emptied by cells_release; read-only in between, so any number of threads
  * may read it. Cell k = record * columns + column is the UTF-8 text at bytes + start[k], NUL-terminated, spaces kept,
  * start[k + 1] - start[k] - 1 bytes long: start has records * columns + 1 entries. */
 struct cells {
@@ -16,12 +31,19 @@ struct cells {
     char **names;              /* the header's names, ASCII space around them trimmed; not empty, none twice */
     char *bytes;
     uint32_t *start;
-    uint32_t *line;            /* per record: 1-based physical line of the file where it starts */
-    size_t blank_lines;        /* lines with nothing on them, skipped */
-    char delimiter;            /* ',' ';' '\t' */
+    uint32_t *line;            /* per record: 1-based physical line of the file where it starts, row of the sheet, or
+                                * number of the observation, as `place` says */
+    size_t blank_lines;        /* lines or rows with nothing on them, skipped */
+    char delimiter;            /* ',' ';' '\t', 0 where the file is no delimited text */
     bool byte_order_mark;
-    const char *encoding;      /* for a person: "UTF-8", "UTF-16, little-endian", "Windows-1252", ... */
-    const char *delimiter_word; /* for a person: "comma", "semicolon", "tab", "none (one column)" */
+    const char *format;        /* for a person: "delimited text", "spreadsheet (.xlsx)", ... */
+    const char *place;         /* what `line` counts: "line", "row" or "observation" */
+    const char *encoding;      /* for a person: "UTF-8", "UTF-16, little-endian", "Windows-1252", ...; of other
+                                * formats what was recognised: "spreadsheet (.xlsx), sheet \"Export\"", ... */
+    const char *delimiter_word; /* for a person: "comma", "semicolon", "tab", "none (one column)", "none (...)" */
+    const char *notes;         /* sentences for a person on how cells became text; "" where nothing is to be said */
+    const struct cell_about *about; /* per column; NULL where the format says nothing of its columns */
+    struct arena arena;        /* owns what the fields above point at, beside bytes, start, line and the names' array */
 };
 
 /* Reads `length` received bytes; `name` is how sentences call the file. On failure `cells` is empty and the fault is

@@ -1,11 +1,11 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "intake/cells.h"
 #include "base/memory.h"
-#include "intake/number.h"
 #include "server/intake/encoding.h"
+#include "server/intake/header.h"
 #include <string.h>
 
-enum { LENGTH_LIMIT = 512 << 20, COLUMN_LIMIT = 1999, TIE_RECORDS = 20 };
+enum { LENGTH_LIMIT = 512 << 20, TIE_RECORDS = 20 };
 
 /* The characters that end a run of plain bytes; all else is copied as it stands. */
 enum special { PLAIN, QUOTE, DELIMITER, LINE_FEED, CARRIAGE_RETURN, NUL_BYTE };
@@ -209,35 +209,13 @@ static void recognise_delimiter(struct cells *cells, const char *bytes, size_t l
     cells->delimiter_word = counts[best] ? delimiters[best].word : "none (one column)";
 }
 
-static void trim(char *text) {
-    size_t length = strlen(text), lead = strspn(text, " \t\n\v\f\r");
-    while (length > lead && strchr(" \t\n\v\f\r", text[length - 1])) {
-        length--;
-    }
-    memmove(text, text + lead, length - lead);
-    text[length - lead] = '\0';
-}
-
 static bool check_names(struct reader *reader, const struct cells *cells) {
-    bool numbers = true;
-    for (size_t i = 0; i < cells->columns; i++) {
-        const char *name = cells->names[i];
-        if (!*name) {
-            return refuse(reader, reader->record_line, i + 1,
-                "this column has no name in the header; give it one and load again");
-        }
-        size_t first = cells_column(cells, name);
-        if (first != i) {
-            return fault_at(reader->fault, FAULT_INPUT, reader->record_line, i + 1,
-                "%s, line %zu, column %zu: the name %.200s stands in column %zu already; give each column a name of "
-                "its own and load again",
-                reader->name, reader->record_line, i + 1, name, first + 1);
-        }
-        numbers = numbers && number_read(name, ',', NULL, NULL) == NUMBER_READ;
+    struct header_flaw flaw;
+    char what[HEADER_FLAW_ROOM];
+    if (header_check(cells->names, cells->columns, &flaw)) {
+        return true;
     }
-    return !numbers || refuse(reader, reader->record_line, 1,
-                           "no header: the first line holds only numbers; put a line with the columns' names above it "
-                           "and load again");
+    return refuse(reader, reader->record_line, flaw.column + 1, header_sentence(what, &flaw, "line", cells->names, NULL));
 }
 
 static bool read_header(struct reader *reader, struct cells *cells) {
@@ -257,7 +235,7 @@ static bool read_header(struct reader *reader, struct cells *cells) {
         if (end == FIELD_BAD) {
             return false;
         }
-        trim(name);
+        header_trim(name);
         if ((cells->columns & (cells->columns - 1)) == 0) {
             cells->names = memory_grow(cells->names, cells->columns ? 2 * cells->columns : 1, sizeof *cells->names);
         }
@@ -341,6 +319,9 @@ bool cells_read(struct cells *cells, const char *bytes, size_t length, const cha
     }
     cells->encoding = encoded.word;
     cells->byte_order_mark = encoded.byte_order_mark;
+    cells->format = "delimited text";
+    cells->place = "line";
+    cells->notes = "";
     bool done = read_text(cells, encoded.text, encoded.length, name, fault);
     memory_free(encoded.owned);
     if (!done) {
@@ -354,6 +335,7 @@ void cells_release(struct cells *cells) {
     memory_free(cells->bytes);
     memory_free(cells->start);
     memory_free(cells->line);
+    arena_release(&cells->arena);
     *cells = (struct cells){0};
 }
 
