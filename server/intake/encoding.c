@@ -95,22 +95,31 @@ static bool read_utf16(struct encoded *encoded, const char *bytes, size_t length
     return true;
 }
 
-static bool read_windows_1252(struct encoded *encoded, const char *bytes, size_t length, const char *name,
-    struct fault *fault) {
-    char *out = encoded->owned = memory_grow(NULL, 3 * length, 1);
+const char *encoding_windows_1252(char *out, size_t *written, const char *bytes, size_t length) {
+    char *at = out;
     for (size_t i = 0; i < length; i++) {
         unsigned char c = (unsigned char)bytes[i];
         uint32_t point = c >= 0x80 && c < 0xA0 ? windows_1252[c - 0x80] : c;
         if (c >= 0x80 && point == 0) {
-            memory_free(encoded->owned);
-            encoded->owned = NULL;
-            return refuse(bytes, i, ORDER_NONE, name,
-                "a byte that neither UTF-8 nor Windows-1252 explains", fault);
+            return bytes + i;
         }
-        out += c < 0x80 ? (*out = (char)c, 1) : u8_uctomb((uint8_t *)out, point, 3);
+        at += c < 0x80 ? (*at = (char)c, 1) : u8_uctomb((uint8_t *)at, point, 3);
+    }
+    *written = (size_t)(at - out);
+    return NULL;
+}
+
+static bool read_windows_1252(struct encoded *encoded, const char *bytes, size_t length, const char *name,
+    struct fault *fault) {
+    encoded->owned = memory_grow(NULL, 3 * length, 1);
+    const char *bad = encoding_windows_1252(encoded->owned, &encoded->length, bytes, length);
+    if (bad) {
+        memory_free(encoded->owned);
+        encoded->owned = NULL;
+        return refuse(bytes, (size_t)(bad - bytes), ORDER_NONE, name,
+            "a byte that neither UTF-8 nor Windows-1252 explains", fault);
     }
     encoded->text = encoded->owned;
-    encoded->length = (size_t)(out - encoded->owned);
     encoded->word = "Windows-1252";
     return true;
 }

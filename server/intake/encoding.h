@@ -15,4 +15,7 @@ struct encoded {
 
 /* length >= 1. Borrows bytes; encoded.text may point into them. */
 bool encoding_read(struct encoded *encoded, const char *bytes, size_t length, const char *name, struct fault *fault);
+/* Windows-1252 -> UTF-8 at `out`, which has room for 3 * length bytes. The first byte that Windows-1252 does not define,
+ * NULL where all is written. */
+const char *encoding_windows_1252(char *out, size_t *written, const char *bytes, size_t length);
 #endif

@@ -3,6 +3,7 @@
  * joined to their columns at the end. */
 #include "server/intake/statistical.h"
 #include "server/intake/build.h"
+#include "server/intake/encoding.h"
 #include "server/intake/shown.h"
 #include <ctype.h>
 #include <math.h>
@@ -119,7 +120,9 @@ struct reading {
     const char *encoding;   /* as the file says; NULL */
     int64_t promised;       /* records the file says it has, -1 where it does not say */
     size_t row_width;       /* of a transport file's records */
+    bool windows_1252;      /* texts are taken as Windows-1252 */
     bool not_utf8;          /* a text came that is not UTF-8: the file does not say its encoding */
+    struct text converted;  /* the text being converted */
 };
 
 static bool refuse(struct reading *reading, const char *what) {
@@ -144,14 +147,35 @@ static void *push(struct arena *arena, void *array, size_t *count, size_t size) 
     return array;
 }
 
-/* Text as the cells have it: the pad of fixed widths taken off; in the arena of the cells. */
-static const char *keep_text(struct reading *reading, const char *text) {
-    size_t length = text ? strlen(text) : 0;
-    while (length && text[length - 1] == ' ') {
-        length--;
+/* Text as the cells have it: without the pad of fixed widths, in UTF-8. Borrowed until the next one. We convert, not
+ * ReadStat, which leaks a variable whose name it cannot convert (1.1.8). */
+static const char *plain_text(struct reading *reading, const char *text, size_t *length) {
+    *length = text ? strlen(text) : 0;
+    while (*length && text[*length - 1] == ' ') {
+        --*length;
     }
-    reading->not_utf8 = reading->not_utf8 || (length && u8_check((const uint8_t *)text, length));
-    return arena_bytes(&reading->build.cells->arena, length ? text : "", length);
+    if (!*length) {
+        return "";
+    }
+    if (!reading->windows_1252) {
+        reading->not_utf8 = reading->not_utf8 || u8_check((const uint8_t *)text, *length);
+        return text;
+    }
+    struct text *converted = &reading->converted;
+    for (text_clear(converted); converted->length < 3 * *length;) {
+        text_literal(converted, "   ");
+    }
+    if (encoding_windows_1252(converted->data, length, text, *length)) {
+        refuse(reading, "its texts are neither UTF-8 nor Windows-1252; export it again in UTF-8 and load that");
+        *length = 0;
+    }
+    return converted->data;
+}
+
+static const char *keep_text(struct reading *reading, const char *text) {
+    size_t length;
+    text = plain_text(reading, text, &length);
+    return arena_bytes(&reading->build.cells->arena, text, length);
 }
 
 /* --- dates -------------------------------------------------------------------------------------------------------- */
@@ -281,6 +305,7 @@ static const char *text_of(struct reading *reading, enum shown shown, readstat_v
     return room;
 }
 
+/* code: plain text. */
 static bool declare_missing(struct reading *reading, struct column *column, const char *code) {
     for (size_t i = 0; i < column->missing_count; i++) {
         if (!strcmp(column->missing[i], code)) {
@@ -294,9 +319,8 @@ static bool declare_missing(struct reading *reading, struct column *column, cons
         return refuse(reading, "a column has more than 1,000 different values that the file declares as missing; declare "
                                "fewer and export it again");
     }
-    const char *kept = keep_text(reading, code);
     column->missing = push(&reading->build.cells->arena, column->missing, &column->missing_count, sizeof *column->missing);
-    column->missing[column->missing_count - 1] = kept;
+    column->missing[column->missing_count - 1] = arena_text(&reading->build.cells->arena, code);
     return true;
 }
 
@@ -325,7 +349,8 @@ static bool take_ranges(struct reading *reading, struct column *column, const re
         char room[2][SHOWN_ROOM];
         const char *code = text_of(reading, column->shown, low, room[0]);
         bool one = !strcmp(code, text_of(reading, column->shown, high, room[1]));
-        if (one && !declare_missing(reading, column, code)) { /* of a span only the codes that come are listed */
+        /* Of a span only the codes that come are listed. */
+        if (one && !declare_missing(reading, column, keep_text(reading, code))) {
             return false;
         }
     }
@@ -351,7 +376,7 @@ static int on_variable(int index, readstat_variable_t *variable, const char *set
         .label = keep_text(reading, readstat_variable_get_label(variable)),
         .set = set && *set ? arena_text(&reading->scratch, set) : NULL};
     reading->row_width += readstat_variable_get_storage_width(variable);
-    return take_ranges(reading, column, variable) ? READSTAT_HANDLER_OK : READSTAT_HANDLER_ABORT;
+    return take_ranges(reading, column, variable) && reading->fault->code == FAULT_NONE ? READSTAT_HANDLER_OK : READSTAT_HANDLER_ABORT;
 }
 
 static int on_value(int observation, readstat_variable_t *variable, readstat_value_t value, void *of) {
@@ -366,14 +391,8 @@ static int on_value(int observation, readstat_variable_t *variable, readstat_val
     }
     struct column *column = &reading->columns[index];
     char room[SHOWN_ROOM];
-    const char *text = text_of(reading, column->shown, value, room);
-    size_t length = strlen(text);
-    while (length && text[length - 1] == ' ') {
-        length--;
-    }
-    if (text != room && length && u8_check((const uint8_t *)text, length)) {
-        reading->not_utf8 = true;
-    }
+    size_t length;
+    const char *text = plain_text(reading, text_of(reading, column->shown, value, room), &length);
     if (!build_cell(&reading->build, text, length)) {
         return stop(reading, build_limit);
     }
@@ -381,7 +400,7 @@ static int on_value(int observation, readstat_variable_t *variable, readstat_val
     if (missing && !declare_missing(reading, column, reading->build.text.data + cells->start[reading->build.count - 1])) {
         return READSTAT_HANDLER_ABORT;
     }
-    return READSTAT_HANDLER_OK;
+    return reading->fault->code == FAULT_NONE ? READSTAT_HANDLER_OK : READSTAT_HANDLER_ABORT;
 }
 
 static struct label_set *set_named(struct reading *reading, const char *name) {
@@ -423,7 +442,7 @@ static int on_label(const char *name, readstat_value_t value, const char *label,
         set->labels = push(&reading->build.cells->arena, set->labels, &set->count, sizeof *set->labels);
         set->labels[set->count - 1] = (struct cell_label){code, keep_text(reading, label)};
     }
-    return READSTAT_HANDLER_OK;
+    return reading->fault->code == FAULT_NONE ? READSTAT_HANDLER_OK : READSTAT_HANDLER_ABORT;
 }
 
 /* --- bytes -------------------------------------------------------------------------------------------------------- */
@@ -460,7 +479,7 @@ static ssize_t read_bytes(void *room, size_t wanted, void *of) {
     return (ssize_t)got;
 }
 
-static readstat_parser_t *new_parser(struct received *received, const char *encoding) {
+static readstat_parser_t *new_parser(struct received *received) {
     readstat_parser_t *parser = readstat_parser_init();
     if (!parser) {
         return NULL;
@@ -474,9 +493,6 @@ static readstat_parser_t *new_parser(struct received *received, const char *enco
     readstat_set_variable_handler(parser, on_variable);
     readstat_set_value_handler(parser, on_value);
     readstat_set_value_label_handler(parser, on_label);
-    if (encoding) {
-        readstat_set_file_character_encoding(parser, encoding);
-    }
     return parser;
 }
 
@@ -573,9 +589,9 @@ static void describe(struct reading *reading) {
     text_release(&text);
 }
 
-static bool parse(struct reading *reading, const char *bytes, size_t length, const char *encoding) {
+static bool parse(struct reading *reading, const char *bytes, size_t length) {
     struct received received = {.bytes = bytes, .length = length};
-    readstat_parser_t *parser = new_parser(&received, encoding);
+    readstat_parser_t *parser = new_parser(&received);
     if (!parser) {
         return fault_set(reading->fault, FAULT_SYSTEM, "%s: no memory to read it; close other programs and try again",
             reading->name);
@@ -592,39 +608,32 @@ static bool parse(struct reading *reading, const char *bytes, size_t length, con
     return check_whole(reading, bytes, length);
 }
 
-/* Reads all with that encoding, NULL for what the file says. `not_utf8`: its texts turned out not to be UTF-8. */
+/* `not_utf8`: the texts, taken as the file or ReadStat says, turned out not to be UTF-8. */
 static bool read_as(struct cells *cells, const struct statistical_format *format, const char *bytes, size_t length,
-    const char *name, const char *encoding, bool *not_utf8, struct fault *fault) {
-    struct reading reading = {.format = format, .name = name, .fault = fault, .promised = -1};
+    const char *name, bool windows_1252, bool *not_utf8, struct fault *fault) {
+    struct reading reading = {.format = format, .name = name, .fault = fault, .promised = -1,
+        .windows_1252 = windows_1252};
     build_init(&reading.build, cells);
     arena_init(&reading.scratch);
-    bool done = (!is_transport(bytes, length) || check_cards(&reading, bytes, length)) &&
-                parse(&reading, bytes, length, encoding);
+    text_init(&reading.converted);
+    bool done = (!is_transport(bytes, length) || check_cards(&reading, bytes, length)) && parse(&reading, bytes, length);
+    *not_utf8 = done && reading.not_utf8;
+    done = done && !reading.not_utf8;
     if (done) {
-        reading.encoding = encoding ? encoding : reading.encoding;
+        reading.encoding = windows_1252 ? "Windows-1252" : reading.encoding;
         describe(&reading);
-    }
-    *not_utf8 = reading.not_utf8;
-    if (done && !reading.not_utf8) {
         build_finish(&reading.build);
     } else {
         build_drop(&reading.build);
     }
+    text_release(&reading.converted);
     arena_release(&reading.scratch);
-    return done && !reading.not_utf8;
+    return done;
 }
 
 bool statistical_read(struct cells *cells, const struct statistical_format *format, const char *bytes, size_t length,
     const char *name, struct fault *fault) {
-    bool not_utf8 = false;
-    if (read_as(cells, format, bytes, length, name, NULL, &not_utf8, fault)) {
-        return true;
-    }
-    if (fault->code == FAULT_NONE && not_utf8 &&
-        read_as(cells, format, bytes, length, name, "WINDOWS-1252", &not_utf8, fault)) {
-        return true;
-    }
-    return fault_set(fault, FAULT_INPUT,
-        "%s, a %s: its texts are neither UTF-8 nor Windows-1252; export it again in UTF-8 and load that", name,
-        format->word);
+    bool not_utf8;
+    return read_as(cells, format, bytes, length, name, false, &not_utf8, fault) ||
+           (not_utf8 && read_as(cells, format, bytes, length, name, true, &not_utf8, fault));
 }

@@ -301,8 +301,11 @@ static void reads_texts_of_windows_1252(void **state) {
     memcpy(at, "Ren\xE9 ", 5);
     assert_true(read_exact(&cells, file.data, file.length, "t.xpt", &fault));
     assert_string_equal(cells_at(&cells, 1, 0), "Ren\xC3\xA9");
-    assert_string_equal(cells.encoding, "transport file (.xpt), version 5, WINDOWS-1252");
+    assert_string_equal(cells.encoding, "transport file (.xpt), version 5, Windows-1252");
     cells_release(&cells);
+    at[3] = '\x81';
+    refuse_bytes(file.data, file.length, "t.xpt, a transport file (.xpt): its texts are neither UTF-8 nor Windows-1252; export "
+        "it again in UTF-8 and load that");
     text_release(&file);
 }
 
