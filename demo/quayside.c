@@ -3,13 +3,10 @@
  * comes from integers and the four operations, so that the bytes do not hang on a mathematics library. */
 #include "demo/quayside.h"
 #include "base/memory.h"
+#include "demo/inner.h"
 #include <inttypes.h>
 #include <stdio.h>
 #include <string.h>
-
-enum { PARTICIPANTS = 240, SITES = 6, CELL_SIZE = 24, TROUBLES_MAX = 96, FIRST_IDENTIFIER = 1001 };
-enum column { PID, SITE, GRP, SEX, AGE, BMI, SBP_0, SBP_8, SBP_26, UACR_0, UACR_8, UACR_26, RESCUE, COLUMNS };
-enum arm { ADVICE, WALKING, ARMS };
 
 static const char *const column_names[COLUMNS] = {"pid",   "site",   "grp",    "sex",    "age",     "bmi",   "sbp_0",
                                                   "sbp_8", "sbp_26", "uacr_0", "uacr_8", "uacr_26", "rescue"};
@@ -29,13 +26,6 @@ static const struct truth {
 
 static const double site_shift[SITES] = {-2.0, 0.5, 1.5, 0.0, 1.0, -1.0}; /* mmHg at follow-up */
 static const double site_share[SITES] = {0.26, 0.20, 0.18, 0.14, 0.12, 0.10};
-
-/* How a trouble is settled: each is one kind of decision, or none. */
-enum settling { BY_PLAN, LEFT, READ_AS, NUMBER_FORMAT, CORRECT, SET_MISSING, CONFIRM, KEEP_RECORD };
-enum kind {
-    MISSING_CODE, SEX_VARIANT, AGE_TENFOLD, PRESSURE_TENFOLD, DECIMAL_COMMA, UNIT_INSIDE, WORD_INSIDE, ENTERED_TWICE,
-    BEYOND_ELIGIBILITY, GENUINE_OUTLIER, BELOW_LIMIT, KINDS
-};
 
 static const struct kind_facts {
     const char *name, *check;
@@ -99,34 +89,10 @@ static const struct plant {
 /* Not every seed has someone below the limit; the demonstration needs a few. */
 enum { BELOW_LIMIT_LEAST = 3 };
 
-struct record {
-    char cell[COLUMNS][CELL_SIZE];
-};
-
-struct trouble {
-    enum kind kind;
-    enum column column;
-    size_t participant;
-    char received[CELL_SIZE], truth[CELL_SIZE];
-};
-
-struct trial {
-    uint64_t state[4]; /* of the generator */
-    double spare;      /* the second of a pair of normal deviates */
-    bool has_spare;
-    struct record truth[PARTICIPANTS], received[PARTICIPANTS];
-    enum arm arm[PARTICIPANTS];
-    bool troubled[PARTICIPANTS]; /* at most one planted trouble each, so that each is seen by itself */
-    struct trouble troubles[TROUBLES_MAX];
-    size_t trouble_count;
-    size_t twice;                         /* the participant entered twice */
-    char first_entry[CELL_SIZE];          /* and what the first record says */
-};
-
 /* --- chance --------------------------------------------------------------------------------------------------- */
 
 /* splitmix64: Steele, Lea & Flood 2014, OOPSLA, "Fast splittable pseudorandom number generators". */
-static uint64_t split_next(uint64_t *state) {
+uint64_t split_next(uint64_t *state) {
     uint64_t z = (*state += UINT64_C(0x9e3779b97f4a7c15));
     z = (z ^ (z >> 30)) * UINT64_C(0xbf58476d1ce4e5b9);
     z = (z ^ (z >> 27)) * UINT64_C(0x94d049bb133111eb);
@@ -456,7 +422,18 @@ static size_t row_of(const struct trial *trial, size_t participant) {
     return participant + 1 + (participant >= trial->twice ? 1 : 0);
 }
 
-static void write_outcome_visits(struct text *out, const char *id) {
+static void write_outcome_visits(struct text *out, const char *id, bool files) {
+    static const char *const visits[][3] = {{"Baseline", "0"}, {"8 weeks", "8"}, {"26 weeks", "26"}};
+    if (files) {
+        text_literal(out, "     \"visits\": [");
+        for (size_t v = 0; v < 3; v++) {
+            text_format(out, "%s{\"label\": \"%s\", \"file\": \"%s\", \"visit\": \"V%s\", \"column\": \"%s\"}",
+                        v ? ",\n                " : "", visits[v][0], strcmp(id, "sbp") == 0 ? "visits" : "labs",
+                        visits[v][1], id);
+        }
+        text_literal(out, "]}");
+        return;
+    }
     text_format(out,
                 "     \"visits\": [{\"label\": \"Baseline\", \"column\": \"%s_0\"}, "
                 "{\"label\": \"8 weeks\", \"column\": \"%s_8\"},\n"
@@ -483,10 +460,13 @@ static void write_covariates(struct text *out) {
     text_literal(out, "]}],\n");
 }
 
-static void write_plan(struct text *out, uint64_t seed) {
+void trial_write_plan(const struct naming *naming, uint64_t seed, struct text *out) {
     text_literal(out, "{\n"
-                      "  \"title\": \"Quayside Walking Trial\",\n"
-                      "  \"participant\": \"pid\",\n"
+                      "  \"title\": \"Quayside Walking Trial\",\n");
+    if (naming->files) {
+        text_format(out, "  \"files\": %s,\n", naming->files);
+    }
+    text_literal(out, "  \"participant\": \"pid\",\n"
                       "  \"arm\": {\"column\": \"grp\", \"levels\": [\n");
     text_format(out, "    {\"code\": \"%s\", \"label\": \"%s\", \"reference\": true},\n", truths[ADVICE].code,
                 truths[ADVICE].label);
@@ -497,16 +477,17 @@ static void write_plan(struct text *out, uint64_t seed) {
                       "    {\"id\": \"sbp\", \"label\": \"Systolic blood pressure\", \"unit\": \"mmHg\", "
                       "\"role\": \"primary\", \"better\": \"lower\",\n"
                       "     \"scale\": \"linear\", \"plausible\": [70, 260], \"important_difference\": 5,\n");
-    write_outcome_visits(out, "sbp");
+    write_outcome_visits(out, "sbp", naming->files);
     text_literal(out, ",\n"
                       "    {\"id\": \"uacr\", \"label\": \"Urine albumin-to-creatinine ratio\", \"unit\": \"mg/mmol\", "
                       "\"role\": \"secondary\", \"better\": \"lower\",\n"
                       "     \"scale\": \"log10\", \"plausible\": [0, 600],\n");
-    write_outcome_visits(out, "uacr");
+    write_outcome_visits(out, "uacr", naming->files);
     text_literal(out, "],\n");
     write_covariates(out);
-    text_literal(out, "  \"events\": [{\"id\": \"rescue\", \"label\": \"Started medication\", \"column\": \"rescue\", "
-                      "\"yes\": [\"Y\"], \"no\": [\"N\"]}],\n"
+    text_format(out, "  \"events\": [{\"id\": \"rescue\", \"label\": \"Started medication\", %s\"column\": \"rescue\", ",
+                naming->files ? "\"file\": \"events\", " : "");
+    text_literal(out, "\"yes\": [\"Y\"], \"no\": [\"N\"]}],\n"
                       "  \"adjust_for\": [\"sex\"],\n"
                       "  \"missing_baseline\": \"mean\",\n"
                       "  \"subgroups\": [\"sex\", \"age\", \"bmi\"],\n"
@@ -523,9 +504,29 @@ static void begin_decision(struct text *out, const char *kind, const char *colum
     }
 }
 
-static void write_decision(struct text *out, const struct trial *trial, const struct trouble *trouble) {
+/* Of two records of a participant the second stands: in the wide file, or in each file that has two. */
+static void write_keep(struct text *out, const struct trial *trial, const struct naming *naming, size_t participant,
+                       const char *file, size_t row) {
+    begin_decision(out, "keep-record", NULL);
+    text_format(out, ", \"participant\": \"%s\"", trial->truth[participant].cell[PID]);
+    if (naming->files) {
+        text_format(out, ", \"file\": \"%s\"", file);
+    }
+    text_format(out, ", \"row\": %zu", row);
+}
+
+static void write_why(struct text *out, const struct kind_facts *facts) {
+    text_format(out, ",\n   \"reason\": \"%s\"", facts->reason);
+    if (facts->evidence) {
+        text_format(out, ", \"evidence\": \"%s\"", facts->evidence);
+    }
+    text_char(out, '}');
+}
+
+static void write_decision(struct text *out, const struct trial *trial, const struct naming *naming,
+                           const struct trouble *trouble) {
     const struct kind_facts *facts = &kinds[trouble->kind];
-    const char *column = column_names[trouble->column];
+    const char *column = naming->columns[trouble->column];
     const char *participant = trial->truth[trouble->participant].cell[PID];
     switch (facts->settling) {
     case BY_PLAN:
@@ -553,15 +554,14 @@ static void write_decision(struct text *out, const struct trial *trial, const st
         text_format(out, ", \"participant\": \"%s\", \"value\": \"%s\"", participant, trouble->truth);
         break;
     case KEEP_RECORD:
-        begin_decision(out, "keep-record", NULL);
-        text_format(out, ", \"participant\": \"%s\", \"row\": %zu", participant, row_of(trial, trouble->participant));
+        write_keep(out, trial, naming, trouble->participant, "people", row_of(trial, trouble->participant));
+        if (naming->files) {
+            write_why(out, facts);
+            write_keep(out, trial, naming, trouble->participant, "visits", naming->visit_row);
+        }
         break;
     }
-    text_format(out, ",\n   \"reason\": \"%s\"", facts->reason);
-    if (facts->evidence) {
-        text_format(out, ", \"evidence\": \"%s\"", facts->evidence);
-    }
-    text_char(out, '}');
+    write_why(out, facts);
 }
 
 /* A decision about a whole column settles every trouble like it, so it is written once. */
@@ -579,11 +579,11 @@ static bool settled_before(const struct trial *trial, size_t at) {
     return false;
 }
 
-static void write_decisions(struct text *out, const struct trial *trial) {
+void trial_write_decisions(const struct trial *trial, const struct naming *naming, struct text *out) {
     text_char(out, '[');
     for (size_t i = 0; i < trial->trouble_count; i++) {
         if (!settled_before(trial, i)) {
-            write_decision(out, trial, &trial->troubles[i]);
+            write_decision(out, trial, naming, &trial->troubles[i]);
         }
     }
     text_literal(out, "\n]\n");
@@ -656,7 +656,7 @@ static void write_key(struct text *out, const struct trial *trial, uint64_t seed
     text_literal(out, "}\n");
 }
 
-void quayside_make(uint64_t seed, struct quayside *out) {
+struct trial *trial_new(uint64_t seed) {
     BUG_IF(seed > QUAYSIDE_SEED_MOST);
     struct trial *trial = memory_new(1, sizeof *trial);
     uint64_t state = seed;
@@ -666,14 +666,20 @@ void quayside_make(uint64_t seed, struct quayside *out) {
     do {
         draw_truth(trial);
     } while (!plant_all(trial));
+    return trial;
+}
+
+void quayside_make(uint64_t seed, struct quayside *out) {
+    const struct naming wide = {.columns = column_names};
+    struct trial *trial = trial_new(seed);
     struct text *const texts[] = {&out->export_csv, &out->clean_csv, &out->plan_json, &out->decisions_json,
                                   &out->key_json};
     for (size_t i = 0; i < sizeof texts / sizeof *texts; i++) {
         text_init(texts[i]);
     }
     write_csv(trial, &out->export_csv, &out->clean_csv);
-    write_plan(&out->plan_json, seed);
-    write_decisions(&out->decisions_json, trial);
+    trial_write_plan(&wide, seed, &out->plan_json);
+    trial_write_decisions(trial, &wide, &out->decisions_json);
     write_key(&out->key_json, trial, seed);
     memory_free(trial);
 }

@@ -222,6 +222,27 @@ static enum exit_status run_open(const struct given *given) {
     return done ? printed() : refuse(&fault);
 }
 
+/* The same trial as its data base would give it out in four files. */
+static bool write_long(const char *folder, struct arena *arena, struct fault *fault) {
+    const char *place = arena_format(arena, "%s/long", folder);
+    if (mkdir(place, 0777) != 0 && errno != EEXIST) {
+        return fault_set(fault, FAULT_SYSTEM, "%s: cannot be made (%s); choose another folder", place, strerror(errno));
+    }
+    struct quayside_files quayside;
+    quayside_make_files(QUAYSIDE_SEED, &quayside);
+    const struct {
+        const char *name;
+        const struct text *content;
+    } files[] = {{"people.csv", &quayside.people_csv}, {"visits.csv", &quayside.visits_csv}, {"labs.csv", &quayside.labs_csv},
+        {"events.csv", &quayside.events_csv}, {"plan.json", &quayside.plan_json}, {"decisions.json", &quayside.decisions_json}};
+    bool done = true;
+    for (size_t i = 0; done && i < sizeof files / sizeof *files; i++) {
+        done = write_file(arena_format(arena, "%s/%s", place, files[i].name), files[i].content, fault);
+    }
+    quayside_files_release(&quayside);
+    return done;
+}
+
 /* Writes the demonstration's files into the folder and makes the study of them. */
 static bool make_demo(
     const char *folder, struct arena *arena, const char **study, struct text *account, struct fault *fault) {
@@ -240,6 +261,7 @@ static bool make_demo(
     for (size_t i = 0; done && i < sizeof files / sizeof *files; i++) {
         done = write_file(arena_format(arena, "%s/%s", folder, files[i].name), files[i].content, fault);
     }
+    done = done && write_long(folder, arena, fault);
     done = done && study_create(*study, "export.csv", quayside.export_csv.data, quayside.export_csv.length, "plan.json",
                        quayside.plan_json.data, quayside.plan_json.length, "Demonstration, made by the program",
                        account, fault);
@@ -277,7 +299,8 @@ static enum exit_status run_demo(const struct given *given) {
     if (done) {
         printf("The invented Quayside Walking Trial is in %s: the study quayside.study, what it was made from "
                "(export.csv, "
-               "plan.json),\nthe right decisions (decisions.json) and the truth (clean.csv, key.json).\n",
+               "plan.json),\nthe right decisions (decisions.json) and the truth (clean.csv, key.json); in its folder long the "
+               "same trial as four files.\n",
             folder);
         done = serve(given, study, folder, &fault);
     }

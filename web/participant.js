@@ -136,7 +136,7 @@ export function keepRecord(participant, row, discrepancy) {
     title: `Let record ${row} stand for ${participant}`,
     before: () => `${count(others.length + 1, "record")} held aside: ${[...others, row].sort((a, b) => a - b).join(", ")}`,
     after: () => `record ${row} in force; ${others.join(", ")} stays aside`,
-    decisions: () => [{ kind: "keep-record", participant, row, discrepancy: discrepancy.id }],
+    decisions: () => [{ kind: "keep-record", participant, ...(discrepancy.file ? { file: discrepancy.file } : {}), row, discrepancy: discrepancy.id }],
   };
 }
 

@@ -43,4 +43,23 @@ struct quayside {
  * still, until every kind of trouble has found a participant to sit on, so no seed fails. */
 void quayside_make(uint64_t seed, struct quayside *out);
 void quayside_release(struct quayside *quayside);
+
+/* The same trial with the same troubles as its data base would give it out in four files, one of them per participant,
+ * two per visit, one per event. No file has a record of what did not take place: a visit without a value, a sample not
+ * taken, an event nobody was asked about. The participant entered twice stands twice in people.csv and has two records of
+ * the visit at 8 weeks. Dates are D/M/Y.
+ *   people.csv  pid site grp sex age bmi randomised
+ *   visits.csv  pid visit date sbp           visit is V0, V8 or V26
+ *   labs.csv    pid visit sampled uacr
+ *   events.csv  pid rescue rescue_date       rescue_date is blank unless rescue is Y
+ * With the plan the four give the state of the wide export; with the decisions, that of the wide one decided. */
+struct quayside_files {
+    struct text people_csv, visits_csv, labs_csv, events_csv;
+    struct text plan_json;      /* with "files": people, visits, labs, events, named as above */
+    struct text decisions_json; /* those of the wide export in this plan's names */
+};
+
+/* Fills all six texts of out, which need not be initialised; the caller releases them. */
+void quayside_make_files(uint64_t seed, struct quayside_files *out);
+void quayside_files_release(struct quayside_files *files);
 #endif

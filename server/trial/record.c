@@ -72,6 +72,7 @@ static const struct field {
     {"reference", FIELD_INTERVAL, false, 0},
     {"if_a", FIELD_TEXT, false, 0},
     {"if_b", FIELD_TEXT, false, 0},
+    {"file", FIELD_TEXT, false, offsetof(struct decision, file)},
     {"row", FIELD_COUNT, false, 0},
     {"number", FIELD_COUNT, false, 0},
     {"planned", FIELD_FLAG, false, 0},

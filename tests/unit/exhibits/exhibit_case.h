@@ -23,21 +23,25 @@ struct renderings {
     cJSON *parsed;
 };
 
-static inline void case_open(struct exhibit_case *c, const char *csv, const char *plan) {
+static inline void case_open_files(struct exhibit_case *c, const struct study_file *files, size_t count, const char *plan) {
     stats_init();
     *c = (struct exhibit_case){.folder = "/tmp/evenhand-test-XXXXXX"};
     assert_non_null(mkdtemp(c->folder));
     snprintf(c->path, sizeof c->path, "%s/trial.study", c->folder);
     struct fault fault;
     fault_init(&fault);
-    if (!study_create(c->path, "export.csv", csv, strlen(csv), "plan.json", plan, strlen(plan), "M. Tide, statistician",
-            NULL, &fault)) {
+    if (!study_create_from(c->path, files, count, "plan.json", plan, strlen(plan), "M. Tide, statistician", NULL, &fault)) {
         fail_msg("%s", fault.message);
     }
     c->study = study_open(c->path, &fault);
     if (!c->study) {
         fail_msg("%s", fault.message);
     }
+}
+
+static inline void case_open(struct exhibit_case *c, const char *csv, const char *plan) {
+    const struct study_file file = {"export.csv", csv, strlen(csv)};
+    case_open_files(c, &file, 1, plan);
 }
 
 /* The text with every `from` replaced; the caller frees it. */
@@ -54,6 +58,16 @@ static inline char *replaced(const char *text, const char *from, const char *to)
     return bytes;
 }
 
+static inline void case_decide(struct exhibit_case *c, const struct text *decisions) {
+    struct fault fault;
+    fault_init(&fault);
+    uint32_t version;
+    if (!study_decide(c->study, "M. Tide, statistician", decisions->data, decisions->length, "decisions.json", ANY_VERSION, &version,
+            &fault)) {
+        fail_msg("%s", fault.message);
+    }
+}
+
 /* The Quayside Walking Trial, as exported or after the right decisions, in a state of blinding. */
 static inline void case_quayside(struct exhibit_case *c, const char *blinding, bool decided) {
     struct quayside quayside;
@@ -63,14 +77,29 @@ static inline void case_quayside(struct exhibit_case *c, const char *blinding, b
     char *plan = replaced(quayside.plan_json.data, "\"blinding\": \"coded\"", wanted);
     case_open(c, quayside.export_csv.data, plan);
     memory_free(plan);
-    struct fault fault;
-    fault_init(&fault);
-    uint32_t version;
-    if (decided && !study_decide(c->study, "M. Tide, statistician", quayside.decisions_json.data,
-                       quayside.decisions_json.length, "decisions.json", ANY_VERSION, &version, &fault)) {
-        fail_msg("%s", fault.message);
+    if (decided) {
+        case_decide(c, &quayside.decisions_json);
     }
     quayside_release(&quayside);
+}
+
+/* The same trial as its data base would give it out in four files; a seed may be given. */
+static inline void case_quayside_files(struct exhibit_case *c, uint64_t seed, const char *blinding, bool decided) {
+    struct quayside_files quayside;
+    quayside_make_files(seed, &quayside);
+    const struct study_file files[] = {{"labs.csv", quayside.labs_csv.data, quayside.labs_csv.length},
+        {"people.csv", quayside.people_csv.data, quayside.people_csv.length},
+        {"visits.csv", quayside.visits_csv.data, quayside.visits_csv.length},
+        {"events.csv", quayside.events_csv.data, quayside.events_csv.length}};
+    char wanted[64];
+    snprintf(wanted, sizeof wanted, "\"blinding\": \"%s\"", blinding);
+    char *plan = replaced(quayside.plan_json.data, "\"blinding\": \"coded\"", wanted);
+    case_open_files(c, files, 4, plan);
+    memory_free(plan);
+    if (decided) {
+        case_decide(c, &quayside.decisions_json);
+    }
+    quayside_files_release(&quayside);
 }
 
 static inline void case_close(struct exhibit_case *c) {
