@@ -2,6 +2,7 @@
 /* Words and numbers that several exhibits write alike. Everything made lives in the view's arena. */
 #ifndef EVENHAND_EXHIBITS_WORDS_H
 #define EVENHAND_EXHIBITS_WORDS_H
+#include "draw/axis.h"
 #include "draw/palette.h"
 #include "exhibits/registry.h"
 #include "stats/estimate.h"
@@ -40,6 +41,11 @@ void direction_words(const struct outcome *outcome, const char **lower, const ch
 void interval_json(struct json *json, const char *key, double low, double high); /* "key": [low, high] */
 /* The fields estimate, standard_error, df, low, high, p, status of an object that is open. */
 void estimate_json(struct json *json, const struct estimate *estimate);
+
+/* An axis that holds whatever lies within twice Tukey's outer fences of all `count` finite values together (on the axis' scale;
+ * fewer than 8 are left to themselves): what is further out stands at the edge as an arrow with its value, so that one slip of
+ * the pen does not squash everything else. */
+void axis_about(const struct view *view, const double *values, size_t count, bool log10_scale, struct axis_plan *axis);
 
 /* ---- numbers as a person reads them, sorted out of NaN ---- */
 /* The finite values among `count`, in `kept` (room for all of them); how many. */

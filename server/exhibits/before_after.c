@@ -249,10 +249,10 @@ static const char *panel_counts(const struct view *view, const struct pairs_grou
     text_format(
         &text, "%s of %s", count_words(view, group->n, "pair"), count_words(view, group->members, "participant"));
     if (group->no_after) {
-        text_format(&text, ", %zu without %s", group->no_after, visit_words(view, view->visit));
+        text_format(&text, ", %zu without a value at %s", group->no_after, visit_words(view, view->visit));
     }
     if (group->no_before) {
-        text_format(&text, ", %zu without %s", group->no_before, visit_words(view, 0));
+        text_format(&text, ", %zu without a value at %s", group->no_before, visit_words(view, 0));
     }
     if (group->no_both) {
         text_format(&text, ", %zu without both", group->no_both);
@@ -260,6 +260,22 @@ static const char *panel_counts(const struct view *view, const struct pairs_grou
     const char *words = arena_text(view->arena, text.data);
     text_release(&text);
     return words;
+}
+
+/* Every value that is drawn, before and after. */
+static void limit_axis(const struct view *view, const struct pairs_result *result, struct axis_plan *axis) {
+    size_t n = 0;
+    double *all = ARENA_NEW(view->arena, 2 * result->analysis.count, double);
+    for (size_t a = 0; a < view->arms.count; a++) {
+        const struct pairs_group *group = &result->groups[a];
+        for (size_t i = 0; i < group->point_count; i++) {
+            all[n++] = group->points[i].before;
+            if (!isnan(group->points[i].after)) {
+                all[n++] = group->points[i].after;
+            }
+        }
+    }
+    axis_about(view, all, n, axis->scale == AXIS_LOG10, axis);
 }
 
 static void figure(const struct view *view, const struct figure *figure, struct html *html) {
@@ -288,6 +304,7 @@ static void figure(const struct view *view, const struct figure *figure, struct 
         .after = visit_words(view, view->visit),
         .panels = panels,
         .panel_count = view->arms.count};
+    limit_axis(view, result, &pairs.axis);
     pairs_svg(&pairs, figure, html);
 }
 

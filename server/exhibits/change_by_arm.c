@@ -235,35 +235,15 @@ static const char *interaction_words(const struct view *view, const struct chang
     return words;
 }
 
-/* The axis holds every box and whatever lies within twice Tukey's outer fences of all values together; what is further out stands
- * at the edge as an arrow with its value, so that one slip of the pen does not squash every box. */
 static void limit_axis(const struct view *view, const struct change_result *result, struct axis_plan *axis) {
-    enum { ENOUGH = 8 };
-    size_t room = result->model.analysis.count, n = 0;
-    double *all = ARENA_NEW(view->arena, room, double), low = INFINITY, high = -(double)INFINITY;
+    size_t n = 0;
+    double *all = ARENA_NEW(view->arena, result->model.analysis.count, double);
     for (size_t i = 0; i < result->cell_count; i++) {
         for (size_t p = 0; p < result->cells[i].n; p++) {
             all[n++] = result->cells[i].points[p].value;
         }
     }
-    const double *sorted = sorted_copy(view->arena, all, n);
-    struct description s = describe(sorted, n);
-    double reach = 6 * (s.upper_quartile - s.lower_quartile);
-    if (n < ENOUGH || !(reach > 0)) {
-        return;
-    }
-    for (size_t i = 0; i < n; i++) {
-        bool within = sorted[i] >= s.lower_quartile - reach && sorted[i] <= s.upper_quartile + reach;
-        low = within && sorted[i] < low ? sorted[i] : low;
-        high = within && sorted[i] > high ? sorted[i] : high;
-    }
-    for (size_t i = 0; i < result->cell_count; i++) {
-        const struct cell *cell = &result->cells[i];
-        low = cell->n && cell->whiskers.low < low && cell->n >= ENOUGH ? cell->whiskers.low : low;
-        high = cell->n && cell->whiskers.high > high && cell->n >= ENOUGH ? cell->whiskers.high : high;
-    }
-    axis->low = low;
-    axis->high = high;
+    axis_about(view, all, n, false, axis);
 }
 
 static void figure(const struct view *view, const struct figure *figure, struct html *html) {

@@ -33,8 +33,11 @@ static const struct {
     [TRIMMED_MEAN] = {"trimmed-mean", "20% trimmed means of change", "20% trimmed means of change", ROLE_SUPPLEMENTARY, false, true},
 };
 
-static const char *label_of(enum method method, enum scale scale) {
-    return scale == SCALE_LOG10 ? methods[method].ratio_label : methods[method].label;
+/* With the robust standard error in front, it is the classical one that is "the same". */
+static const char *label_of(enum method method, enum scale scale, bool robust_first) {
+    enum method named = robust_first && method == ANCOVA_HC3 ? ANCOVA : method;
+    const char *label = scale == SCALE_LOG10 ? methods[named].ratio_label : methods[named].label;
+    return robust_first && method == ANCOVA ? "The same, classical standard error" : label;
 }
 
 struct contrast {
@@ -388,7 +391,7 @@ static void contrast_json(const struct view *view, const struct effect_result *r
         const struct estimate *estimate = &contrast->estimates[method];
         json_object(json);
         json_field_string(json, "method", methods[method].name);
-        json_field_string(json, "label", label_of(method, view->scale));
+        json_field_string(json, "label", label_of(method, view->scale, result->first == ANCOVA_HC3));
         json_field_string(json, "role", role_names[role_of(result, method)]);
         counts_of(result, view, contrast, method, n);
         counts_json(json, n);
@@ -483,7 +486,7 @@ static void tables(const struct view *view, struct table **tables, size_t *count
             size_t n[2];
             counts_of(result, view, contrast, method, n);
             table_row(table);
-            table_put_header(table, label_of(method, view->scale));
+            table_put_header(table, label_of(method, view->scale, result->first == ANCOVA_HC3));
             table_put_text(table, role_words[role_of(result, method)]);
             table_put_count(table, (int64_t)n[0]);
             table_put_count(table, (int64_t)n[1]);
@@ -535,10 +538,11 @@ static void lead(const struct view *view, struct html *html) {
     html_text(html, decimal_words(view, shown_value(view, estimate->estimate), decimals));
     html_text(html, log10_scale ? "" : unit_after(view, outcome_of(view)->unit));
     html_close(html);
-    html_format(html, " %s minus %s, %s CI %s%s, %zu %s, %zu %s, %s.", log10_scale ? "" : arm, log10_scale ? "" : reference,
-        percent_words(view, view->frame->plan->confidence), interval_words(view, shown_value(view, estimate->low),
-            shown_value(view, estimate->high), decimals),
-        log10_scale ? arena_format(view->arena, " (%s%%)", signed_words(view, 100 * (pow(10, estimate->estimate) - 1), 0)) : "",
+    const char *percent = log10_scale ?
+        arena_format(view->arena, " (%s%%)", signed_words(view, 100 * (pow(10, estimate->estimate) - 1), 0)) : "";
+    html_format(html, "%s %s %s %s, %s CI %s, %zu %s, %zu %s, %s.", percent, arm, log10_scale ? "over" : "minus", reference,
+        percent_words(view, view->frame->plan->confidence),
+        interval_words(view, shown_value(view, estimate->low), shown_value(view, estimate->high), decimals),
         result->model.design.n_of_arm[contrast->arm], lower_first(view, arm), result->model.design.n_of_arm[view->arms.reference],
         lower_first(view, reference), set_words(view->set));
 }
@@ -584,7 +588,7 @@ static void figure(const struct view *view, const struct figure *figure, struct 
         enum method method = in_order(result, place);
         const struct estimate *estimate = &contrast->estimates[method];
         bool ok = estimate->status == STATUS_OK, planned = role_of(result, method) == ROLE_PRIMARY;
-        rows[place] = (struct estimates_row){.label = label_of(method, view->scale), .role = role_words[role_of(result, method)],
+        rows[place] = (struct estimates_row){.label = label_of(method, view->scale, result->first == ANCOVA_HC3), .role = role_words[role_of(result, method)],
             .estimate = shown_value(view, estimate->estimate), .low = shown_value(view, estimate->low),
             .high = shown_value(view, estimate->high), .figures = ok ? figures_words(view, estimate, decimals) : NULL,
             .sentence = ok ? NULL : status_sentence(estimate->status), .emphasised = planned,

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "exhibits/words.h"
 #include "draw/number.h"
+#include "stats/describe.h"
 #include <ctype.h>
 #include <math.h>
 #include <stdio.h>
@@ -211,6 +212,27 @@ void estimate_json(struct json *json, const struct estimate *estimate) {
     json_field_number(json, "high", estimate->high);
     json_field_number(json, "p", estimate->p);
     json_field_string(json, "status", status_name(estimate->status));
+}
+
+void axis_about(const struct view *view, const double *values, size_t count, bool log10_scale, struct axis_plan *axis) {
+    enum { ENOUGH = 8 };
+    double *placed = ARENA_NEW(view->arena, count, double), low = INFINITY, high = -(double)INFINITY;
+    for (size_t i = 0; i < count; i++) {
+        placed[i] = log10_scale ? log10(values[i]) : values[i];
+    }
+    const double *sorted = sorted_copy(view->arena, placed, count);
+    struct description s = describe(sorted, count);
+    double reach = 6 * (s.upper_quartile - s.lower_quartile);
+    if (count < ENOUGH || !(reach > 0)) {
+        return;
+    }
+    for (size_t i = 0; i < count; i++) {
+        bool within = sorted[i] >= s.lower_quartile - reach && sorted[i] <= s.upper_quartile + reach;
+        low = within && sorted[i] < low ? sorted[i] : low;
+        high = within && sorted[i] > high ? sorted[i] : high;
+    }
+    axis->low = log10_scale ? pow(10, low) : low;
+    axis->high = log10_scale ? pow(10, high) : high;
 }
 
 size_t keep_finite(const double *values, size_t count, double *kept) {
