@@ -151,9 +151,28 @@ static void place(struct sheet *sheet, const char *text, size_t length) {
     sheet->row_filled = sheet->row_filled || !is_blank(text, length);
 }
 
+/* Whether a plain decimal is shown just as it is written, which saves reading it: "12", "-0.5", "27.25"; at most 15
+ * digits, no zeros that say nothing. */
+static bool is_as_shown(const char *text) {
+    const char *first = text + (*text == '-');
+    size_t whole = strspn(first, "0123456789"), decimals = 0;
+    const char *end = first + whole;
+    if (*end == '.') {
+        decimals = strspn(end + 1, "0123456789");
+        end += 1 + decimals;
+    }
+    bool even = *first == '0' ? whole == 1 && decimals > 0 && decimals < 7 : whole > 0;
+    bool plain = !*end && (first[whole] != '.' || (decimals > 0 && end[-1] != '0'));
+    return (even || !strcmp(text, "0")) && plain && whole + decimals <= 15;
+}
+
 static void place_number(struct sheet *sheet) {
     char shown[SHOWN_ROOM];
     double value;
+    if (sheet->style == STYLE_NUMBER && is_as_shown(sheet->value.data)) {
+        place(sheet, sheet->value.data, sheet->value.length);
+        return;
+    }
     if (number_read(sheet->value.data, '.', &value, NULL) != NUMBER_READ) {
         place(sheet, sheet->value.data, sheet->value.length); /* no number after all: as it stands, for a person to settle */
         return;

@@ -98,6 +98,11 @@ static const struct good {
         "<c><v>123456789012345678</v></c><c><v>-0</v></c><c><v>1.0E-7</v></c><c><v>2.9999999999999998E-2</v></c>"
         "<c s='10'><v>1.005</v></c></row>"),
         "a|b|c|d|e|f/2:0.3|0.1|1000|-1.5e-9|9007199254740991|27/3:1e21|123456789012346000|0|0.0000001|0.03|1.005", 0, ""},
+    {"numbers written in other ways than they are shown", PLAIN_BOOK, SHEET("<row>" T("a") T("b") T("c") T("d") T("e") T("f")
+        T("g") "</row><row><c><v>007</v></c><c><v>0.50</v></c><c><v>-0.0</v></c><c><v>0</v></c><c><v>12.</v></c><c><v>.5</v></c>"
+        "<c><v>-0.000001</v></c></row><row><c><v>0.00000001</v></c><c><v>1234567.123456789</v></c><c><v>00.5</v></c>"
+        "<c><v>+5</v></c><c><v> 5 </v></c><c><v>-12.25</v></c><c><v>0.1234567890123456</v></c></row>"),
+        "a|b|c|d|e|f|g/2:7|0.5|0|0|12|0.5|-0.000001/3:1e-8|1234567.12345679|0.5|5|5|-12.25|0.123456789012346", 0, ""},
     {"a number cell that holds no number stays as it is", PLAIN_BOOK, SHEET(HEAD "<row><c><v>NaN</v></c><c><v>1 2</v></c>"
         "</row>"), "a|b/2:NaN|1 2", 0, ""},
     {"the 1900 calendar and its day that never was (18.17.4.1)", PLAIN_BOOK, SHEET(HEAD
