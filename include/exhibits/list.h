@@ -10,6 +10,7 @@ extern const struct exhibit exhibit_baseline;
 extern const struct exhibit exhibit_discrepancies;
 extern const struct exhibit exhibit_missing_grid;
 extern const struct exhibit exhibit_missing_by_arm;
+extern const struct exhibit exhibit_events;
 extern const struct exhibit exhibit_distribution;
 extern const struct exhibit exhibit_before_after;
 extern const struct exhibit exhibit_change_by_arm;

@@ -39,6 +39,9 @@ struct discrepancies {
     size_t count, open, settled, queried;
 };
 
+/* How many the data say were randomised: participants but those without an arm that the plan lists; one whose records are
+ * held aside counts once. */
+size_t checks_randomised(const struct frame *frame);
 /* All discrepancies of a frame, those settled since load among them, in the order of the table of checks, then column, then
  * participant. `received` is the frame after the decisions entered at load. While blinded the arm column's own show a count only. */
 void checks_run(const struct frame *frame, const struct frame *received, struct arena *arena, struct discrepancies *found);

@@ -106,10 +106,24 @@ struct event {
     const char *id, *label, *column;
     struct place place;
     struct texts yes, no;
-    const char *kind;           /* NULL where none, as the next two */
+    const char *kind;           /* NULL where none, as the next three */
+    const char *strategy;       /* of the estimand for it, by ICH E9(R1) */
     const char *date, *reason;  /* names of columns */
     struct place date_place, reason_place;
     int variable;
+};
+
+/* Numbers of the screening log, typed in with their source. */
+struct screening_reason {
+    const char *reason;
+    size_t n;
+};
+struct screening {
+    bool given;
+    const char *source;
+    size_t assessed;
+    struct screening_reason *reasons; /* why somebody assessed was not randomised */
+    size_t reason_count, not_randomised; /* not_randomised: sum of the reasons */
 };
 
 /* A value computed from columns: the plan writes it derived.ID wherever it may write a column. */
@@ -143,8 +157,9 @@ struct derived {
     int variable;
 };
 
-/* Every column the plan gives a meaning to, once: covariates, then outcomes visit by visit, then events, then dates, then
- * derived values and what only they rest on. The arm and the participant are not among them. */
+/* Every column the plan gives a meaning to, once (a column of several events once for each of them): covariates, then
+ * outcomes visit by visit, then events, then dates, then derived values and what only they rest on. The arm and the
+ * participant are not among them. */
 struct variable {
     const char *column, *label, *unit; /* of an outcome's visit: "Systolic blood pressure, 26 weeks" */
     struct place place;
@@ -191,6 +206,7 @@ struct plan {
     struct dates *dates;     /* NULL where the plan has none; see trial/dates.h */
     const char *site_column; /* NULL where none */
     struct place site_place;
+    struct screening screening;
     struct variable *variables;
     size_t variable_count;
 };

@@ -17,7 +17,7 @@ enum { FIXED_STAGES = 6 };
 struct flow_result {
     struct stage *stages;
     size_t count;
-    size_t randomised, excluded, analysed; /* indices of stages */
+    size_t records, randomised, excluded, analysed; /* indices of stages */
 };
 
 static struct stage *add(struct view *view, struct flow_result *result, const char *stage, const char *label, bool by_arm) {
@@ -42,12 +42,37 @@ static void count_visit(struct view *view, struct stage *stage, size_t visit) {
     }
 }
 
+/* What the screening log says, as typed into the plan, above what is in the file. */
+static void add_screening(struct view *view, struct flow_result *result) {
+    const struct frame *frame = view->frame;
+    const struct screening *screening = &frame->plan->screening;
+    if (!screening->given) {
+        return;
+    }
+    add(view, result, "assessed", "assessed for eligibility", false)->total = screening->assessed;
+    for (size_t i = 0; i < screening->reason_count; i++) {
+        const char *reason = screening->reasons[i].reason;
+        add(view, result, arena_format(view->arena, "not-randomised:%s", reason),
+            arena_format(view->arena, "not randomised: %s", reason), false)->total = screening->reasons[i].n;
+    }
+    size_t expected = screening->assessed - screening->not_randomised, randomised = checks_randomised(frame);
+    if (expected == randomised) {
+        view_note(view, "Screening numbers are typed in from %s: %zu assessed less %zu not randomised is %zu, as many as the data have randomised.",
+            screening->source, screening->assessed, screening->not_randomised, expected);
+    } else {
+        view_note(view, "Screening numbers are typed in from %s and do not add up: %zu assessed less %zu not randomised is %zu, and the data have "
+            "%zu randomised.", screening->source, screening->assessed, screening->not_randomised, expected, randomised);
+    }
+}
+
 static bool compute(struct view *view, struct fault *fault) {
     (void)fault;
     const struct frame *frame = view->frame;
     const struct outcome *outcome = &frame->plan->outcomes[view->outcome];
     struct flow_result *result = ARENA_NEW(view->arena, 1, struct flow_result);
-    result->stages = ARENA_NEW(view->arena, FIXED_STAGES + outcome->visit_count + 1, struct stage);
+    result->stages = ARENA_NEW(view->arena, FIXED_STAGES + 1 + frame->plan->screening.reason_count + outcome->visit_count + 1, struct stage);
+    add_screening(view, result);
+    result->records = result->count;
     add(view, result, "records", "records in the file", false)->total = frame->roster;
     add(view, result, "held-aside", "records held aside", false)->total = frame->held_aside;
     struct stage *no_arm = add(view, result, "no-arm", "no arm that the plan lists", false);
@@ -149,15 +174,30 @@ static struct flow_box leaving(const struct view *view, size_t count, const char
     return box;
 }
 
+/* The box above all: who was assessed, and beside it those not randomised, by reason. */
+static struct flow_box not_randomised(const struct view *view, const struct flow_result *result) {
+    const struct screening *screening = &view->frame->plan->screening;
+    struct flow_exclusion *exclusions = ARENA_NEW(view->arena, screening->reason_count, struct flow_exclusion);
+    for (size_t i = 0; i < screening->reason_count; i++) {
+        exclusions[i] = (struct flow_exclusion){result->stages[i + 1].label, screening->reasons[i].n};
+    }
+    return (struct flow_box){.count = screening->assessed, .exclusions = exclusions, .exclusion_count = screening->reason_count};
+}
+
 static void figure(const struct view *view, const struct figure *figure, struct html *html) {
     const struct flow_result *result = view->result;
     const struct outcome *outcome = &view->frame->plan->outcomes[view->outcome];
     const struct stage *s = result->stages, *randomised = &s[result->randomised], *excluded = &s[result->excluded],
-                       *analysed = &s[result->analysed];
+                       *analysed = &s[result->analysed],
+                       *records = &s[result->records];
+    bool screened = result->records > 0;
     size_t arms = view->arms.count;
     bool split = !view->arms.pooled;
-    struct flow_stage stages[3] = {{.label = "records in the file"}, {.label = "randomised"}, {.label = analysed->label}};
-    stages[0].total = leaving(view, s[0].total, s[1].total == 1 ? "record held aside" : "records held aside", s[1].total, "without an arm that the plan lists", s[2].total);
+    struct flow_stage all[4] = {{.label = "assessed for eligibility"}, {.label = "records in the file"}, {.label = "randomised"},
+        {.label = analysed->label}}, *stages = &all[1];
+    all[0].total = not_randomised(view, result);
+    stages[0].total = leaving(view, records->total, records[1].total == 1 ? "record held aside" : "records held aside", records[1].total,
+        "without an arm that the plan lists", records[2].total);
     const char *no_value = arena_format(view->arena, "no value at %s", lower_first(view, outcome->visits[outcome->primary_visit].label));
     stages[1].total = leaving(view, randomised->total, excluded->label, excluded->total, no_value,
         randomised->total - excluded->total - analysed->total);
@@ -172,7 +212,8 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     }
     stages[1].arms = split ? middle : NULL;
     stages[2].arms = split ? last : NULL;
-    struct flow flow = {.arms = split ? labels : NULL, .arm_count = split ? arms : 0, .stages = stages, .stage_count = 3};
+    struct flow flow = {.arms = split ? labels : NULL, .arm_count = split ? arms : 0, .stages = screened ? all : stages,
+        .stage_count = screened ? 4 : 3};
     flow_svg(&flow, figure, html);
 }
 
@@ -191,7 +232,8 @@ const struct exhibit exhibit_flow = {
     .pooled = SHOWN_AS_ONE_ARM,
     .method = "Counts of records and participants at this version of the record, after the items on participant flow of the CONSORT statement. A "
               "participant whose records are held aside (several records, none kept yet) is not counted as randomised until one is kept. Analysed: has "
-              "the follow-up the planned analysis needs, on its scale.",
+              "the follow-up the planned analysis needs, on its scale. Numbers of the screening log are the plan's, typed in with their source, and are "
+              "held against the data.",
     .arguments = arguments,
     .compute = compute,
     .json = json,

@@ -13,6 +13,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_discrepancies,
     &exhibit_missing_grid,
     &exhibit_missing_by_arm,
+    &exhibit_events,
     &exhibit_distribution,
     &exhibit_before_after,
     &exhibit_change_by_arm,
@@ -471,7 +472,8 @@ static void tabs_of(const struct view *view, struct html *html, const struct arg
         break;
     case ARGUMENT_VARIABLE:
         for (size_t i = 0; i < plan->variable_count; i++) {
-            if (!arms_hide_column(view->frame, plan->variables[i].column)) {
+            bool first = plan_variable(plan, plan->variables[i].column) == (int)i; /* of several events on one column */
+            if (first && !arms_hide_column(view->frame, plan->variables[i].column)) {
                 tab(view, html, rule, plan->variables[i].column, plan->variables[i].label);
             }
         }

@@ -76,5 +76,10 @@ bool arms_hide_column(const struct frame *frame, const char *name) {
         return false;
     }
     const struct column *column = frame_column(frame, name);
-    return column && (column == frame->arm || arms_given_away(frame, column));
+    bool hide = column && (column == frame->arm || arms_given_away(frame, column));
+    for (size_t v = 0; column && column->kind == VARIABLE_EVENT && v < frame->plan->variable_count && !hide; v++) {
+        /* several events may rest on one column, and any of them may tell */
+        hide = strcmp(frame->plan->variables[v].column, name) == 0 && arms_given_away(frame, frame->columns[v]);
+    }
+    return hide;
 }

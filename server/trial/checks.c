@@ -24,6 +24,7 @@ const char *discrepancy_state_name(enum discrepancy_state state) {
 }
 
 enum check_kind {
+    CHECK_SCREENING,
     CHECK_REPEATED,
     CHECK_NO_IDENTIFIER,
     CHECK_UNMATCHED,
@@ -42,6 +43,8 @@ enum check_kind {
 };
 
 const struct check checks[] = {
+    [CHECK_SCREENING] = {"screening-sum", "Screening does not add up",
+        "Assessed less those not randomised is another number than the participants in the data.", SEVERITY_MUST_SETTLE},
     [CHECK_REPEATED] = {"repeated-participant", "Repeated participants", "An identifier stands on more than one record.",
         SEVERITY_MUST_SETTLE},
     [CHECK_NO_IDENTIFIER] = {"no-identifier", "Records without an identifier", "A record names no participant.",
@@ -182,6 +185,35 @@ static const char *folded(struct arena *arena, const char *text) {
     }
     free(made); /* libunistring's own allocation */
     return kept;
+}
+
+/* ---- screening ---- */
+
+/* Who was randomised by the data: everyone but those whose record in force has no arm that the plan lists. */
+size_t checks_randomised(const struct frame *frame) {
+    size_t count = 0;
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        bool held = frame->participants[p].record == NO_RECORD;
+        int32_t arm = frame->arm ? frame->arm->level[p] : 0;
+        count += held || (arm != NOWHERE && (size_t)arm < (frame->arm ? frame->arm->listed_count : 1));
+    }
+    return count;
+}
+
+static void check_screening(struct finding *finding) {
+    const struct screening *screening = &finding->frame->plan->screening;
+    size_t expected = screening->assessed - screening->not_randomised, randomised = checks_randomised(finding->frame);
+    if (!screening->given || expected == randomised) {
+        return;
+    }
+    struct discrepancy *new = found(finding, CHECK_SCREENING, NULL, "randomised");
+    const char *sum = arena_format(finding->arena, "%s: %zu assessed less %zu not randomised is %zu, and the data have %zu randomised",
+        screening->source, screening->assessed, screening->not_randomised, expected, randomised);
+    const char *const fields[][2] = {{"exhibit", "flow"}, {"text", arena_format(finding->arena, "%s.", sum)}};
+    new->message = arena_format(finding->arena, "%s. Mend the screening numbers of the plan or find who is missing; a note that names this "
+        "settles it with the reason.", sum);
+    new->proposal = proposal(finding, "note", fields, 2);
+    new->proposal_words = "Note both numbers as they are";
 }
 
 /* ---- records ---- */
@@ -667,6 +699,24 @@ static void check_category(struct finding *finding, const struct column *column,
     }
 }
 
+/* Whether another event that rests on the same column has asked about this text already. */
+static bool event_before(const struct finding *finding, const struct variable *variable, const char *text) {
+    const struct frame *frame = finding->frame;
+    for (size_t v = 0; &frame->plan->variables[v] < variable; v++) {
+        const struct variable *other = &frame->plan->variables[v];
+        if (other->kind != VARIABLE_EVENT || strcmp(other->column, variable->column) != 0) {
+            continue;
+        }
+        for (size_t p = 0; p < frame->participant_count; p++) {
+            const char *here = frame->columns[v]->state[p] == CELL_UNREADABLE ? frame_text(frame, frame->columns[v], p) : NULL;
+            if (here && strcmp(here, text) == 0) {
+                return true;
+            }
+        }
+    }
+    return false;
+}
+
 static void check_event(struct finding *finding, const struct column *column, const struct variable *variable) {
     const struct frame *frame = finding->frame;
     const struct event *event = &frame->plan->events[variable->event];
@@ -683,7 +733,9 @@ static void check_event(struct finding *finding, const struct column *column, co
         if (text && map_get(&seen, text) == NOWHERE) {
             map_put(&seen, text, 1);
             int target = variant_of_listed(finding, folded(finding->arena, text), levels, count);
-            variant_found(finding, column, variable, text, target == NOWHERE ? NULL : levels[target].code);
+            if (!event_before(finding, variable, text)) {
+                variant_found(finding, column, variable, text, target == NOWHERE ? NULL : levels[target].code);
+            }
         }
     }
     map_release(&seen);
@@ -847,6 +899,7 @@ static void run(struct finding *finding) {
         hidden[v] = arms_hide_column(finding->frame, plan->variables[v].column);
     }
     finding->hidden = hidden;
+    check_screening(finding);
     check_repeated(finding);
     check_no_identifier(finding);
     check_unmatched(finding);
@@ -880,6 +933,8 @@ static void look_for_decision(const struct frame *frame, struct discrepancy *wha
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
         bool confirms = decision->kind == DECISION_CONFIRM && (!decision->value || !what->value || same(decision->value, what->value));
+        /* Where there is no cell to confirm, a note that names the discrepancy settles it. */
+        confirms |= decision->kind == DECISION_NOTE && same(what->check, checks[CHECK_SCREENING].name);
         if (!frame->stands[i] || !(confirms || decision->kind == DECISION_QUERY) || !decided_about(decision, what)) {
             continue;
         }

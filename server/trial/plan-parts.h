@@ -40,6 +40,9 @@ bool read_place(struct reader *reader, const cJSON *item, const char *path, cons
 bool read_column(struct reader *reader, const cJSON *item, const char *path, const char *key, const char **name,
     struct place *place);
 
+/* In plan-screening.c: the key "screening". */
+bool read_screening(struct reader *reader, const cJSON *root);
+
 /* In plan-dates.c: the key "dates". */
 bool read_dates(struct reader *reader, const cJSON *root);
 #endif

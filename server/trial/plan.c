@@ -385,37 +385,54 @@ static bool read_covariate(struct reader *reader, const cJSON *item, const char 
     return true;
 }
 
-static bool read_event(struct reader *reader, const cJSON *item, const char *path) {
+static bool one_of(const char *word, const char *const *words, size_t count) {
+    for (size_t i = 0; i < count; i++) {
+        if (strcmp(word, words[i]) == 0) {
+            return true;
+        }
+    }
+    return false;
+}
+
+static bool read_event_words(struct reader *reader, const cJSON *item, const char *path, struct event *event) {
     static const char *const kinds[] = {"stopped-treatment", "rescue", "withdrew", "died"};
+    static const char *const strategies[] = {
+        "treatment-policy", "hypothetical", "composite", "while-on-treatment", "principal-stratum"};
+    if (!read_text(reader, item, path, "kind", false, &event->kind) ||
+        !read_text(reader, item, path, "strategy", false, &event->strategy)) {
+        return false;
+    }
+    if (event->kind && !one_of(event->kind, kinds, sizeof kinds / sizeof *kinds)) {
+        return wrong(reader, join(reader, path, "kind"), "must be stopped-treatment, rescue, withdrew or died");
+    }
+    return !event->strategy || one_of(event->strategy, strategies, sizeof strategies / sizeof *strategies) ||
+           wrong(reader, join(reader, path, "strategy"),
+               "must be treatment-policy, hypothetical, composite, while-on-treatment or principal-stratum");
+}
+
+static bool read_event(struct reader *reader, const cJSON *item, const char *path) {
     struct plan *plan = reader->plan;
     struct event *event = &plan->events[plan->event_count];
-    if (!keys_known(reader, item, path, "id label column file visit yes no date reason kind") ||
+    if (!keys_known(reader, item, path, "id label column file visit yes no date reason kind strategy") ||
         !read_text(reader, item, path, "id", true, &event->id) || !id_is_new(reader, path, event->id) ||
         !read_text(reader, item, path, "label", false, &event->label) ||
         !read_place(reader, item, path, &event->column, &event->place) ||
         !read_texts(reader, item, path, "yes", &event->yes) || !read_texts(reader, item, path, "no", &event->no) ||
         !read_column(reader, item, path, "date", &event->date, &event->date_place) ||
-        !read_column(reader, item, path, "reason", &event->reason, &event->reason_place) ||
-        !read_text(reader, item, path, "kind", false, &event->kind)) {
+        !read_column(reader, item, path, "reason", &event->reason, &event->reason_place)) {
         return false;
     }
     if (!event->yes.count || !event->no.count) {
         return wrong(reader, path, "must list the codes that mean yes and those that mean no");
     }
     for (size_t i = 0; i < event->yes.count; i++) {
-        for (size_t j = 0; j < event->no.count; j++) {
-            if (strcmp(event->yes.item[i], event->no.item[j]) == 0) {
-                return wrong(reader, path, "has a code that means yes and no at once");
-            }
+        if (one_of(event->yes.item[i], event->no.item, event->no.count)) {
+            return wrong(reader, path, "has a code that means yes and no at once");
         }
-    }
-    bool known = !event->kind;
-    for (size_t i = 0; i < sizeof kinds / sizeof *kinds && !known; i++) {
-        known = strcmp(event->kind, kinds[i]) == 0;
     }
     event->label = event->label ? event->label : event->id;
     plan->event_count++;
-    return known || wrong(reader, join(reader, path, "kind"), "must be stopped-treatment, rescue, withdrew or died");
+    return read_event_words(reader, item, path, event);
 }
 
 /* A list of covariates' ids as indices. */
@@ -455,6 +472,14 @@ static bool settle_primary(struct reader *reader) {
                    "has more than one with \"role\": \"primary\"; keep one and make the others secondary");
 }
 
+static bool same_codes(const struct texts *a, const struct texts *b) {
+    bool same = a->count == b->count;
+    for (size_t i = 0; i < a->count && same; i++) {
+        same = one_of(a->item[i], b->item, b->count);
+    }
+    return same;
+}
+
 /* Adds the column to the variables, or finds it there; a column has one kind. */
 static bool place_variable(struct reader *reader, const struct variable *wanted, int *index) {
     struct plan *plan = reader->plan;
@@ -474,6 +499,16 @@ static bool place_variable(struct reader *reader, const struct variable *wanted,
     if (there->kind != wanted->kind) {
         return fault_set(reader->fault, FAULT_INPUT, "%s: the column \"%.60s\" is used as two different kinds, for %s and for %s; a column has one meaning",
             reader->name, wanted->column, there->label, wanted->label);
+    }
+    /* Several events may rest on one column, each with its own codes, and each is read from it by itself. */
+    if (wanted->event != NOWHERE && there->event != NOWHERE) {
+        if (same_codes(&plan->events[wanted->event].yes, &plan->events[there->event].yes)) {
+            return fault_set(reader->fault, FAULT_INPUT, "%s: %s and %s rest on the column \"%.60s\" with the same codes for yes; keep one",
+                reader->name, there->label, wanted->label, wanted->column);
+        }
+        *index = (int)plan->variable_count;
+        plan->variables[plan->variable_count++] = *wanted;
+        return true;
     }
     /* A covariate may be an outcome's visit, such as its baseline; whichever says more about the numbers is heard. */
     if (wanted->outcome != NOWHERE && there->outcome == NOWHERE) {
@@ -596,7 +631,7 @@ static bool settle_settings(struct reader *reader, const cJSON *root) {
 }
 
 static bool refuse_later_keys(struct reader *reader, const cJSON *root) {
-    static const char *const later[] = {"dates", "derived", "screening"};
+    static const char *const later[] = {"dates", "derived"};
     for (size_t i = 0; i < sizeof later / sizeof *later; i++) {
         if (member(root, later[i])) {
             return fault_set(reader->fault, FAULT_INPUT,
@@ -611,7 +646,7 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (!refuse_later_keys(reader, root) ||
         !keys_known(reader, root, "",
             "title participant arm missing_codes outcomes covariates events adjust_for missing_baseline subgroups confidence "
-            "blinding seed site stratified_by standard_error files") ||
+            "blinding seed site stratified_by standard_error files screening") ||
         !read_text(reader, root, "", "title", true, &plan->title) ||
         !read_text(reader, root, "", "participant", true, &plan->participant) || !settle_files(reader, root) ||
         !read_arms(reader, root) ||
@@ -627,7 +662,8 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (plan->arm_column && strcmp(plan->arm_column, plan->participant) == 0) {
         return wrong(reader, "arm.column", "is the participant's column; a column has one meaning");
     }
-    return settle_variables(reader) && settle_settings(reader, root) && settle_standard_error(reader, root);
+    return settle_variables(reader) && settle_settings(reader, root) && settle_standard_error(reader, root) &&
+           read_screening(reader, root);
 }
 
 /* Where in the text JSON stopped being JSON: 1-based line and column, in characters. */
