@@ -3,6 +3,7 @@
 #include "base/memory.h"
 #include "demo/quayside.h"
 #include "exhibits/registry.h"
+#include "trial/verify.h"
 #include "http/server.h"
 #include "stats/estimate.h"
 #include <errno.h>
@@ -27,6 +28,7 @@ enum option {
     OPTION_NO_BROWSER,
     OPTION_FOLDER,
     OPTION_AS,
+    OPTION_EXPECT,
     OPTION_COUNT
 };
 
@@ -39,6 +41,7 @@ static const struct option_rule {
     [OPTION_PORT] = {"--port", "N", "the port of 127.0.0.1 to serve on; 0, the default, takes a free one"},
     [OPTION_NO_BROWSER] = {"--no-browser", NULL, "only print the address"},
     [OPTION_FOLDER] = {"--folder", "DIR", "where studies are kept"},
+    [OPTION_EXPECT] = {"--expect", "HASH", "the head of the record as it was noted elsewhere"},
     [OPTION_AS] = {"--as", "text|json|csv|svg|html", "the form of the exhibit; text is the default"},
 };
 #define WITH(option) (1u << (option))
@@ -490,6 +493,21 @@ static void help_command(const struct command *command) {
 
 static enum exit_status run_help(const struct given *given);
 
+static enum exit_status run_verify(const struct given *given) {
+    struct fault fault;
+    fault_init(&fault);
+    struct text account;
+    text_init(&account);
+    bool sound = false;
+    bool read = study_verify(given->words[0], given->options[OPTION_EXPECT], &sound, &account, &fault);
+    if (read) {
+        fputs(account.data, stdout);
+        fault_set(&fault, FAULT_INPUT, "%s is not as it was recorded; see above, and ask for an earlier copy", given->words[0]);
+    }
+    text_release(&account);
+    return read && sound ? printed() : refuse(&fault);
+}
+
 static const struct command commands[] = {
     {"demo", "[--port N] [--no-browser] [--folder DIR]", "makes the demonstration study and opens it",
         "The study of the invented Quayside Walking Trial is made in a new temporary folder, or in DIR, beside the "
@@ -516,6 +534,9 @@ static const struct command commands[] = {
     {"decide", "FILE.study DECISIONS.json --by \"Name, role\"", "records a batch of decisions, all or none",
         "Every decision but a few needs a reason. Where one is refused none is recorded, and the sentence names it.",
         WITH(OPTION_BY), WITH(OPTION_BY), 2, 2, run_decide},
+    {"verify", "FILE.study [--expect HASH]", "proves a study file against itself and against a head noted elsewhere",
+        "Reads the kept bytes again, replays every decision, checks the chain and its head, and says what differs first.",
+        WITH(OPTION_EXPECT), 0, 1, 1, run_verify},
     {"help", "[COMMAND]", "says what the commands do", "", 0, 0, 0, 1, run_help},
     {0},
 };
