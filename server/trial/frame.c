@@ -447,6 +447,17 @@ static int by_text(const void *a, const void *b) {
     return strcmp(*(const char *const *)a, *(const char *const *)b);
 }
 
+/* What the file itself calls a code, the code where it says nothing. */
+static const char *label_in_file(const struct column *column, const char *code) {
+    const struct cell_about *about = column->cells->about ? &column->cells->about[column->index] : NULL;
+    for (size_t i = 0; about && i < about->value_count; i++) {
+        if (strcmp(about->values[i].code, code) == 0) {
+            return about->values[i].label;
+        }
+    }
+    return code;
+}
+
 /* Levels of a category or the arm: the listed ones, then every other text that stands there, in byte order. */
 static void interpret_category(const struct frame *frame, struct column *column, const struct codes *codes) {
     struct map map;
@@ -486,7 +497,8 @@ static void interpret_category(const struct frame *frame, struct column *column,
     for (size_t i = 0; i < column->listed_count + unlisted; i++) {
         if (i >= column->listed_count) {
             const char *code = extra[i - column->listed_count];
-            levels[i] = (struct level){code, column->listed_count ? arena_format(&column->arena, "\"%s\", not listed", code) : code};
+            levels[i] = (struct level){code, column->listed_count ? arena_format(&column->arena, "\"%s\", not listed", code) :
+                label_in_file(column, code)};
         }
         map_put(&map, levels[i].code, (int32_t)i);
     }

@@ -3,6 +3,7 @@
 #include "base/clock.h"
 #include "base/version.h"
 #include "draw/json.h"
+#include "intake/read.h"
 #include "store/store.h"
 #include <pthread.h>
 #include <pwd.h>
@@ -155,38 +156,58 @@ static const char *account_name(struct arena *arena) {
     return known ? arena_text(arena, entry.pw_name) : arena_format(arena, "account %u", (unsigned)geteuid());
 }
 
-/* The plan's codes for missing as the first decisions: one for each column and code. */
-static size_t planned_decisions(const struct plan *plan, struct arena *arena, struct decision **decisions) {
-    size_t room = 0, count = 0;
-    for (size_t v = 0; v < plan->variable_count; v++) {
-        room += plan->variables[v].missing_codes->count;
+struct planning { /* the first decisions on their way: codes for missing that the plan, or a file itself, declares */
+    const struct plan *plan;
+    struct arena *arena;
+    struct decision *decisions;
+    size_t count, room;
+};
+
+static void plan_code(struct planning *planning, const char *column, const char *code, const char *reason) {
+    for (size_t i = 0; i < planning->count; i++) {
+        if (strcmp(planning->decisions[i].column, column) == 0 && strcmp(planning->decisions[i].value, code) == 0) {
+            return; /* at another visit of the same column, or by the plan already */
+        }
     }
-    *decisions = ARENA_NEW(arena, room, struct decision);
+    if (planning->count == planning->room) {
+        planning->room = planning->room ? planning->room * 2 : 32;
+        struct decision *grown = ARENA_NEW(planning->arena, planning->room, struct decision);
+        if (planning->count) {
+            memcpy(grown, planning->decisions, planning->count * sizeof *grown);
+        }
+        planning->decisions = grown;
+    }
+    struct text body;
+    text_init(&body);
+    struct json json;
+    json_init(&json, &body);
+    json_object(&json);
+    json_field_string(&json, "value", code);
+    json_field_bool(&json, "planned", true);
+    json_close(&json);
+    struct decision *decision = &planning->decisions[planning->count++];
+    *decision = (struct decision){.number = (uint32_t)planning->count, .kind = DECISION_MISSING_CODE, .column = column, .value = code,
+        .reason = reason, .planned = true, .body = arena_text(planning->arena, body.data)};
+    text_release(&body);
+}
+
+/* One for each column and code; a column of a file with one row per visit once for all its visits. */
+static size_t planned_decisions(const struct plan *plan, const struct cells *cells, struct arena *arena, struct decision **decisions) {
+    struct planning planning = {plan, arena, NULL, 0, 0};
     for (size_t v = 0; v < plan->variable_count; v++) {
         const struct variable *variable = &plan->variables[v];
-        const char *column = arena_bytes(arena, variable->column, plan->files[variable->place.file].by_visit ?
-            (size_t)(strrchr(variable->column, '@') - variable->column) : strlen(variable->column));
-        bool entered = false; /* at another visit of the same column */
-        for (size_t i = 0; i < count && !entered; i++) {
-            entered = strcmp((*decisions)[i].column, column) == 0;
+        const struct cells *file = &cells[variable->place.file];
+        const char *column = plan_column_name(arena, plan, variable->place.file, variable->place.column);
+        for (size_t c = 0; c < variable->missing_codes->count; c++) {
+            plan_code(&planning, column, variable->missing_codes->item[c], "The plan lists it as a code for missing.");
         }
-        for (size_t c = 0; c < variable->missing_codes->count && !entered; c++) {
-            struct text body;
-            text_init(&body);
-            struct json json;
-            json_init(&json, &body);
-            json_object(&json);
-            json_field_string(&json, "value", variable->missing_codes->item[c]);
-            json_field_bool(&json, "planned", true);
-            json_close(&json);
-            struct decision *decision = &(*decisions)[count++];
-            *decision = (struct decision){.number = (uint32_t)count, .kind = DECISION_MISSING_CODE, .column = column,
-                .value = variable->missing_codes->item[c], .reason = "The plan lists it as a code for missing.",
-                .planned = true, .body = arena_text(arena, body.data)};
-            text_release(&body);
+        const struct cell_about *about = file->about ? &file->about[cells_column(file, variable->place.column)] : NULL;
+        for (size_t c = 0; about && c < about->missing_count; c++) {
+            plan_code(&planning, column, about->missing[c], "The file itself declares it as a code for missing.");
         }
     }
-    return count;
+    *decisions = planning.decisions;
+    return planning.count;
 }
 
 static void to_stored(const struct decision *decision, struct stored_decision *stored) {
@@ -198,8 +219,9 @@ static void to_stored(const struct decision *decision, struct stored_decision *s
 }
 
 static void tell_file(struct text *account, const char *name, const struct cells *cells) {
-    text_format(account, "%s: %zu records of %zu columns, %s, delimiter %s%s.\n", name, cells->records, cells->columns,
-        cells->encoding, cells->delimiter_word, cells->byte_order_mark ? ", byte order mark" : "");
+    text_format(account, "%s: %zu records of %zu columns, %s%s%s%s.%s%s\n", name, cells->records, cells->columns, cells->encoding,
+        cells->delimiter ? ", delimiter " : "", cells->delimiter ? cells->delimiter_word : "",
+        cells->byte_order_mark ? ", byte order mark" : "", *cells->notes ? " " : "", cells->notes);
 }
 
 static void tell_join(struct text *account, const struct frame *frame, size_t f) {
@@ -245,7 +267,7 @@ struct birth { /* everything on the way to a new study */
 static bool read_files(struct birth *birth, struct fault *fault) {
     for (size_t f = 0; f < birth->plan.file_count; f++) {
         birth->names[f] = file_part(birth->files[f]->name);
-        if (!cells_read(&birth->cells[f], birth->files[f]->bytes, birth->files[f]->length, birth->names[f], fault)) {
+        if (!read_cells(&birth->cells[f], birth->files[f]->bytes, birth->files[f]->length, birth->names[f], birth->plan.files[f].sheet, fault)) {
             return false;
         }
     }
@@ -261,7 +283,7 @@ static bool write_birth(struct birth *birth, const char *path, const char *plan_
         return false;
     }
     struct decision *planned;
-    size_t count = planned_decisions(&birth->plan, &birth->arena, &planned), files = birth->plan.file_count;
+    size_t count = planned_decisions(&birth->plan, birth->cells, &birth->arena, &planned), files = birth->plan.file_count;
     birth->frame = frame_build(&birth->plan, birth->cells, "", letters, planned, count, NULL, false, fault);
     if (!birth->frame) {
         return false;
@@ -447,7 +469,7 @@ static bool take_files(struct study *study, struct fault *fault) {
         struct store_file file = {0};
         names[f] = arena_text(&study->arena, files[f].name);
         done = store_received(study->store, &bytes, files[f].number, &file, fault) &&
-               cells_read(&study->cells[f], file.bytes, file.length, names[f], fault);
+               read_cells(&study->cells[f], file.bytes, file.length, names[f], study->plan.files[f].sheet, fault);
         arena_release(&bytes);
     }
     if (done) {

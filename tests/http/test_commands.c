@@ -216,7 +216,7 @@ static const struct {
     int status;
     const char *sentence; /* after "evenhand: "; the whole of it */
 } wrong[] = {
-    {"", 2, "say what to do, one of demo, load, open, exhibit, exhibits, decide, help; see: evenhand help"},
+    {"", 2, "say what to do, one of demo, load, open, exhibit, exhibits, decide, verify, help; see: evenhand help"},
     {"lode x.csv", 2, "there is no command \"lode\"; see: evenhand help"},
     {"help lode", 2, "there is no command \"lode\"; see: evenhand help"},
     {"load", 2,
