@@ -300,7 +300,8 @@ static enum exit_status run_demo(const struct given *given) {
     const char *folder, *study;
     bool done = demo_folder(given, &arena, &folder, &fault) && make_demo(folder, &arena, &study, &account, &fault);
     if (done) {
-        printf("The invented Quayside Walking Trial is in %s: the study quayside.study, what it was made from "
+        /* Standard output has the one line with the address; this is for the person who reads along. */
+        fprintf(stderr, "The invented Quayside Walking Trial is in %s: the study quayside.study, what it was made from "
                "(export.csv, "
                "plan.json),\nthe right decisions (decisions.json) and the truth (clean.csv, key.json); in its folder long the "
                "same trial as four files.\n",
