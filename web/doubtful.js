@@ -211,8 +211,8 @@ function accept() {
     title: discrepancy.proposal_words ?? decisionWords(proposal),
     before: () => (discrepancy.value === null ? null : discrepancy.value === "" ? "blank" : discrepancy.value),
     after: () => proposal.to ?? (proposal.kind === "number-format" ? (discrepancy.value ?? "").replace(",", ".") || null : proposal.kind === "confirm" ? proposal.value
-      : proposal.kind === "keep-record" ? `record ${proposal.row} in force` : "missing"),
-    says: whole ? () => "Holds for the whole column, so it settles every one like it." : null,
+      : proposal.kind === "date-order" ? `read as ${proposal.order}` : proposal.kind === "keep-record" ? `record ${proposal.row} in force` : "missing"),
+    says: whole ? () => `Holds for ${proposal.site ? `all dates of site ${proposal.site} in this column` : "the whole column"}, so it settles every one like it.` : null,
     ...(whole ? { decisions: () => [{ ...proposal, discrepancy: discrepancy.id }] } : forEach(discrepancy, "proposal")),
   });
 }

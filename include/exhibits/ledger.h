@@ -19,7 +19,7 @@ void members_take(struct members *members, const struct view *view, enum members
 void members_note(struct view *view, const struct members *members);
 
 /* Indices of the plan's variables that may be shown now, in order of time: covariates, outcomes visit by visit (all
- * outcomes of one visit together), events. A note names those hidden because they would tell the arms apart. */
+ * outcomes of one visit together), events; dates are not among them. A note names those hidden because they would tell the arms apart. */
 int *variables_in_time(struct view *view, size_t *count);
 
 /* Levels of a category or an event ("no", "yes"); NULL and 0 for a number. */

@@ -52,8 +52,7 @@ struct column {
 struct participant {
     const char *id;
     size_t record;       /* 0-based record of the first file in force, or NO_RECORD while held aside */
-    size_t record_count; /* how many records bear this identifier; with one row per visit 1 */
-    size_t first, total; /* their records of the first file: frame.order[first ...], one row per visit: of all visits */
+    size_t record_count; /* how many records bear this identifier */
     bool excluded_full, excluded_per_protocol;
 };
 
@@ -87,9 +86,6 @@ struct frame {
     struct column **identifiers; /* [files] identifiers[0] == identifier */
     struct column **visits;      /* [files] visit codes; NULL where a file has one row per participant */
     struct column **windows;     /* [files] texts of plan_file.window, NULL where there is none */
-    size_t *order;               /* 0-based records of the first file by participant, then as in the file */
-    int32_t **owner;             /* [files][records] participant of each record, NOWHERE where none; NULL for a first file with
-                                    one row per participant */
     size_t **place;              /* [slots][participants] 0-based record of the slot's file, NO_RECORD or HELD_RECORD */
     struct join *joins;          /* [files] */
     size_t roster;               /* records that stand for participants in the first file: all of them, or with one row per
@@ -128,6 +124,8 @@ static inline size_t frame_place(const struct frame *frame, const struct column 
 const char *frame_received(const struct frame *frame, const struct column *column, size_t participant);
 /* Current text of a column for a participant: NULL where set missing, held aside or without a record of the visit. */
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant);
+/* The slot that a file's record speaks of, by its visit's code or date; NO_RECORD where of no planned visit. */
+size_t frame_slot_of_record(const struct frame *frame, size_t file, size_t record);
 /* The participant's site as it now reads, NULL where the plan has none or it is not known. */
 const char *frame_site(const struct frame *frame, size_t participant);
 /* The order in which a date's column is read for a site: the last decision that stands, else the plan. */
@@ -136,8 +134,4 @@ enum date_order frame_date_order(const struct frame *frame, const char *column, 
 const struct column *frame_column(const struct frame *frame, const char *name);
 /* The 0-based records of the first file that bear a participant's identifier, in file order: at most `room` are written; returns how many. */
 size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room);
-/* The same of the file, and where it has one row per visit the visit, that a slot of the plan is. */
-size_t frame_slot_records(const struct frame *frame, size_t slot, size_t participant, size_t *records, size_t room);
-/* The slot of the plan that a record of file f is of; NO_RECORD at a visit never planned. */
-size_t frame_record_slot(const struct frame *frame, size_t f, size_t record);
 #endif

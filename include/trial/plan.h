@@ -225,6 +225,7 @@ bool plan_after_randomisation(const struct plan *plan, int variable);
 /* The file whose identifiers (or, by_visit, visit codes) the name means: "FILE.COLUMN". NOWHERE where it means neither. */
 int plan_identifier_file(const struct plan *plan, const char *column);
 int plan_visit_file(const struct plan *plan, const char *column);
+int plan_window_file(const struct plan *plan, const char *column); /* whose visits that date finds */
 /* Whether what a decision says of a column means the column of that name: the same, or FILE.COLUMN for FILE.COLUMN@CODE, the
  * column at every visit. */
 bool plan_covers(const char *said, const char *name);

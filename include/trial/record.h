@@ -12,6 +12,7 @@ enum decision_kind {
     DECISION_READ_AS,
     DECISION_MISSING_CODE,
     DECISION_NUMBER_FORMAT,
+    DECISION_DATE_ORDER,
     DECISION_CORRECT,
     DECISION_SET_MISSING,
     DECISION_CONFIRM,
@@ -54,6 +55,7 @@ struct decision {
     /* taken out of the body for use: */
     const char *value, *meaning, *decimal, *outcome, *scale, *set, *text, *exhibit;
     const char *file;   /* keep-record: id of the file, NULL for the first */
+    const char *order, *site; /* date-order: site NULL for every site */
     const char *people; /* attending: the list as JSON */
     uint32_t row;      /* 1-based data record in the file, 0 where not given */
     uint32_t reverses; /* number of the decision that a reverse takes back */

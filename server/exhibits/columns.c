@@ -17,7 +17,7 @@ struct columns_result {
 };
 
 static const char *kind_words(enum variable_kind kind) {
-    static const char *const words[] = {"number", "category", "event", "arm", "participant"};
+    static const char *const words[] = {"number", "category", "event", "arm", "participant", "visit", "date"};
     return words[kind];
 }
 
@@ -38,6 +38,7 @@ static void describe_variable(struct view *view, struct row *row, int index) {
     row->meaning = variable->outcome != NOWHERE && variable->covariate != NOWHERE ? "outcome and covariate" :
         variable->outcome != NOWHERE ? (frame->plan->outcomes[variable->outcome].primary ? "primary outcome" : "secondary outcome") :
         variable->event != NOWHERE   ? "event" :
+        variable->kind == VARIABLE_DATE ? "date" :
                                        arena_format(view->arena, "covariate, %s", kind_words(variable->kind));
     count_states(row, frame, frame->columns[index]);
     if (arms_hide_column(frame, row->column)) {

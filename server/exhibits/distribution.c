@@ -141,7 +141,10 @@ static const char *caption_of(const struct view *view, const struct distribution
 }
 
 static bool compute(struct view *view, struct fault *fault) {
-    (void)fault;
+    if (variable_of(view)->kind == VARIABLE_DATE) {
+        return fault_set(fault, FAULT_INPUT, "distribution: %.60s is a date and has no distribution here; the exhibit dates shows it",
+            variable_of(view)->column);
+    }
     struct distribution_result *result = ARENA_NEW(view->arena, 1, struct distribution_result);
     const unsigned char *state = view->frame->columns[view->variable]->state;
     choose_scale(view);

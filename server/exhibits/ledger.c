@@ -96,8 +96,8 @@ int *variables_in_time(struct view *view, size_t *count) {
     *count = 0;
     for (size_t time = 0; time <= timeline.count + 1; time++) {
         for (size_t v = 0; v < plan->variable_count; v++) {
-            if (time_of(&timeline, plan, v) != time) {
-                continue;
+            if (time_of(&timeline, plan, v) != time || plan->variables[v].kind == VARIABLE_DATE) {
+                continue; /* dates have an exhibit of their own */
             }
             if (arms_hide_column(view->frame, plan->variables[v].column)) {
                 view_note(view, "%s is not shown while the study is %s: its levels would tell the arms apart.",

@@ -50,6 +50,9 @@ const char *decision_words(const struct view *view, const struct decision *decis
             decision->meaning ? decision->meaning : "");
     case DECISION_NUMBER_FORMAT:
         return arena_format(arena, "%s: decimal %s", label, decision->decimal[0] == ',' ? "comma" : "point");
+    case DECISION_DATE_ORDER:
+        return arena_format(arena, "%s%s%s: dates are %s", label, decision->site ? ", site " : "", decision->site ? decision->site : "",
+            decision->order);
     case DECISION_CORRECT:
     case DECISION_SET_MISSING:
         return arena_format(arena, "%s of %s: %s becomes %s", label, who, or_nothing(decision->from),
@@ -100,6 +103,8 @@ void decision_json(const struct view *view, const struct decision *decision, boo
     json_field_string(json, "from", hide ? NULL : decision->from);
     json_field_string(json, "to", hide ? NULL : decision->to);
     json_field_string(json, "value", hide ? NULL : decision->value);
+    json_field_string(json, "order", decision->order);
+    json_field_string(json, "site", decision->site);
     json_field_string(json, "reason", hide ? NULL : decision->reason);
     json_field_string(json, "evidence", hide ? NULL : decision->evidence);
     json_field_string(json, "discrepancy", hide ? NULL : decision->discrepancy);

@@ -114,20 +114,16 @@ static void build_roster(struct build *build) {
         qsort(rows, used, sizeof *rows, by_id_then_record);
     }
     frame->participants = ARENA_NEW(&frame->arena, used, struct participant);
-    frame->order = ARENA_NEW(&frame->arena, used, size_t);
     for (size_t i = 0; i < used; i++) {
         struct participant *last = frame->participant_count ? &frame->participants[frame->participant_count - 1] : NULL;
-        frame->order[i] = rows[i].record;
         if (last && strcmp(last->id, rows[i].id) == 0) {
-            last->total++;
             if (by_visit) {
                 continue; /* rows of one participant are visits, not repetitions */
             }
             last->record_count++;
             last->record = NO_RECORD;
         } else {
-            frame->participants[frame->participant_count++] = (struct participant){.id = rows[i].id, .record = rows[i].record,
-                .record_count = 1, .first = i, .total = 1};
+            frame->participants[frame->participant_count++] = (struct participant){rows[i].id, rows[i].record, 1, false, false};
         }
     }
     memory_free(rows);
@@ -181,30 +177,14 @@ int frame_participant(const struct frame *frame, const char *id) {
 
 size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room) {
     const struct participant *who = &frame->participants[participant];
-    for (size_t i = 0; i < who->total && i < room; i++) {
-        records[i] = frame->order[who->first + i];
+    if (who->record_count == 1 && room) {
+        records[0] = who->record;
+        return 1;
     }
-    return who->total;
-}
-
-size_t frame_record_slot(const struct frame *frame, size_t f, size_t record) {
-    const struct plan_file *file = &frame->plan->files[f];
-    const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
-    for (size_t c = 0; code && c < file->codes.count; c++) {
-        if (strcmp(file->codes.item[c], code) == 0) {
-            return file->first_slot + c;
-        }
-    }
-    return file->by_visit ? NO_RECORD : file->first_slot;
-}
-
-size_t frame_slot_records(const struct frame *frame, size_t slot, size_t participant, size_t *records, size_t room) {
-    size_t f = frame->plan->slots[slot].file, found = 0;
-    if (!frame->owner[f]) {
-        return frame_records(frame, participant, records, room);
-    }
-    for (size_t r = 0; r < frame->cells[f].records; r++) {
-        if (frame->owner[f][r] == (int32_t)participant && frame_record_slot(frame, f, r) == slot) {
+    size_t found = 0;
+    for (size_t r = 0; r < frame->cells->records && found < who->record_count; r++) {
+        const char *id = column_text(frame, frame->identifier, r);
+        if (id && strcmp(id, who->id) == 0) {
             if (found < room) {
                 records[found] = r;
             }
@@ -260,23 +240,11 @@ static bool same_text(const char *a, const char *b) {
     return a && b ? strcmp(a, b) == 0 : a == b;
 }
 
-/* The visit's code that a decision on a column of a file with one row per visit is about; NULL: all. */
-static const char *code_meant(const struct frame *frame, const struct decision *decision, const struct column *column) {
-    bool texts = column->kind == VARIABLE_PARTICIPANT || column->kind == VARIABLE_VISIT;
-    const char *code = texts ? NULL : frame->plan->slots[column->slot].code;
-    size_t length = strlen(decision->column), tail = code ? strlen(code) : 0;
-    bool said = code && length > tail && decision->column[length - tail - 1] == '@' && strcmp(decision->column + length - tail, code) == 0;
-    return said ? code : NULL;
-}
-
-/* How many of the current texts that a decision is about read so. */
-static size_t count_text(const struct build *build, const struct decision *decision, const struct column *column, const char *text) {
-    const struct frame *frame = build->frame;
-    const char *code = code_meant(frame, decision, column);
+/* How many of the current texts read so. */
+static size_t count_text(const struct build *build, const struct column *column, const char *text) {
     size_t count = 0;
     for (size_t r = 0; r < column->cells->records; r++) {
-        count += same_text(column_text(frame, column, r), text) &&
-                 (!code || same_text(column_text(frame, frame->visits[column->file], r), code));
+        count += same_text(column_text(build->frame, column, r), text);
     }
     return count;
 }
@@ -304,18 +272,16 @@ static size_t record_meant(
     if (decision->row) {
         size_t record = decision->row - 1;
         *why = "names a row that is not one of the participant's records";
-        bool new = is_new(build, (size_t)(decision - frame->decisions));
         bool fits = record < column->cells->records &&
-                    (!new || same_text(column_text(frame, identifier, record), decision->participant));
-        const char *code = code_meant(frame, decision, column);
-        if (fits && new && code && !same_text(column_text(frame, frame->visits[column->file], record), code)) {
-            *why = "names a row that is of another visit than the column says";
-            return NO_RECORD;
-        }
+                    (!is_new(build, (size_t)(decision - frame->decisions)) || same_text(column_text(frame, identifier, record), decision->participant));
         return fits ? record : NO_RECORD;
     }
     if (column->kind == VARIABLE_PARTICIPANT) {
         return record_of_identifier(frame, column, decision->participant, why);
+    }
+    if (frame->windows[column->file] == NULL && frame->plan->files[column->file].window) { /* it is being made: no places yet */
+        *why = "is about a date by which visits are found; say which record with \"row\"";
+        return NO_RECORD;
     }
     int who = participant_meant(build, (size_t)(decision - frame->decisions));
     *why = who == NOWHERE ? "names a participant who is not in the file" :
@@ -346,8 +312,12 @@ static bool apply_to_cell(struct build *build, size_t i, struct column *column) 
         return !is_new(build, i) || same_text(column_text(build->frame, column, record), decision->value) ||
                refuse(build, i, "confirms a value that is not the text now current");
     }
-    if (is_new(build, i) && !same_text(column_text(build->frame, column, record), decision->from)) {
+    bool reads_so = same_text(column_text(build->frame, column, record), decision->from);
+    if (is_new(build, i) && !reads_so) {
         return from_differs(build, i, column_text(build->frame, column, record));
+    }
+    if (!reads_so && !decision->row && build->frame->plan->files[column->file].window) {
+        return true; /* a date corrected since has given the visit another record */
     }
     put_cell(build, column, record, decision->kind == DECISION_CORRECT ? decision->to : NULL, decision->number);
     return true;
@@ -355,7 +325,7 @@ static bool apply_to_cell(struct build *build, size_t i, struct column *column) 
 
 static bool apply_read_as(struct build *build, size_t i, struct column *column) {
     const struct decision *decision = &build->frame->decisions[i];
-    if (is_new(build, i) && count_text(build, decision, column, decision->from) == 0) {
+    if (is_new(build, i) && count_text(build, column, decision->from) == 0) {
         return refuse(build, i, "reads a code as another, but no value of the column now reads so");
     }
     for (size_t r = 0; r < column->cells->records; r++) {
@@ -377,7 +347,7 @@ static bool replay(struct build *build, struct column *column, const char *name)
                         (decision->kind == DECISION_CONFIRM && decision->participant);
         bool done = one_cell                          ? apply_to_cell(build, i, column) :
             decision->kind == DECISION_READ_AS        ? apply_read_as(build, i, column) :
-            decision->kind == DECISION_CONFIRM        ? !is_new(build, i) || count_text(build, decision, column, decision->value) > 0 ||
+            decision->kind == DECISION_CONFIRM        ? !is_new(build, i) || count_text(build, column, decision->value) > 0 ||
                 refuse(build, i, "confirms a value that no cell of the column now has") :
                                                         true;
         if (!done) {
@@ -551,6 +521,69 @@ static void interpret_category(const struct frame *frame, struct column *column,
     memory_free(extra);
 }
 
+/* The order of each site, looked up once. */
+struct site_orders {
+    const char *column;
+    struct map map;
+};
+
+const char *frame_site(const struct frame *frame, size_t participant) {
+    const struct plan *plan = frame->plan;
+    int variable = plan->site_column ? plan_variable(plan, plan->site_column) : NOWHERE;
+    if (variable != NOWHERE && frame->columns && frame->columns[variable]) {
+        return frame_text(frame, frame->columns[variable], participant);
+    }
+    const struct cells *cells = plan->site_column ? &frame->cells[plan->site_place.file] : NULL;
+    size_t record = !cells || frame->participants[participant].record == NO_RECORD ? NO_RECORD :
+                                                                                   frame->place[plan->site_place.slot][participant];
+    return record == NO_RECORD || record == HELD_RECORD ? NULL :
+                                                          cells_at(cells, record, cells_column(cells, plan->site_place.column));
+}
+
+enum date_order frame_date_order(const struct frame *frame, const char *column, size_t file, const char *site) {
+    enum date_order order = dates_order(frame->plan->dates, file, site);
+    for (size_t i = 0; i < frame->version; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        bool about = frame->stands[i] && decision->kind == DECISION_DATE_ORDER && plan_covers(decision->column, column);
+        if (about && (!decision->site || (site && strcmp(decision->site, site) == 0))) {
+            date_order_read(decision->order, &order);
+        }
+    }
+    return order;
+}
+
+static enum date_order order_of_site(const struct frame *frame, struct site_orders *orders, size_t file, size_t participant) {
+    const char *site = frame_site(frame, participant), *key = site ? site : "";
+    int32_t order = map_get(&orders->map, key);
+    return (enum date_order)(order != NOWHERE ? order :
+            map_put(&orders->map, key, (int32_t)frame_date_order(frame, orders->column, file, site)));
+}
+
+static void interpret_date(const struct frame *frame, struct column *column, size_t p, const char *text, const struct codes *codes,
+    struct site_orders *orders) {
+    if (is_code(codes, text)) {
+        column->state[p] = CELL_MISSING_CODE;
+        return;
+    }
+    enum date_reading reading = date_read(text, order_of_site(frame, orders, column->file, p), &column->number[p]);
+    column->state[p] = reading == DATE_READ ? CELL_OBSERVED : reading == DATE_BLANK ? CELL_BLANK : CELL_UNREADABLE;
+}
+
+static void interpret_dates(const struct frame *frame, struct column *column, const char *name, const struct codes *codes) {
+    struct site_orders orders = {.column = name};
+    map_init(&orders.map);
+    for (size_t p = 0; p < frame->participant_count; p++) {
+        size_t place = frame_place(frame, column, p);
+        const char *text = frame_text(frame, column, p);
+        if (text) {
+            interpret_date(frame, column, p, text, codes, &orders);
+        } else {
+            column->state[p] = place == HELD_RECORD ? CELL_HELD_ASIDE : place == NO_RECORD ? CELL_BLANK : CELL_SET_MISSING;
+        }
+    }
+    map_release(&orders.map);
+}
+
 static void interpret_cell(const struct frame *frame, struct column *column, size_t p, const struct codes *codes,
     const struct event *event, char sign) {
     const char *text = frame_text(frame, column, p);
@@ -592,7 +625,7 @@ static void interpret(struct build *build, struct column *column, const char *na
     struct codes codes = {0};
     collect_codes(build, column, name, &codes);
     column->state = ARENA_NEW(&column->arena, n, unsigned char);
-    if (column->kind == VARIABLE_NUMBER) {
+    if (column->kind == VARIABLE_NUMBER || column->kind == VARIABLE_DATE) {
         column->number = ARENA_NEW(&column->arena, n, double);
         for (size_t p = 0; p < n; p++) {
             column->number[p] = NAN;
@@ -605,6 +638,8 @@ static void interpret(struct build *build, struct column *column, const char *na
     }
     if (column->kind == VARIABLE_CATEGORY || column->kind == VARIABLE_ARM) {
         interpret_category(frame, column, &codes);
+    } else if (column->kind == VARIABLE_DATE) {
+        interpret_dates(frame, column, name, &codes);
     } else {
         char sign = decimal_sign(build, name);
         for (size_t p = 0; p < n; p++) {
@@ -656,13 +691,15 @@ static bool build_identifiers(struct build *build) {
     const struct plan *plan = frame->plan;
     frame->identifiers = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
     frame->visits = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
+    frame->windows = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
+    frame->columns = ARENA_NEW(&frame->arena, plan->variable_count, struct column *);
     for (size_t f = 0; f < plan->file_count; f++) {
         const struct plan_file *file = &plan->files[f];
         struct place identifier = {f, file->first_slot, file->participant}, visit = {f, file->first_slot, file->visit};
         const struct frame *previous = build->previous;
         if (!build_texts(build, file->identifier_name, &identifier, VARIABLE_PARTICIPANT,
                 previous ? previous->identifiers[f] : NULL, &frame->identifiers[f]) ||
-            (file->by_visit && !build_texts(build, file->visit_name, &visit, VARIABLE_VISIT, previous ? previous->visits[f] : NULL,
+            (file->visit_name && !build_texts(build, file->visit_name, &visit, VARIABLE_VISIT, previous ? previous->visits[f] : NULL,
                                    &frame->visits[f]))) {
             return false;
         }
@@ -677,17 +714,7 @@ struct joining {
     struct frame *frame;
     struct map participants; /* identifier to index */
     struct map codes;        /* visit code to place among the file's codes */
-    const char *id;          /* of the record before: files mostly come sorted */
-    int32_t who;
 };
-
-static int32_t owner_of(struct joining *joining, const char *id) {
-    if (!joining->id || strcmp(joining->id, id) != 0) {
-        joining->id = id;
-        joining->who = map_get(&joining->participants, id);
-    }
-    return joining->who;
-}
 
 static void join_record(struct joining *joining, size_t f, size_t record) {
     struct frame *frame = joining->frame;
@@ -695,17 +722,15 @@ static void join_record(struct joining *joining, size_t f, size_t record) {
     struct join *join = &frame->joins[f];
     const char *id = column_text(frame, frame->identifiers[f], record);
     const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
-    frame->owner[f][record] = NOWHERE;
     if (!id || is_blank(id)) {
         join->blank++;
         return;
     }
-    int32_t who = owner_of(joining, id), visit = file->by_visit ? code ? map_get(&joining->codes, code) : NOWHERE : 0;
+    int32_t who = map_get(&joining->participants, id), visit = file->by_visit ? code ? map_get(&joining->codes, code) : NOWHERE : 0;
     if (who == NOWHERE) {
         join->unmatched++;
         return;
     }
-    frame->owner[f][record] = who;
     if (visit == NOWHERE) {
         join->unplanned++;
         return;
@@ -719,8 +744,6 @@ static void join_record(struct joining *joining, size_t f, size_t record) {
 static void join_file(struct joining *joining, size_t f) {
     const struct plan_file *file = &joining->frame->plan->files[f];
     map_init(&joining->codes);
-    joining->id = NULL;
-    joining->frame->owner[f] = ARENA_NEW(&joining->frame->arena, joining->frame->cells[f].records, int32_t);
     for (size_t c = 0; c < file->codes.count; c++) {
         map_put(&joining->codes, file->codes.item[c], (int32_t)c);
     }
@@ -736,7 +759,6 @@ static void build_places(struct build *build) {
     size_t n = frame->participant_count;
     frame->place = ARENA_NEW(&frame->arena, plan->slot_count, size_t *);
     frame->joins = ARENA_NEW(&frame->arena, plan->file_count, struct join);
-    frame->owner = ARENA_NEW(&frame->arena, plan->file_count, int32_t *);
     for (size_t s = 0; s < plan->slot_count; s++) {
         frame->place[s] = ARENA_NEW(&frame->arena, n, size_t);
         for (size_t p = 0; p < n; p++) {
@@ -754,63 +776,14 @@ static void build_places(struct build *build) {
     }
     for (size_t f = plan->files[0].by_visit ? 0 : 1; f < plan->file_count; f++) {
         frame->joins[f].matched = 0;
-        join_file(&joining, f);
+        if (!plan->files[f].window) {
+            join_file(&joining, f);
+        }
     }
     map_release(&joining.participants);
 }
 
-/* The file a keep-record is about: the first unless it says. */
-static int file_meant(const struct frame *frame, const struct decision *decision) {
-    for (size_t f = 0; f < frame->plan->file_count; f++) {
-        if (!decision->file || (frame->plan->files[f].id && strcmp(frame->plan->files[f].id, decision->file) == 0)) {
-            return (int)f;
-        }
-    }
-    return NOWHERE;
-}
-
-/* keep-record in a file beside the first, or of one visit: that record stands. */
-static bool apply_keep_of_file(struct build *build, size_t i, size_t f) {
-    struct frame *frame = build->frame;
-    const struct decision *decision = &frame->decisions[i];
-    size_t record = decision->row - 1;
-    const char *there = record < frame->cells[f].records ? column_text(frame, frame->identifiers[f], record) : NULL;
-    int who = there ? frame_participant(frame, there) : NOWHERE;
-    size_t slot = there ? frame_record_slot(frame, f, record) : NO_RECORD;
-    if (is_new(build, i) && (who == NOWHERE || strcmp(there, decision->participant) != 0 || slot == NO_RECORD)) {
-        return refuse(build, i, "names a row that is not one of the participant's records at a planned visit of that file");
-    }
-    if (who != NOWHERE && slot != NO_RECORD) {
-        frame->joins[f].doubled -= frame->place[slot][who] == HELD_RECORD ? 1 : 0;
-        frame->place[slot][who] = record;
-    }
-    return true;
-}
-
-static bool build_participants(struct build *build) {
-    struct frame *frame = build->frame;
-    build_roster(build);
-    bool whole = !frame->plan->files[0].by_visit;
-    for (size_t pass = 0; pass < 2; pass++) { /* records of the first file first: places start from them */
-        if (pass == 1) {
-            build_places(build);
-        }
-        for (size_t i = 0; i < build->count; i++) {
-            if (!build->stands[i] || frame->decisions[i].kind != DECISION_KEEP_RECORD) {
-                continue;
-            }
-            int f = file_meant(frame, &frame->decisions[i]);
-            if (f == NOWHERE && is_new(build, i)) {
-                return refuse(build, i, "names a file that is not in the plan");
-            }
-            bool first = f == 0 && whole;
-            if (f != NOWHERE && first == (pass == 0) && !(first ? apply_keep(build, i) : apply_keep_of_file(build, i, (size_t)f))) {
-                return false;
-            }
-        }
-    }
-    return true;
-}
+/* ---- columns of values ---- */
 
 static void list_levels(struct column *column, const struct plan *plan, int covariate) {
     if (column->kind == VARIABLE_ARM) {
@@ -827,6 +800,8 @@ static void list_levels(struct column *column, const struct plan *plan, int cova
 
 static bool build_column(struct build *build, const char *name, const struct place *place, enum variable_kind kind,
     int covariate, int event, struct column *before, bool share, struct column **column) {
+    const char *site = build->frame->plan->site_column; /* the order of a date may hang on it */
+    share = share && !(kind == VARIABLE_DATE && site && before && column_touched(build, site));
     if (before && share && !column_touched(build, name)) {
         *column = column_retain(before);
         return true;
@@ -840,18 +815,233 @@ static bool build_column(struct build *build, const char *name, const struct pla
     return true;
 }
 
+/* Whether columns that nothing has touched can be those of the previous frame: their records are the same. */
+static bool places_shared(const struct build *build) {
+    const struct frame *frame = build->frame, *previous = build->previous;
+    const struct dates *dates = frame->plan->dates;
+    bool share = previous && !roster_touched(build);
+    for (size_t f = 0; share && f < frame->plan->file_count; f++) {
+        share = previous->identifiers[f] == frame->identifiers[f] && previous->visits[f] == frame->visits[f] &&
+                previous->windows[f] == frame->windows[f];
+        if (share && frame->windows[f]) { /* its visits hang on the date of randomisation, too, and on sites */
+            size_t randomised = (size_t)dates->moments[dates->randomised].variable;
+            const char *site = frame->plan->site_column;
+            share = previous->columns[randomised] == frame->columns[randomised] && !(site && column_touched(build, site));
+        }
+    }
+    return share;
+}
+
+static bool build_variable(struct build *build, size_t v, bool share) {
+    struct frame *frame = build->frame;
+    const struct variable *variable = &frame->plan->variables[v];
+    return frame->columns[v] || build_column(build, variable->column, &variable->place, variable->kind, variable->covariate,
+                                    variable->event, build->previous ? build->previous->columns[v] : NULL, share, &frame->columns[v]);
+}
+
+/* ---- visits found by date: of a participant's records in a visit's window the nearest to the target day stands ---- */
+
+struct nearest {
+    size_t record, same; /* same: how many records of that day */
+    double days;
+    bool tied; /* with one as far on the other side, or its record with another target */
+};
+
+struct windowing {
+    struct frame *frame;
+    size_t file;
+    struct site_orders orders;
+    struct nearest *nearest; /* [codes * participants] */
+};
+
+/* Days from a participant's randomisation to a record's date, NaN where either is not known. */
+static double days_of_record(const struct frame *frame, size_t f, size_t record, size_t who, struct site_orders *orders) {
+    const struct dates *dates = frame->plan->dates;
+    const char *text = column_text(frame, frame->windows[f], record);
+    double day = (double)NAN;
+    if (text) {
+        date_read(text, order_of_site(frame, orders, f, who), &day);
+    }
+    return day - frame->columns[dates->moments[dates->randomised].variable]->number[who];
+}
+
+static void place_in_window(struct windowing *windowing, size_t record, size_t who, double days) {
+    struct frame *frame = windowing->frame;
+    const struct plan *plan = frame->plan;
+    struct join *join = &frame->joins[windowing->file];
+    bool tie = false;
+    int visit = dates_visit_by_window(plan, windowing->file, days, &tie);
+    if (visit == NOWHERE) {
+        join->unplanned++;
+        return;
+    }
+    join->matched++;
+    size_t slot = plan->files[windowing->file].first_slot + (size_t)visit;
+    double target = plan->dates->moments[dates_moment_of_slot(plan, slot)].target, off = fabs(days - target);
+    struct nearest *nearest = &windowing->nearest[(size_t)visit * frame->participant_count + who];
+    double best = nearest->same ? fabs(nearest->days - target) : HUGE_VAL;
+    bool other_side = off >= best && off <= best && (days > nearest->days || days < nearest->days);
+    if (off < best || (other_side && days > nearest->days)) {
+        join->farther += nearest->same;
+        *nearest = (struct nearest){record, 1, days, tie || other_side};
+    } else if (off > best || other_side) {
+        join->farther++;
+        nearest->tied = nearest->tied || other_side;
+    } else {
+        nearest->same++;
+    }
+}
+
+static void place_by_window(struct windowing *windowing) {
+    struct frame *frame = windowing->frame;
+    size_t f = windowing->file, n = frame->participant_count, codes = frame->plan->files[f].codes.count;
+    struct join *join = &frame->joins[f];
+    for (size_t r = 0; r < frame->cells[f].records; r++) {
+        const char *id = column_text(frame, frame->identifiers[f], r);
+        int who = id && !is_blank(id) ? frame_participant(frame, id) : NOWHERE;
+        double days = who == NOWHERE ? (double)NAN : days_of_record(frame, f, r, (size_t)who, &windowing->orders);
+        join->blank += !id || is_blank(id);
+        join->unmatched += id && !is_blank(id) && who == NOWHERE;
+        join->undated += who != NOWHERE && isnan(days);
+        if (!isnan(days)) {
+            place_in_window(windowing, r, (size_t)who, days);
+        }
+    }
+    for (size_t i = 0; i < codes * n; i++) {
+        const struct nearest *nearest = &windowing->nearest[i];
+        if (nearest->same) {
+            frame->place[frame->plan->files[f].first_slot + i / n][i % n] = nearest->same > 1 ? HELD_RECORD : nearest->record;
+            join->doubled += nearest->same > 1;
+            join->ties += nearest->tied;
+        }
+    }
+}
+
+/* What days are counted from: the date of randomisation and, where its decisions speak of sites, the site. */
+static bool build_early(struct build *build) {
+    const struct plan *plan = build->frame->plan;
+    bool share = build->previous && !roster_touched(build);
+    for (size_t f = 0; share && f < plan->file_count; f++) {
+        share = build->previous->identifiers[f] == build->frame->identifiers[f] && build->previous->visits[f] == build->frame->visits[f];
+    }
+    int site = plan->site_column ? plan_variable(plan, plan->site_column) : NOWHERE;
+    int randomised = plan->dates->moments[plan->dates->randomised].variable;
+    return (site == NOWHERE || plan->files[plan->variables[site].place.file].window || build_variable(build, (size_t)site, share)) &&
+           build_variable(build, (size_t)randomised, share);
+}
+
+static bool build_windows(struct build *build) {
+    struct frame *frame = build->frame;
+    for (size_t f = 0; f < frame->plan->file_count; f++) {
+        const struct plan_file *file = &frame->plan->files[f];
+        struct place place = {f, file->first_slot, file->window};
+        if (!file->window) {
+            continue;
+        }
+        if (!build_texts(build, file->window_name, &place, VARIABLE_DATE, build->previous ? build->previous->windows[f] : NULL,
+                &frame->windows[f]) || !build_early(build)) {
+            return false;
+        }
+        struct windowing windowing = {.frame = frame, .file = f, .orders = {.column = file->window_name}};
+        windowing.nearest = memory_new(file->codes.count * frame->participant_count, sizeof *windowing.nearest);
+        map_init(&windowing.orders.map);
+        place_by_window(&windowing);
+        map_release(&windowing.orders.map);
+        memory_free(windowing.nearest);
+    }
+    return true;
+}
+
+/* The file a keep-record is about: the first unless it says. */
+static int file_meant(const struct frame *frame, const struct decision *decision) {
+    for (size_t f = 0; f < frame->plan->file_count; f++) {
+        if (!decision->file || (frame->plan->files[f].id && strcmp(frame->plan->files[f].id, decision->file) == 0)) {
+            return (int)f;
+        }
+    }
+    return NOWHERE;
+}
+
+size_t frame_slot_of_record(const struct frame *frame, size_t f, size_t record) {
+    const struct plan_file *file = &frame->plan->files[f];
+    if (file->window) {
+        const char *id = column_text(frame, frame->identifiers[f], record);
+        int who = id ? frame_participant(frame, id) : NOWHERE;
+        struct site_orders orders = {.column = file->window_name};
+        map_init(&orders.map);
+        int visit = who == NOWHERE ? NOWHERE :
+            dates_visit_by_window(frame->plan, f, days_of_record(frame, f, record, (size_t)who, &orders), NULL);
+        map_release(&orders.map);
+        return visit == NOWHERE ? NO_RECORD : file->first_slot + (size_t)visit;
+    }
+    const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
+    for (size_t c = 0; code && c < file->codes.count; c++) {
+        if (strcmp(file->codes.item[c], code) == 0) {
+            return file->first_slot + c;
+        }
+    }
+    return file->by_visit ? NO_RECORD : file->first_slot;
+}
+
+/* keep-record in a file beside the first, or of one visit: that record stands. */
+static bool apply_keep_of_file(struct build *build, size_t i, size_t f) {
+    struct frame *frame = build->frame;
+    const struct decision *decision = &frame->decisions[i];
+    size_t record = decision->row - 1;
+    const char *there = record < frame->cells[f].records ? column_text(frame, frame->identifiers[f], record) : NULL;
+    int who = there ? frame_participant(frame, there) : NOWHERE;
+    size_t slot = there ? frame_slot_of_record(frame, f, record) : NO_RECORD;
+    if (is_new(build, i) && (who == NOWHERE || strcmp(there, decision->participant) != 0 || slot == NO_RECORD)) {
+        return refuse(build, i, "names a row that is not one of the participant's records at a planned visit of that file");
+    }
+    if (who != NOWHERE && slot != NO_RECORD) {
+        frame->joins[f].doubled -= frame->place[slot][who] == HELD_RECORD ? 1 : 0;
+        frame->place[slot][who] = record;
+    }
+    return true;
+}
+
+/* The file a keep-record is about comes first, has a code for each visit, or finds its visits by date: places are settled so. */
+enum keeping { KEEPING_FIRST, KEEPING_CODED, KEEPING_WINDOWED };
+
+static bool keep_records(struct build *build, enum keeping now) {
+    const struct frame *frame = build->frame;
+    for (size_t i = 0; i < build->count; i++) {
+        if (!build->stands[i] || frame->decisions[i].kind != DECISION_KEEP_RECORD) {
+            continue;
+        }
+        int f = file_meant(frame, &frame->decisions[i]);
+        if (f == NOWHERE) {
+            if (is_new(build, i)) {
+                return refuse(build, i, "names a file that is not in the plan");
+            }
+            continue;
+        }
+        enum keeping keeping = f == 0 && !frame->plan->files[0].by_visit ? KEEPING_FIRST :
+            frame->plan->files[f].window                                 ? KEEPING_WINDOWED :
+                                                                           KEEPING_CODED;
+        if (keeping == now && !(now == KEEPING_FIRST ? apply_keep(build, i) : apply_keep_of_file(build, i, (size_t)f))) {
+            return false;
+        }
+    }
+    return true;
+}
+
+static bool build_participants(struct build *build) {
+    build_roster(build);
+    if (!keep_records(build, KEEPING_FIRST)) {
+        return false;
+    }
+    build_places(build); /* they start from the first file's records */
+    return keep_records(build, KEEPING_CODED) && build_windows(build) && keep_records(build, KEEPING_WINDOWED);
+}
+
 static bool build_columns(struct build *build) {
     struct frame *frame = build->frame;
     const struct plan *plan = frame->plan;
-    bool share = build->previous && !roster_touched(build);
-    for (size_t f = 0; share && f < plan->file_count; f++) {
-        share = build->previous->identifiers[f] == frame->identifiers[f] && build->previous->visits[f] == frame->visits[f];
-    }
-    frame->columns = ARENA_NEW(&frame->arena, plan->variable_count, struct column *);
+    bool share = places_shared(build);
     for (size_t v = 0; v < plan->variable_count; v++) {
-        const struct variable *variable = &plan->variables[v];
-        if (!build_column(build, variable->column, &variable->place, variable->kind, variable->covariate, variable->event,
-                build->previous ? build->previous->columns[v] : NULL, share, &frame->columns[v])) {
+        if (!build_variable(build, v, share)) {
             return false;
         }
     }
@@ -953,9 +1143,23 @@ static bool reverse_fits(struct build *build, size_t i) {
     return true;
 }
 
-/* Whether it is the whole name of a column, not only FILE.COLUMN of several visits. */
-static bool frame_names(const struct frame *frame, const char *name) {
-    return plan_variable(frame->plan, name) != NOWHERE || (frame->plan->arm_column && strcmp(frame->plan->arm_column, name) == 0);
+/* date-order: about a date, and of a site that somebody has. */
+static bool date_order_fits(struct build *build, size_t i) {
+    const struct frame *frame = build->frame, *previous = build->previous;
+    const struct decision *decision = &frame->decisions[i];
+    bool date = false, site = !decision->site;
+    for (size_t v = 0; v < frame->plan->variable_count && !date; v++) {
+        date = frame->plan->variables[v].kind == VARIABLE_DATE && plan_covers(decision->column, frame->plan->variables[v].column);
+    }
+    for (size_t f = 0; f < frame->plan->file_count && !date; f++) {
+        date = frame->plan->files[f].window && strcmp(frame->plan->files[f].window_name, decision->column) == 0;
+    }
+    for (size_t p = 0; p < previous->participant_count && !site; p++) {
+        const char *here = frame_site(previous, p);
+        site = here && strcmp(here, decision->site) == 0;
+    }
+    return !date ? refuse(build, i, arena_format(&build->frame->arena, "is about the column \"%.60s\", which holds no dates", decision->column)) :
+                   site || refuse(build, i, arena_format(&build->frame->arena, "names the site \"%.60s\", which no participant has", decision->site));
 }
 
 static bool column_fits(struct build *build, size_t i) {
@@ -966,6 +1170,15 @@ static bool column_fits(struct build *build, size_t i) {
                  (plan->arm_column && plan_covers(decision->column, plan->arm_column));
     for (size_t v = 0; v < plan->variable_count && !known; v++) {
         known = plan_covers(decision->column, plan->variables[v].column);
+    }
+    for (size_t f = 0; f < plan->file_count; f++) {
+        const char *window = plan->files[f].window_name;
+        bool looks = decision->kind == DECISION_CONFIRM || decision->kind == DECISION_QUERY;
+        if (window && !looks && strlen(decision->column) > strlen(window) && plan_covers(window, decision->column)) {
+            return refuse(build, i, arena_format(&build->frame->arena,
+                "is about one visit of a date by which visits are found; name %s and the record's row", window));
+        }
+        known = known || (window && strcmp(decision->column, window) == 0);
     }
     if (!known) {
         return refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
@@ -978,13 +1191,8 @@ static bool column_fits(struct build *build, size_t i) {
     if (decision->kind == DECISION_NUMBER_FORMAT && !number) {
         return refuse(build, i, arena_format(&build->frame->arena, "is about the column \"%.60s\", which holds no numbers", decision->column));
     }
-    bool one_cell = decision->participant && decision->kind >= DECISION_CORRECT && decision->kind <= DECISION_CONFIRM && !decision->row;
-    if (one_cell && plan_visit_file(plan, decision->column) != NOWHERE) {
-        return refuse(build, i, "is about one record's visit code; say which record with \"row\"");
-    }
-    if (one_cell && plan_identifier_file(plan, decision->column) == NOWHERE && !frame_names(frame, decision->column)) {
-        return refuse(build, i, arena_format(&build->frame->arena, "names %.60s, of which a participant has one value per visit; add "
-            "@ and the visit's code, or say which record with \"row\"", decision->column));
+    if (decision->kind == DECISION_DATE_ORDER && !date_order_fits(build, i)) {
+        return false;
     }
     return decision->kind != DECISION_MISSING_CODE || plan_identifier_file(plan, decision->column) == NOWHERE ||
            refuse(build, i, "is about the identifier, which cannot be missing; correct it, or set it missing to hold the record aside");
@@ -1074,6 +1282,12 @@ static void hash_state(struct frame *frame) {
         hash_field(&hash, frame->plan->events[i].id);
         hash_field(&hash, frame->columns[frame->plan->events[i].variable]->hash);
     }
+    for (size_t i = 0; frame->plan->dates && i < frame->plan->dates->moment_count; i++) {
+        const struct moment *moment = &frame->plan->dates->moments[i];
+        hash_field(&hash, moment_name(moment->kind));
+        hash_field(&hash, moment->label);
+        hash_field(&hash, frame->columns[moment->variable]->hash);
+    }
     hash_field(&hash, frame->arm ? frame->arm->hash : NULL);
     for (size_t i = 0; i < frame->plan->outcome_count; i++) {
         hash_field(&hash, frame->plan->outcomes[i].id);
@@ -1128,6 +1342,7 @@ void frame_release(struct frame *frame) {
     for (size_t f = 0; frame->identifiers && f < frame->plan->file_count; f++) {
         column_release(frame->identifiers[f]);
         column_release(frame->visits[f]);
+        column_release(frame->windows[f]);
     }
     arena_release(&frame->arena);
     memory_free(frame);
@@ -1149,5 +1364,6 @@ const struct column *frame_column(const struct frame *frame, const char *name) {
         frame->plan->arm_column && strcmp(frame->plan->arm_column, name) == 0        ? frame->arm :
         plan_identifier_file(frame->plan, name) != NOWHERE                           ? frame->identifiers[plan_identifier_file(frame->plan, name)] :
         plan_visit_file(frame->plan, name) != NOWHERE                                ? frame->visits[plan_visit_file(frame->plan, name)] :
+        plan_window_file(frame->plan, name) != NOWHERE                               ? frame->windows[plan_window_file(frame->plan, name)] :
                                                                                        NULL;
 }

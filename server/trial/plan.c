@@ -2,6 +2,7 @@
 #include "trial/plan.h"
 #include "base/text.h"
 #include "server/trial/plan-parts.h"
+#include "trial/dates.h"
 #include <math.h>
 #include <stdio.h>
 #include <string.h>
@@ -17,7 +18,7 @@ static bool read_file(struct reader *reader, const cJSON *item, const char *path
         !read_text(reader, item, path, "sheet", false, &file->sheet) ||
         !read_choice(reader, item, path, "layout", "participant", "visit", &file->by_visit) ||
         !read_text(reader, item, path, "participant", true, &file->participant) ||
-        !read_text(reader, item, path, "visit", file->by_visit, &file->visit) ||
+        !read_text(reader, item, path, "visit", false, &file->visit) ||
         !read_texts(reader, item, path, "codes", &file->codes)) {
         return false;
     }
@@ -33,20 +34,8 @@ static bool read_file(struct reader *reader, const cJSON *item, const char *path
         return wrong(reader, join(reader, path, "codes"), file->by_visit ?
             "must list the planned visit codes, in order of time" : "belongs to the layout \"visit\"");
     }
-    for (size_t c = 0; c < file->codes.count; c++) {
-        const char *code = file->codes.item[c];
-        if (code[strspn(code, " \t\r\n\f\v")] == '\0' || strchr(code, '@')) {
-            return wrong(reader, join(reader, path, "codes"), "must hold texts that are not blank and without @");
-        }
-        for (size_t before = 0; before < c; before++) {
-            if (strcmp(file->codes.item[before], code) == 0) {
-                return wrong(reader, join(reader, path, "codes"),
-                    arena_format(&plan->arena, "holds \"%.60s\" twice; keep one", code));
-            }
-        }
-    }
     file->identifier_name = arena_format(&plan->arena, "%s.%s", file->id, file->participant);
-    file->visit_name = file->by_visit ? arena_format(&plan->arena, "%s.%s", file->id, file->visit) : NULL;
+    file->visit_name = file->by_visit && file->visit ? arena_format(&plan->arena, "%s.%s", file->id, file->visit) : NULL;
     plan->file_count++;
     return true;
 }
@@ -540,7 +529,7 @@ static bool settle_variables(struct reader *reader) {
         .derived = NOWHERE, .moment = NOWHERE};
     static const struct texts no_codes = {0};
     struct plan *plan = reader->plan;
-    size_t room = plan->covariate_count + plan->event_count;
+    size_t room = plan->covariate_count + plan->event_count + (plan->dates ? plan->dates->moment_count : 0);
     for (size_t i = 0; i < plan->outcome_count; i++) {
         room += plan->outcomes[i].visit_count;
     }
@@ -594,19 +583,19 @@ static bool settle_variables(struct reader *reader) {
             return false;
         }
     }
-    return true;
-}
-
-/* A column called NAME@SOMETHING by its file would share the decisions on one called NAME. */
-static bool names_differ(struct reader *reader) {
-    const struct plan *plan = reader->plan;
-    for (size_t i = 0; i < plan->variable_count; i++) {
-        const char *name = plan->variables[i].column;
-        for (size_t j = 0; strchr(name, '@') && j < plan->variable_count; j++) {
-            if (strcmp(plan->variables[j].column, name) != 0 && plan_covers(plan->variables[j].column, name)) {
-                return fault_set(reader->fault, FAULT_INPUT, "%s: the columns \"%.60s\" and \"%.60s\" cannot be told apart in decisions, where @ "
-                    "stands before a visit; rename one in the export", reader->name, plan->variables[j].column, name);
-            }
+    for (size_t i = 0; plan->dates && i < plan->dates->moment_count; i++) {
+        struct moment *moment = &plan->dates->moments[i];
+        struct variable variable = none;
+        variable.column = moment->column;
+        variable.place = moment->place;
+        variable.label = moment->kind == MOMENT_VISIT ? arena_format(&plan->arena, "Date of %s", moment->label) :
+            moment->kind == MOMENT_RANDOMISED ? "Date of randomisation" : arena_format(&plan->arena, "Date: %s", moment->label);
+        variable.unit = "";
+        variable.kind = VARIABLE_DATE;
+        variable.moment = (int)i;
+        variable.missing_codes = &plan->missing_codes;
+        if (!place_variable(reader, &variable, &moment->variable)) {
+            return false;
         }
     }
     return true;
@@ -658,7 +647,7 @@ static bool settle_settings(struct reader *reader, const cJSON *root) {
 }
 
 static bool refuse_later_keys(struct reader *reader, const cJSON *root) {
-    static const char *const later[] = {"dates", "derived"};
+    static const char *const later[] = {"derived"};
     for (size_t i = 0; i < sizeof later / sizeof *later; i++) {
         if (member(root, later[i])) {
             return fault_set(reader->fault, FAULT_INPUT,
@@ -673,7 +662,7 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (!refuse_later_keys(reader, root) ||
         !keys_known(reader, root, "",
             "title participant arm missing_codes outcomes covariates events adjust_for missing_baseline subgroups confidence "
-            "blinding seed site stratified_by standard_error files screening") ||
+            "blinding seed site stratified_by standard_error files screening dates") ||
         !read_text(reader, root, "", "title", true, &plan->title) ||
         !read_text(reader, root, "", "participant", true, &plan->participant) || !settle_files(reader, root) ||
         !read_arms(reader, root) ||
@@ -689,8 +678,8 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (plan->arm_column && strcmp(plan->arm_column, plan->participant) == 0) {
         return wrong(reader, "arm.column", "is the participant's column; a column has one meaning");
     }
-    return settle_variables(reader) && names_differ(reader) && settle_settings(reader, root) && settle_standard_error(reader, root) &&
-           read_screening(reader, root);
+    return read_dates(reader, root) && settle_variables(reader) && settle_settings(reader, root) &&
+           settle_standard_error(reader, root) && read_screening(reader, root);
 }
 
 /* Where in the text JSON stopped being JSON: 1-based line and column, in characters. */
@@ -792,6 +781,15 @@ const char *plan_column_name(struct arena *arena, const struct plan *plan, size_
 int plan_visit_file(const struct plan *plan, const char *column) {
     for (size_t f = 0; f < plan->file_count; f++) {
         if (plan->files[f].visit_name && strcmp(plan->files[f].visit_name, column) == 0) {
+            return (int)f;
+        }
+    }
+    return NOWHERE;
+}
+
+int plan_window_file(const struct plan *plan, const char *column) {
+    for (size_t f = 0; f < plan->file_count; f++) {
+        if (plan->files[f].window_name && strcmp(plan->files[f].window_name, column) == 0) {
             return (int)f;
         }
     }

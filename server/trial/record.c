@@ -2,6 +2,7 @@
 #include "trial/record.h"
 #include "base/text.h"
 #include "draw/json.h"
+#include "trial/dates.h"
 #include "trial/plan.h"
 #include <cjson/cJSON.h>
 #include <math.h>
@@ -14,6 +15,8 @@ const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
         "meaning planned", true, true, true},
     [DECISION_NUMBER_FORMAT] = {"number-format", "Numbers of a column are written with this decimal sign", "column decimal",
         "", true, true, true},
+    [DECISION_DATE_ORDER] = {"date-order", "Dates of a column, of one site or all, are written in this order", "column order",
+        "site", true, true, true},
     [DECISION_CORRECT] = {"correct", "One value becomes another", "column participant from to", "", true, true, true},
     [DECISION_SET_MISSING] = {"set-missing", "One value is set missing", "column participant from", "", true, true, true},
     [DECISION_CONFIRM] = {"confirm", "A doubtful value is right as recorded", "column value", "participant", true, true,
@@ -60,6 +63,8 @@ static const struct field {
     {"value", FIELD_TEXT, false, offsetof(struct decision, value)},
     {"meaning", FIELD_TEXT, false, offsetof(struct decision, meaning)},
     {"decimal", FIELD_TEXT, false, offsetof(struct decision, decimal)},
+    {"order", FIELD_TEXT, false, offsetof(struct decision, order)},
+    {"site", FIELD_TEXT, false, offsetof(struct decision, site)},
     {"outcome", FIELD_TEXT, false, offsetof(struct decision, outcome)},
     {"scale", FIELD_TEXT, false, offsetof(struct decision, scale)},
     {"set", FIELD_TEXT, false, offsetof(struct decision, set)},
@@ -227,7 +232,11 @@ static bool is_empty(const char *text) {
 static const char *value_wrong(const struct decision *decision) {
     enum scale scale;
     enum blinding blinding;
+    enum date_order order;
     switch (decision->kind) {
+    case DECISION_DATE_ORDER:
+        return date_order_read(decision->order, &order) ? NULL :
+            "has an \"order\" that is none of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, the same with YY, serial-1900 and serial-1904";
     case DECISION_NUMBER_FORMAT:
         return strcmp(decision->decimal, ".") == 0 || strcmp(decision->decimal, ",") == 0 ? NULL :
             "has a \"decimal\" that is neither \".\" nor \",\"";

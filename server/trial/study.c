@@ -57,9 +57,11 @@ static bool column_is_there(const struct cells *cells, const struct place *place
 
 static bool file_fits(const struct plan *plan, const struct cells *cells, size_t f, const char *const *names, const char *plan_name,
     struct fault *fault) {
-    struct place identifier = {f, 0, plan->files[f].participant}, visit = {f, 0, plan->files[f].visit};
+    struct place identifier = {f, 0, plan->files[f].participant}, visit = {f, 0, plan->files[f].visit},
+                 window = {f, 0, plan->files[f].window};
     return column_is_there(cells, &identifier, "the participant's identifier", names, plan_name, fault) &&
-           (!plan->files[f].by_visit || column_is_there(cells, &visit, "the visit's code", names, plan_name, fault)) &&
+           (!plan->files[f].visit || column_is_there(cells, &visit, "the visit's code", names, plan_name, fault)) &&
+           (!plan->files[f].window || column_is_there(cells, &window, "the date that says the visit", names, plan_name, fault)) &&
            (cells[f].records > 0 || fault_at(fault, FAULT_INPUT, 2, 0,
                "%s has a header and no record below it; load a file with at least one participant", names[f]));
 }
@@ -91,7 +93,7 @@ static bool plan_fits(const struct plan *plan, const struct cells *cells, const 
 }
 
 /* Which of the files received is each of the plan's: by name where the plan gives one, else in the order given. */
-static bool match_files(const struct plan *plan, struct arena *arena, const struct study_file *files, size_t count, const struct study_file **matched,
+static bool match_files(const struct plan *plan, const struct study_file *files, size_t count, const struct study_file **matched,
     const char *plan_name, struct fault *fault) {
     if (count != plan->file_count) {
         return fault_set(fault, FAULT_INPUT, plan->files[0].id ?
@@ -99,27 +101,31 @@ static bool match_files(const struct plan *plan, struct arena *arena, const stru
             "%s: the plan takes %zu file, and %zu came; list them under \"files\" in the plan, or load one", plan_name,
             plan->file_count, count);
     }
-    bool *taken = ARENA_NEW(arena, count, bool);
-    for (size_t f = 0; f < count; f++) { /* named ones first, so that the others take what is left */
+    for (size_t f = 0; f < count; f++) {
         const char *wanted = plan->files[f].name;
-        for (size_t i = 0; wanted && i < count && !matched[f]; i++) {
-            bool fits = !taken[i] && strcmp(file_part(files[i].name), wanted) == 0;
-            matched[f] = fits ? &files[i] : NULL;
-            taken[i] = taken[i] || fits;
+        matched[f] = wanted ? NULL : &files[f];
+        for (size_t i = 0; wanted && i < count; i++) {
+            matched[f] = strcmp(file_part(files[i].name), wanted) == 0 ? &files[i] : matched[f];
         }
-        if (wanted && !matched[f]) {
+        if (!matched[f]) {
             return fault_set(fault, FAULT_INPUT, "%s: no file named \"%.80s\" came, which the plan's file \"%s\" asks for; load it too, or mend the name",
                 plan_name, wanted, plan->files[f].id);
         }
-    }
-    size_t next = 0;
-    for (size_t f = 0; f < count; f++) {
-        while (!matched[f] && taken[next]) {
-            next++;
+        for (size_t g = 0; g < f; g++) {
+            if (matched[g] == matched[f]) {
+                return fault_set(fault, FAULT_INPUT, "%s: the files \"%s\" and \"%s\" of the plan are both %s; name each in the plan", plan_name,
+                    plan->files[g].id, plan->files[f].id, file_part(matched[f]->name));
+            }
         }
-        matched[f] = matched[f] ? matched[f] : &files[next++];
     }
     return true;
+}
+
+/* The day from a moment's ISO text: dates after it are in the future. */
+static void note_received(struct plan *plan, const char *at) {
+    if (plan->dates) {
+        date_read(at, DATE_YMD, &plan->dates->received);
+    }
 }
 
 /* ---- making a study ---- */
@@ -194,22 +200,6 @@ static void plan_code(struct planning *planning, const char *column, const char 
     text_release(&body);
 }
 
-/* Whether every column of the same place at another visit has the same codes: they are then entered once for all. */
-static bool codes_shared(const struct plan *plan, const struct variable *variable) {
-    const struct texts *codes = variable->missing_codes;
-    for (size_t v = 0; v < plan->variable_count; v++) {
-        const struct variable *other = &plan->variables[v];
-        bool alike = other->missing_codes->count == codes->count;
-        for (size_t c = 0; alike && c < codes->count; c++) {
-            alike = strcmp(other->missing_codes->item[c], codes->item[c]) == 0;
-        }
-        if (!alike && other->place.file == variable->place.file && strcmp(other->place.column, variable->place.column) == 0) {
-            return false;
-        }
-    }
-    return true;
-}
-
 /* One for each column and code; a column of a file with one row per visit once for all its visits. */
 static size_t planned_decisions(const struct plan *plan, const struct cells *cells, struct arena *arena, struct decision **decisions) {
     struct planning planning = {plan, arena, NULL, 0, 0};
@@ -218,8 +208,7 @@ static size_t planned_decisions(const struct plan *plan, const struct cells *cel
         const struct cells *file = &cells[variable->place.file];
         const char *column = plan_column_name(arena, plan, variable->place.file, variable->place.column);
         for (size_t c = 0; c < variable->missing_codes->count; c++) {
-            plan_code(&planning, codes_shared(plan, variable) ? column : variable->column, variable->missing_codes->item[c],
-                "The plan lists it as a code for missing.");
+            plan_code(&planning, column, variable->missing_codes->item[c], "The plan lists it as a code for missing.");
         }
         const struct cell_about *about = file->about ? &file->about[cells_column(file, variable->place.column)] : NULL;
         for (size_t c = 0; about && c < about->missing_count; c++) {
@@ -246,6 +235,13 @@ static void tell_file(struct text *account, const char *name, const struct cells
 
 static void tell_join(struct text *account, const struct frame *frame, size_t f) {
     const struct join *join = &frame->joins[f];
+    if (frame->plan->files[f].window) {
+        text_format(account, "%s: visits found by date: %zu records in a window, %zu of them farther from the target day than another, %zu ties "
+            "(the later was taken), %zu outside every window, %zu without a date to count from; %zu of participants the first file does not "
+            "have, %zu without an identifier; %zu visits with several records of one day, held aside.\n", frame->plan->files[f].id,
+            join->matched, join->farther, join->ties, join->unplanned, join->undated, join->unmatched, join->blank, join->doubled);
+        return;
+    }
     text_format(account, "%s: %zu records joined, %zu of participants the first file does not have, %zu of visits never planned, %zu without an "
         "identifier; %zu participants and visits with several records, held aside.\n", frame->plan->files[f].id, join->matched,
         join->unmatched, join->unplanned, join->blank, join->doubled);
@@ -302,6 +298,7 @@ static bool write_birth(struct birth *birth, const char *path, const char *plan_
     if (!draw_letters(letters, birth->plan.arm_count, fault)) {
         return false;
     }
+    note_received(&birth->plan, at);
     struct decision *planned;
     size_t count = planned_decisions(&birth->plan, birth->cells, &birth->arena, &planned), files = birth->plan.file_count;
     birth->frame = frame_build(&birth->plan, birth->cells, "", letters, planned, count, NULL, false, fault);
@@ -348,7 +345,7 @@ bool study_create_from(const char *path, const struct study_file *files, size_t 
         birth.files = ARENA_NEW(&birth.arena, birth.plan.file_count, const struct study_file *);
         birth.names = ARENA_NEW(&birth.arena, birth.plan.file_count, const char *);
         birth.cells = ARENA_NEW(&birth.arena, birth.plan.file_count, struct cells);
-        done = match_files(&birth.plan, &birth.arena, files, count, birth.files, plan_name, fault) && read_files(&birth, fault) &&
+        done = match_files(&birth.plan, files, count, birth.files, plan_name, fault) && read_files(&birth, fault) &&
                plan_fits(&birth.plan, birth.cells, birth.names, plan_name, fault) &&
                write_birth(&birth, path, plan_text, by, account, fault);
     }
@@ -494,6 +491,7 @@ static bool take_files(struct study *study, struct fault *fault) {
     }
     if (done) {
         take_facts(study, files, count);
+        note_received(&study->plan, study->facts.received_at);
     }
     arena_release(&scratch);
     return done && plan_fits(&study->plan, study->cells, names, "the study's plan", fault);

@@ -201,7 +201,7 @@ static const struct {
     const char *find, *put, *sentence;
 } broken[] = {
     {"'title':", "'titel':", "plan.json: the key \"titel\" is not one a plan has here; known are: title participant arm missing_codes "
-        "outcomes covariates events adjust_for missing_baseline subgroups confidence blinding seed site stratified_by standard_error files screening"},
+        "outcomes covariates events adjust_for missing_baseline subgroups confidence blinding seed site stratified_by standard_error files screening dates"},
     {"'title': 'Harbour Trial',", "'title': 'A', 'title': 'B',", "plan.json: the key \"title\" stands there twice; keep one"},
     {"'title': 'Harbour Trial',", "", "plan.json: title is missing; a plan needs it"},
     {"'Harbour Trial'", "''", "plan.json: title must be a text in quotes that is not empty"},
@@ -277,7 +277,6 @@ static const struct {
     {"9007199254740992", "1e300", "plan.json: seed must be a whole number from 0"},
     {"'site': {'column': 'centre'}", "'site': 'centre'", "plan.json: site must be an object in braces"},
     {"'outcomes': [", "'files': [], 'outcomes': [", "plan.json: files is empty; name at least one file, or leave the key out"},
-    {"'outcomes': [", "'dates': {}, 'outcomes': [", "plan.json: this version of Evenhand does not take \"dates\" yet; leave the key out"},
     {"'outcomes': [", "'derived': [], 'outcomes': [", "plan.json: this version of Evenhand does not take \"derived\" yet; leave the key out"},
     {"'kind': 'rescue'", "'strategy': 'ignore'",
         "plan.json: events[0].strategy must be treatment-policy, hypothetical, composite, while-on-treatment or principal-stratum"},

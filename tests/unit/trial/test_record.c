@@ -35,6 +35,7 @@ static const struct {
     {"missing-code", "'column': 'bmi', 'value': '999', 'reason': 'r'", "{'value':'999'}"},
     {"missing-code", "'reason': 'r', 'meaning': 'not done', 'value': '999', 'column': 'bmi'", "{'value':'999','meaning':'not done'}"},
     {"number-format", "'column': 'bmi', 'decimal': ',', 'reason': 'r'", "{'decimal':','}"},
+    {"date-order", "'column': 'seen_on', 'order': 'M/D/Y', 'site': '07', 'reason': 'r'", "{'order':'M/D/Y','site':'07'}"},
     {"correct", "'column': 'bmi', 'participant': 'P1', 'from': '460', 'to': '46', 'reason': 'r'", "{}"},
     {"correct", "'column': 'bmi', 'participant': 'P1', 'row': 3, 'from': null, 'to': '', 'reason': 'r'", "{'row':3}"},
     {"set-missing", "'column': 'bmi', 'participant': 'P1', 'from': '', 'reason': 'r'", "{}"},
@@ -116,7 +117,8 @@ static void test_foreign_bodies(void **state) {
         const char *body;
     } cases[] = {
         {DECISION_MISSING_CODE, "{}"}, {DECISION_MISSING_CODE, "not JSON"}, {DECISION_MISSING_CODE, "[]"},
-        {DECISION_MISSING_CODE, "{'value': ' '}"}, {DECISION_NUMBER_FORMAT, "{'decimal': ';'}"}, {DECISION_SCALE, "{'outcome': 'sbp'}"},
+        {DECISION_MISSING_CODE, "{'value': ' '}"}, {DECISION_NUMBER_FORMAT, "{'decimal': ';'}"},
+        {DECISION_DATE_ORDER, "{'order': 'D/Y/M'}"}, {DECISION_SCALE, "{'outcome': 'sbp'}"},
         {DECISION_SCALE, "{'outcome': 'sbp', 'scale': 'ln'}"}, {DECISION_EXCLUDE, "{'set': 'none'}"}, {DECISION_REVERSE, "{}"},
         {DECISION_REVERSE, "{'number': 0}"}, {DECISION_REVERSE, "{'number': 9}"}, {DECISION_REVERSE, "{'number': 1e30}"},
         {DECISION_REVERSE, "{'number': 'x'}"}, {DECISION_KEEP_RECORD, "{'row': -1}"}, {DECISION_RESPONSE, "{'text': 'x'}"},
