@@ -52,7 +52,8 @@ struct column {
 struct participant {
     const char *id;
     size_t record;       /* 0-based record of the first file in force, or NO_RECORD while held aside */
-    size_t record_count; /* how many records bear this identifier */
+    size_t record_count; /* how many records bear this identifier; with one row per visit 1 */
+    size_t first, total; /* their records of the first file: frame.order[first ...], one row per visit: of all visits */
     bool excluded_full, excluded_per_protocol;
 };
 
@@ -86,6 +87,9 @@ struct frame {
     struct column **identifiers; /* [files] identifiers[0] == identifier */
     struct column **visits;      /* [files] visit codes; NULL where a file has one row per participant */
     struct column **windows;     /* [files] texts of plan_file.window, NULL where there is none */
+    size_t *order;               /* 0-based records of the first file by participant, then as in the file */
+    int32_t **owner;             /* [files][records] participant of each record, NOWHERE where none; NULL for a first file with
+                                    one row per participant */
     size_t **place;              /* [slots][participants] 0-based record of the slot's file, NO_RECORD or HELD_RECORD */
     struct join *joins;          /* [files] */
     size_t roster;               /* records that stand for participants in the first file: all of them, or with one row per
@@ -134,4 +138,6 @@ enum date_order frame_date_order(const struct frame *frame, const char *column, 
 const struct column *frame_column(const struct frame *frame, const char *name);
 /* The 0-based records of the first file that bear a participant's identifier, in file order: at most `room` are written; returns how many. */
 size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room);
+/* The same of the file, and where it has one row per visit the visit, that a slot of the plan is. */
+size_t frame_slot_records(const struct frame *frame, size_t slot, size_t participant, size_t *records, size_t room);
 #endif

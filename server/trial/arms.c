@@ -75,11 +75,13 @@ bool arms_hide_column(const struct frame *frame, const char *name) {
     if (frame->blinding == BLINDING_UNBLINDED) {
         return false;
     }
-    const struct column *column = frame_column(frame, name);
-    bool hide = column && (column == frame->arm || arms_given_away(frame, column));
-    for (size_t v = 0; column && column->kind == VARIABLE_EVENT && v < frame->plan->variable_count && !hide; v++) {
-        /* several events may rest on one column, and any of them may tell */
-        hide = strcmp(frame->plan->variables[v].column, name) == 0 && arms_given_away(frame, frame->columns[v]);
+    if (frame->arm && plan_covers(name, frame->plan->arm_column)) { /* FILE.COLUMN too, where the arm stands at one visit */
+        return true;
     }
-    return hide;
+    for (size_t v = 0; v < frame->plan->variable_count; v++) { /* several may rest on one column, and any of them may tell */
+        if (plan_covers(name, frame->plan->variables[v].column) && arms_given_away(frame, frame->columns[v])) {
+            return true;
+        }
+    }
+    return false;
 }

@@ -263,20 +263,21 @@ static void check_screening(struct finding *finding) {
 
 /* ---- records ---- */
 
-static const char *differing_columns(struct finding *finding, const size_t *records, size_t count) {
+static const char *differing_columns(struct finding *finding, size_t f, const size_t *records, size_t count) {
     const struct frame *frame = finding->frame;
+    const struct cells *cells = &frame->cells[f];
     char words[160] = "";
     size_t used = 0, more = 0;
-    for (size_t c = 0; c < frame->cells->columns; c++) {
+    for (size_t c = 0; c < cells->columns; c++) {
         bool differs = false;
         for (size_t i = 1; i < count && !differs; i++) {
-            differs = strcmp(cells_at(frame->cells, records[0], c), cells_at(frame->cells, records[i], c)) != 0;
+            differs = strcmp(cells_at(cells, records[0], c), cells_at(cells, records[i], c)) != 0;
         }
-        if (!differs || arms_hide_column(frame, plan_column_name(finding->arena, frame->plan, 0, frame->cells->names[c]))) {
+        if (!differs || arms_hide_column(frame, plan_column_name(finding->arena, frame->plan, f, cells->names[c]))) {
             continue;
         }
         if (used + 48 < sizeof words) {
-            used += (size_t)snprintf(words + used, sizeof words - used, "%s%.40s", used ? ", " : "", frame->cells->names[c]);
+            used += (size_t)snprintf(words + used, sizeof words - used, "%s%.40s", used ? ", " : "", cells->names[c]);
         } else {
             more++;
         }
@@ -285,45 +286,57 @@ static const char *differing_columns(struct finding *finding, const size_t *reco
                   "They are alike in every column shown.";
 }
 
+enum { ROWS_SHOWN = 16 };
+
+/* Records of one participant of whom one is to be kept: their rows in the discrepancy, and "3, 4 and 7" for a sentence. */
+static const char *take_rows(struct finding *finding, struct discrepancy *what, const size_t *records, size_t count) {
+    unsigned *rows = ARENA_NEW(finding->arena, count, unsigned);
+    struct text words;
+    text_init(&words);
+    for (size_t i = 0; i < count; i++) {
+        rows[i] = (unsigned)records[i] + 1;
+        text_format(&words, "%s%u", i == 0 ? "" : i + 1 == count ? " and " : ", ", rows[i]);
+    }
+    what->rows = rows;
+    what->row_count = count;
+    const char *made = arena_text(finding->arena, words.data);
+    text_release(&words);
+    return made;
+}
+
 static void check_repeated(struct finding *finding) {
-    enum { SHOWN = 16 };
     const struct frame *frame = finding->frame;
     for (size_t p = 0; p < frame->participant_count; p++) {
         const struct participant *who = &frame->participants[p];
         if (who->record_count < 2 || who->record != NO_RECORD) {
             continue;
         }
-        size_t records[SHOWN], all = frame_records(frame, p, records, SHOWN), count = all < SHOWN ? all : SHOWN;
-        unsigned *rows = ARENA_NEW(finding->arena, count, unsigned);
-        struct text words;
-        text_init(&words);
-        for (size_t i = 0; i < count; i++) {
-            rows[i] = (unsigned)records[i] + 1;
-            text_format(&words, "%s%u", i == 0 ? "" : i + 1 == count ? " and " : ", ", rows[i]);
-        }
+        size_t records[ROWS_SHOWN], all = frame_records(frame, p, records, ROWS_SHOWN), count = all < ROWS_SHOWN ? all : ROWS_SHOWN;
         struct discrepancy *new = found(finding, CHECK_REPEATED, NULL, who->id);
         concerns(finding, new, who->id);
-        new->rows = rows;
-        new->row_count = count;
+        const char *rows = take_rows(finding, new, records, count);
         new->message = arena_format(finding->arena, "%s stands on %zu records (%s); all are held aside until one is kept. %s", who->id,
-            who->record_count, words.data, differing_columns(finding, records, count));
-        text_release(&words);
+            who->record_count, rows, differing_columns(finding, 0, records, count));
     }
 }
 
 static void check_no_identifier(struct finding *finding) {
     const struct frame *frame = finding->frame;
-    size_t blank = 0, first = 0;
-    for (size_t r = 0; r < frame->cells->records; r++) {
-        const char *id = column_text(frame, frame->identifier, r);
-        if (!id || id[strspn(id, " \t\r\n\f\v")] == '\0') {
-            first = blank++ == 0 ? r + 1 : first;
+    for (size_t f = 0; f < frame->plan->file_count; f++) {
+        const struct plan_file *file = &frame->plan->files[f];
+        size_t blank = 0, first = 0;
+        for (size_t r = 0; r < frame->cells[f].records; r++) {
+            const char *id = column_text(frame, frame->identifiers[f], r);
+            if (!id || id[strspn(id, " \t\r\n\f\v")] == '\0') {
+                first = blank++ == 0 ? r + 1 : first;
+            }
         }
-    }
-    if (blank) {
-        struct discrepancy *new = found(finding, CHECK_NO_IDENTIFIER, frame->plan->participant, "blank");
-        new->message = arena_format(finding->arena, "%zu record%s no identifier, the first is record %zu; %s held aside and counted.", blank,
-            blank == 1 ? " has" : "s have", first, blank == 1 ? "it is" : "they are");
+        if (blank) {
+            struct discrepancy *new = found(finding, CHECK_NO_IDENTIFIER, file->identifier_name, "blank");
+            new->message = arena_format(finding->arena, "%s%s%zu record%s no identifier, the first is record %zu; %s %s and counted.",
+                f ? file->id : "", f ? ": " : "", blank, blank == 1 ? " has" : "s have", first, blank == 1 ? "it is" : "they are",
+                f ? "joined to nobody" : "held aside");
+        }
     }
 }
 
@@ -365,7 +378,7 @@ static void check_unmatched(struct finding *finding) {
         for (size_t r = 0; frame->joins[f].unmatched && r < frame->cells[f].records; r++) {
             const char *id = column_text(frame, frame->identifiers[f], r);
             bool blank = !id || id[strspn(id, " \t\r\n\f\v")] == '\0';
-            if (!blank && frame_participant(frame, id) == NOWHERE && map_get(&seen, id) == NOWHERE) {
+            if (!blank && frame->owner[f][r] == NOWHERE && map_get(&seen, id) == NOWHERE) {
                 map_put(&seen, id, 1);
                 unmatched(finding, &folds, f, r, id);
             }
@@ -375,43 +388,63 @@ static void check_unmatched(struct finding *finding) {
     map_release(&folds);
 }
 
-static size_t records_of(const struct frame *frame, size_t slot, const char *id, unsigned *rows, size_t room) {
-    size_t f = frame->plan->slots[slot].file, count = 0;
-    const char *code = frame->plan->slots[slot].code;
-    for (size_t r = 0; r < frame->cells[f].records && count < room; r++) {
-        const char *here = column_text(frame, frame->identifiers[f], r);
-        if (here && strcmp(here, id) == 0 && (!code || frame_slot_of_record(frame, f, r) == slot)) {
-            rows[count++] = (unsigned)r + 1;
-        }
-    }
-    return count;
-}
+struct held { /* a participant's records of one slot, none of them kept yet */
+    size_t slot, participant;
+    size_t records[ROWS_SHOWN], count;
+};
 
-static void double_visit(struct finding *finding, size_t slot, const char *id) {
-    enum { SHOWN = 16 };
+static void double_visit(struct finding *finding, const struct held *held) {
     const struct frame *frame = finding->frame;
-    const struct plan_file *file = &frame->plan->files[frame->plan->slots[slot].file];
-    const char *code = frame->plan->slots[slot].code;
-    unsigned *rows = ARENA_NEW(finding->arena, SHOWN, unsigned);
-    size_t count = records_of(frame, slot, id, rows, SHOWN);
+    size_t f = frame->plan->slots[held->slot].file, count = held->count < ROWS_SHOWN ? held->count : ROWS_SHOWN;
+    const struct plan_file *file = &frame->plan->files[f];
+    const char *code = frame->plan->slots[held->slot].code, *id = frame->participants[held->participant].id;
     struct discrepancy *new = found(finding, CHECK_DOUBLE_VISIT, NULL,
         code ? arena_format(finding->arena, "%s@%s/%s", file->id, code, id) : arena_format(finding->arena, "%s/%s", file->id, id));
     concerns(finding, new, id);
-    new->rows = rows;
-    new->row_count = count;
     new->file = file->id;
-    new->message = arena_format(finding->arena, "%s has %zu records of %s%s%s (the first is record %u); all are held aside until one is kept.", id,
-        count, file->id, code ? " at visit " : "", code ? code : "", rows[0]);
+    const char *rows = take_rows(finding, new, held->records, count);
+    new->message = arena_format(finding->arena, "%s has %zu records of %s%s%s (%s); all are held aside until one is kept. %s", id, held->count,
+        file->id, code ? " at visit " : "", code ? code : "", rows, differing_columns(finding, f, held->records, count));
+}
+
+/* One pass over the file's records, however many are held. */
+static void check_double_visits_of(struct finding *finding, size_t f) {
+    const struct frame *frame = finding->frame;
+    size_t first = frame->plan->files[f].first_slot, slots = frame->plan->files[f].by_visit ? frame->plan->files[f].codes.count : 1;
+    size_t n = frame->participant_count, count = 0;
+    struct held *held = memory_new(frame->joins[f].doubled, sizeof *held);
+    int32_t *index = memory_new(slots * n, sizeof *index); /* 1-based into held */
+    for (size_t s = 0; s < slots; s++) {
+        for (size_t p = 0; p < n; p++) {
+            if (frame->place[first + s][p] == HELD_RECORD) {
+                held[count] = (struct held){.slot = first + s, .participant = p};
+                index[s * n + p] = (int32_t)++count;
+            }
+        }
+    }
+    for (size_t r = 0; r < frame->cells[f].records; r++) {
+        size_t slot = frame->owner[f][r] == NOWHERE ? NO_RECORD : frame_slot_of_record(frame, f, r);
+        int32_t place = slot == NO_RECORD ? 0 : index[(slot - first) * n + (size_t)frame->owner[f][r]];
+        if (place) {
+            struct held *here = &held[place - 1];
+            if (here->count < ROWS_SHOWN) {
+                here->records[here->count] = r;
+            }
+            here->count++;
+        }
+    }
+    for (size_t i = 0; i < count; i++) {
+        double_visit(finding, &held[i]);
+    }
+    memory_free(index);
+    memory_free(held);
 }
 
 static void check_double_visits(struct finding *finding) {
     const struct frame *frame = finding->frame;
-    for (size_t s = frame->plan->files[0].by_visit ? 0 : 1; s < frame->plan->slot_count; s++) {
-        bool any = frame->joins[frame->plan->slots[s].file].doubled > 0;
-        for (size_t p = 0; any && p < frame->participant_count; p++) {
-            if (frame->place[s][p] == HELD_RECORD) {
-                double_visit(finding, s, frame->participants[p].id);
-            }
+    for (size_t f = 0; f < frame->plan->file_count; f++) {
+        if (frame->joins[f].doubled) {
+            check_double_visits_of(finding, f);
         }
     }
 }
@@ -993,12 +1026,32 @@ static bool is_of_site(const struct frame *frame, const struct discrepancy *what
     return same(who == NOWHERE ? NULL : frame_site(frame, (size_t)who), site);
 }
 
+static size_t file_index(const struct plan *plan, const char *id) {
+    size_t f = 0;
+    while (id && f < plan->file_count && !same(plan->files[f].id, id)) {
+        f++;
+    }
+    return f;
+}
+
+/* Whether a keep-record chose among these records. */
+static bool keeps_one_of(const struct frame *frame, const struct decision *decision, const struct discrepancy *what) {
+    bool about = decision->kind == DECISION_KEEP_RECORD && same(decision->participant, what->participant) &&
+                 file_index(frame->plan, decision->file) == file_index(frame->plan, what->file);
+    for (size_t i = 0; about && i < what->row_count; i++) {
+        if (what->rows[i] == decision->row) {
+            return true;
+        }
+    }
+    return about && what->row_count >= ROWS_SHOWN;
+}
+
 /* The decision that settled what the checks no longer find: one that names it, else the last about its cell or column. */
 static uint32_t settler(const struct frame *frame, const struct discrepancy *what) {
     uint32_t by = 0;
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
-        bool keeps = decision->kind == DECISION_KEEP_RECORD && same(decision->participant, what->participant);
+        bool keeps = keeps_one_of(frame, decision, what);
         bool other_code = (decision->kind == DECISION_READ_AS && !same(decision->from, what->value)) ||
                           (decision->kind == DECISION_MISSING_CODE && !same(decision->value, what->value));
         const char *site = decision->kind == DECISION_DATE_ORDER ? decision->site : NULL;

@@ -114,16 +114,20 @@ static void build_roster(struct build *build) {
         qsort(rows, used, sizeof *rows, by_id_then_record);
     }
     frame->participants = ARENA_NEW(&frame->arena, used, struct participant);
+    frame->order = ARENA_NEW(&frame->arena, used, size_t);
     for (size_t i = 0; i < used; i++) {
         struct participant *last = frame->participant_count ? &frame->participants[frame->participant_count - 1] : NULL;
+        frame->order[i] = rows[i].record;
         if (last && strcmp(last->id, rows[i].id) == 0) {
+            last->total++;
             if (by_visit) {
                 continue; /* rows of one participant are visits, not repetitions */
             }
             last->record_count++;
             last->record = NO_RECORD;
         } else {
-            frame->participants[frame->participant_count++] = (struct participant){rows[i].id, rows[i].record, 1, false, false};
+            frame->participants[frame->participant_count++] = (struct participant){.id = rows[i].id, .record = rows[i].record,
+                .record_count = 1, .first = i, .total = 1};
         }
     }
     memory_free(rows);
@@ -177,14 +181,19 @@ int frame_participant(const struct frame *frame, const char *id) {
 
 size_t frame_records(const struct frame *frame, size_t participant, size_t *records, size_t room) {
     const struct participant *who = &frame->participants[participant];
-    if (who->record_count == 1 && room) {
-        records[0] = who->record;
-        return 1;
+    for (size_t i = 0; i < who->total && i < room; i++) {
+        records[i] = frame->order[who->first + i];
     }
-    size_t found = 0;
-    for (size_t r = 0; r < frame->cells->records && found < who->record_count; r++) {
-        const char *id = column_text(frame, frame->identifier, r);
-        if (id && strcmp(id, who->id) == 0) {
+    return who->total;
+}
+
+size_t frame_slot_records(const struct frame *frame, size_t slot, size_t participant, size_t *records, size_t room) {
+    size_t f = frame->plan->slots[slot].file, found = 0;
+    if (!frame->owner[f]) {
+        return frame_records(frame, participant, records, room);
+    }
+    for (size_t r = 0; r < frame->cells[f].records; r++) {
+        if (frame->owner[f][r] == (int32_t)participant && frame_slot_of_record(frame, f, r) == slot) {
             if (found < room) {
                 records[found] = r;
             }
@@ -240,11 +249,23 @@ static bool same_text(const char *a, const char *b) {
     return a && b ? strcmp(a, b) == 0 : a == b;
 }
 
-/* How many of the current texts read so. */
-static size_t count_text(const struct build *build, const struct column *column, const char *text) {
+/* The visit's code that a decision on a column of a file with one row per visit is about; NULL: all. */
+static const char *code_meant(const struct frame *frame, const struct decision *decision, const struct column *column) {
+    bool texts = column->kind == VARIABLE_PARTICIPANT || column->kind == VARIABLE_VISIT;
+    const char *code = texts ? NULL : frame->plan->slots[column->slot].code;
+    size_t length = strlen(decision->column), tail = code ? strlen(code) : 0;
+    bool said = code && length > tail && decision->column[length - tail - 1] == '@' && strcmp(decision->column + length - tail, code) == 0;
+    return said ? code : NULL;
+}
+
+/* How many of the current texts that a decision is about read so. */
+static size_t count_text(const struct build *build, const struct decision *decision, const struct column *column, const char *text) {
+    const struct frame *frame = build->frame;
+    const char *code = code_meant(frame, decision, column);
     size_t count = 0;
     for (size_t r = 0; r < column->cells->records; r++) {
-        count += same_text(column_text(build->frame, column, r), text);
+        count += same_text(column_text(frame, column, r), text) &&
+                 (!code || frame_slot_of_record(frame, column->file, r) == column->slot);
     }
     return count;
 }
@@ -272,8 +293,14 @@ static size_t record_meant(
     if (decision->row) {
         size_t record = decision->row - 1;
         *why = "names a row that is not one of the participant's records";
+        bool new = is_new(build, (size_t)(decision - frame->decisions));
         bool fits = record < column->cells->records &&
-                    (!is_new(build, (size_t)(decision - frame->decisions)) || same_text(column_text(frame, identifier, record), decision->participant));
+                    (!new || same_text(column_text(frame, identifier, record), decision->participant));
+        const char *code = code_meant(frame, decision, column);
+        if (fits && new && code && frame_slot_of_record(frame, column->file, record) != column->slot) {
+            *why = "names a row that is of another visit than the column says";
+            return NO_RECORD;
+        }
         return fits ? record : NO_RECORD;
     }
     if (column->kind == VARIABLE_PARTICIPANT) {
@@ -325,7 +352,7 @@ static bool apply_to_cell(struct build *build, size_t i, struct column *column) 
 
 static bool apply_read_as(struct build *build, size_t i, struct column *column) {
     const struct decision *decision = &build->frame->decisions[i];
-    if (is_new(build, i) && count_text(build, column, decision->from) == 0) {
+    if (is_new(build, i) && count_text(build, decision, column, decision->from) == 0) {
         return refuse(build, i, "reads a code as another, but no value of the column now reads so");
     }
     for (size_t r = 0; r < column->cells->records; r++) {
@@ -347,7 +374,7 @@ static bool replay(struct build *build, struct column *column, const char *name)
                         (decision->kind == DECISION_CONFIRM && decision->participant);
         bool done = one_cell                          ? apply_to_cell(build, i, column) :
             decision->kind == DECISION_READ_AS        ? apply_read_as(build, i, column) :
-            decision->kind == DECISION_CONFIRM        ? !is_new(build, i) || count_text(build, column, decision->value) > 0 ||
+            decision->kind == DECISION_CONFIRM        ? !is_new(build, i) || count_text(build, decision, column, decision->value) > 0 ||
                 refuse(build, i, "confirms a value that no cell of the column now has") :
                                                         true;
         if (!done) {
@@ -714,7 +741,17 @@ struct joining {
     struct frame *frame;
     struct map participants; /* identifier to index */
     struct map codes;        /* visit code to place among the file's codes */
+    const char *id;          /* of the record before: files mostly come sorted */
+    int32_t who;
 };
+
+static int32_t owner_of(struct joining *joining, const char *id) {
+    if (!joining->id || strcmp(joining->id, id) != 0) {
+        joining->id = id;
+        joining->who = map_get(&joining->participants, id);
+    }
+    return joining->who;
+}
 
 static void join_record(struct joining *joining, size_t f, size_t record) {
     struct frame *frame = joining->frame;
@@ -722,15 +759,17 @@ static void join_record(struct joining *joining, size_t f, size_t record) {
     struct join *join = &frame->joins[f];
     const char *id = column_text(frame, frame->identifiers[f], record);
     const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
+    frame->owner[f][record] = NOWHERE;
     if (!id || is_blank(id)) {
         join->blank++;
         return;
     }
-    int32_t who = map_get(&joining->participants, id), visit = file->by_visit ? code ? map_get(&joining->codes, code) : NOWHERE : 0;
+    int32_t who = owner_of(joining, id), visit = file->by_visit ? code ? map_get(&joining->codes, code) : NOWHERE : 0;
     if (who == NOWHERE) {
         join->unmatched++;
         return;
     }
+    frame->owner[f][record] = who;
     if (visit == NOWHERE) {
         join->unplanned++;
         return;
@@ -744,6 +783,8 @@ static void join_record(struct joining *joining, size_t f, size_t record) {
 static void join_file(struct joining *joining, size_t f) {
     const struct plan_file *file = &joining->frame->plan->files[f];
     map_init(&joining->codes);
+    joining->id = NULL;
+    joining->frame->owner[f] = ARENA_NEW(&joining->frame->arena, joining->frame->cells[f].records, int32_t);
     for (size_t c = 0; c < file->codes.count; c++) {
         map_put(&joining->codes, file->codes.item[c], (int32_t)c);
     }
@@ -759,6 +800,7 @@ static void build_places(struct build *build) {
     size_t n = frame->participant_count;
     frame->place = ARENA_NEW(&frame->arena, plan->slot_count, size_t *);
     frame->joins = ARENA_NEW(&frame->arena, plan->file_count, struct join);
+    frame->owner = ARENA_NEW(&frame->arena, plan->file_count, int32_t *);
     for (size_t s = 0; s < plan->slot_count; s++) {
         frame->place[s] = ARENA_NEW(&frame->arena, n, size_t);
         for (size_t p = 0; p < n; p++) {
@@ -899,6 +941,7 @@ static void place_by_window(struct windowing *windowing) {
     for (size_t r = 0; r < frame->cells[f].records; r++) {
         const char *id = column_text(frame, frame->identifiers[f], r);
         int who = id && !is_blank(id) ? frame_participant(frame, id) : NOWHERE;
+        frame->owner[f][r] = who;
         double days = who == NOWHERE ? (double)NAN : days_of_record(frame, f, r, (size_t)who, &windowing->orders);
         join->blank += !id || is_blank(id);
         join->unmatched += id && !is_blank(id) && who == NOWHERE;
@@ -942,6 +985,7 @@ static bool build_windows(struct build *build) {
                 &frame->windows[f]) || !build_early(build)) {
             return false;
         }
+        frame->owner[f] = ARENA_NEW(&frame->arena, frame->cells[f].records, int32_t);
         struct windowing windowing = {.frame = frame, .file = f, .orders = {.column = file->window_name}};
         windowing.nearest = memory_new(file->codes.count * frame->participant_count, sizeof *windowing.nearest);
         map_init(&windowing.orders.map);
@@ -1162,6 +1206,11 @@ static bool date_order_fits(struct build *build, size_t i) {
                    site || refuse(build, i, arena_format(&build->frame->arena, "names the site \"%.60s\", which no participant has", decision->site));
 }
 
+/* Whether it is the whole name of a column, not only FILE.COLUMN of several visits. */
+static bool frame_names(const struct frame *frame, const char *name) {
+    return plan_variable(frame->plan, name) != NOWHERE || (frame->plan->arm_column && strcmp(frame->plan->arm_column, name) == 0);
+}
+
 static bool column_fits(struct build *build, size_t i) {
     const struct frame *frame = build->frame;
     const struct decision *decision = &frame->decisions[i];
@@ -1193,6 +1242,15 @@ static bool column_fits(struct build *build, size_t i) {
     }
     if (decision->kind == DECISION_DATE_ORDER && !date_order_fits(build, i)) {
         return false;
+    }
+    bool one_cell = decision->participant && decision->kind >= DECISION_CORRECT && decision->kind <= DECISION_CONFIRM && !decision->row;
+    if (one_cell && plan_visit_file(plan, decision->column) != NOWHERE) {
+        return refuse(build, i, "is about one record's visit code; say which record with \"row\"");
+    }
+    bool texts = plan_identifier_file(plan, decision->column) != NOWHERE || plan_window_file(plan, decision->column) != NOWHERE;
+    if (one_cell && !texts && !frame_names(frame, decision->column)) {
+        return refuse(build, i, arena_format(&build->frame->arena, "names %.60s, of which a participant has one value per visit; add "
+            "@ and the visit's code, or say which record with \"row\"", decision->column));
     }
     return decision->kind != DECISION_MISSING_CODE || plan_identifier_file(plan, decision->column) == NOWHERE ||
            refuse(build, i, "is about the identifier, which cannot be missing; correct it, or set it missing to hold the record aside");

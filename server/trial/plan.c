@@ -34,6 +34,18 @@ static bool read_file(struct reader *reader, const cJSON *item, const char *path
         return wrong(reader, join(reader, path, "codes"), file->by_visit ?
             "must list the planned visit codes, in order of time" : "belongs to the layout \"visit\"");
     }
+    for (size_t c = 0; c < file->codes.count; c++) {
+        const char *code = file->codes.item[c];
+        if (code[strspn(code, " \t\r\n\f\v")] == '\0' || strchr(code, '@')) {
+            return wrong(reader, join(reader, path, "codes"), "must hold texts that are not blank and without @");
+        }
+        for (size_t before = 0; before < c; before++) {
+            if (strcmp(file->codes.item[before], code) == 0) {
+                return wrong(reader, join(reader, path, "codes"),
+                    arena_format(&plan->arena, "holds \"%.60s\" twice; keep one", code));
+            }
+        }
+    }
     file->identifier_name = arena_format(&plan->arena, "%s.%s", file->id, file->participant);
     file->visit_name = file->by_visit && file->visit ? arena_format(&plan->arena, "%s.%s", file->id, file->visit) : NULL;
     plan->file_count++;
@@ -601,6 +613,21 @@ static bool settle_variables(struct reader *reader) {
     return true;
 }
 
+/* A column called NAME@SOMETHING by its file would share the decisions on one called NAME. */
+static bool names_differ(struct reader *reader) {
+    const struct plan *plan = reader->plan;
+    for (size_t i = 0; i < plan->variable_count; i++) {
+        const char *name = plan->variables[i].column;
+        for (size_t j = 0; strchr(name, '@') && j < plan->variable_count; j++) {
+            if (strcmp(plan->variables[j].column, name) != 0 && plan_covers(plan->variables[j].column, name)) {
+                return fault_set(reader->fault, FAULT_INPUT, "%s: the columns \"%.60s\" and \"%.60s\" cannot be told apart in decisions, where @ "
+                    "stands before a visit; rename one in the export", reader->name, plan->variables[j].column, name);
+            }
+        }
+    }
+    return true;
+}
+
 static bool settle_standard_error(struct reader *reader, const cJSON *root) {
     struct plan *plan = reader->plan;
     if (!read_choice(reader, root, "", "standard_error", "classical", "robust", &plan->robust)) {
@@ -678,7 +705,7 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (plan->arm_column && strcmp(plan->arm_column, plan->participant) == 0) {
         return wrong(reader, "arm.column", "is the participant's column; a column has one meaning");
     }
-    return read_dates(reader, root) && settle_variables(reader) && settle_settings(reader, root) &&
+    return read_dates(reader, root) && settle_variables(reader) && names_differ(reader) && settle_settings(reader, root) &&
            settle_standard_error(reader, root) && read_screening(reader, root);
 }
 

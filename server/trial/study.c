@@ -93,7 +93,7 @@ static bool plan_fits(const struct plan *plan, const struct cells *cells, const 
 }
 
 /* Which of the files received is each of the plan's: by name where the plan gives one, else in the order given. */
-static bool match_files(const struct plan *plan, const struct study_file *files, size_t count, const struct study_file **matched,
+static bool match_files(const struct plan *plan, struct arena *arena, const struct study_file *files, size_t count, const struct study_file **matched,
     const char *plan_name, struct fault *fault) {
     if (count != plan->file_count) {
         return fault_set(fault, FAULT_INPUT, plan->files[0].id ?
@@ -101,22 +101,25 @@ static bool match_files(const struct plan *plan, const struct study_file *files,
             "%s: the plan takes %zu file, and %zu came; list them under \"files\" in the plan, or load one", plan_name,
             plan->file_count, count);
     }
-    for (size_t f = 0; f < count; f++) {
+    bool *taken = ARENA_NEW(arena, count, bool);
+    for (size_t f = 0; f < count; f++) { /* named ones first, so that the others take what is left */
         const char *wanted = plan->files[f].name;
-        matched[f] = wanted ? NULL : &files[f];
-        for (size_t i = 0; wanted && i < count; i++) {
-            matched[f] = strcmp(file_part(files[i].name), wanted) == 0 ? &files[i] : matched[f];
+        for (size_t i = 0; wanted && i < count && !matched[f]; i++) {
+            bool fits = !taken[i] && strcmp(file_part(files[i].name), wanted) == 0;
+            matched[f] = fits ? &files[i] : NULL;
+            taken[i] = taken[i] || fits;
         }
-        if (!matched[f]) {
+        if (wanted && !matched[f]) {
             return fault_set(fault, FAULT_INPUT, "%s: no file named \"%.80s\" came, which the plan's file \"%s\" asks for; load it too, or mend the name",
                 plan_name, wanted, plan->files[f].id);
         }
-        for (size_t g = 0; g < f; g++) {
-            if (matched[g] == matched[f]) {
-                return fault_set(fault, FAULT_INPUT, "%s: the files \"%s\" and \"%s\" of the plan are both %s; name each in the plan", plan_name,
-                    plan->files[g].id, plan->files[f].id, file_part(matched[f]->name));
-            }
+    }
+    size_t next = 0;
+    for (size_t f = 0; f < count; f++) {
+        while (!matched[f] && taken[next]) {
+            next++;
         }
+        matched[f] = matched[f] ? matched[f] : &files[next++];
     }
     return true;
 }
@@ -200,6 +203,22 @@ static void plan_code(struct planning *planning, const char *column, const char 
     text_release(&body);
 }
 
+/* Whether every column of the same place at another visit has the same codes: they are then entered once for all. */
+static bool codes_shared(const struct plan *plan, const struct variable *variable) {
+    const struct texts *codes = variable->missing_codes;
+    for (size_t v = 0; v < plan->variable_count; v++) {
+        const struct variable *other = &plan->variables[v];
+        bool alike = other->missing_codes->count == codes->count;
+        for (size_t c = 0; alike && c < codes->count; c++) {
+            alike = strcmp(other->missing_codes->item[c], codes->item[c]) == 0;
+        }
+        if (!alike && other->place.file == variable->place.file && strcmp(other->place.column, variable->place.column) == 0) {
+            return false;
+        }
+    }
+    return true;
+}
+
 /* One for each column and code; a column of a file with one row per visit once for all its visits. */
 static size_t planned_decisions(const struct plan *plan, const struct cells *cells, struct arena *arena, struct decision **decisions) {
     struct planning planning = {plan, arena, NULL, 0, 0};
@@ -208,7 +227,8 @@ static size_t planned_decisions(const struct plan *plan, const struct cells *cel
         const struct cells *file = &cells[variable->place.file];
         const char *column = plan_column_name(arena, plan, variable->place.file, variable->place.column);
         for (size_t c = 0; c < variable->missing_codes->count; c++) {
-            plan_code(&planning, column, variable->missing_codes->item[c], "The plan lists it as a code for missing.");
+            plan_code(&planning, codes_shared(plan, variable) ? column : variable->column, variable->missing_codes->item[c],
+                "The plan lists it as a code for missing.");
         }
         const struct cell_about *about = file->about ? &file->about[cells_column(file, variable->place.column)] : NULL;
         for (size_t c = 0; about && c < about->missing_count; c++) {
@@ -345,7 +365,7 @@ bool study_create_from(const char *path, const struct study_file *files, size_t 
         birth.files = ARENA_NEW(&birth.arena, birth.plan.file_count, const struct study_file *);
         birth.names = ARENA_NEW(&birth.arena, birth.plan.file_count, const char *);
         birth.cells = ARENA_NEW(&birth.arena, birth.plan.file_count, struct cells);
-        done = match_files(&birth.plan, files, count, birth.files, plan_name, fault) && read_files(&birth, fault) &&
+        done = match_files(&birth.plan, &birth.arena, files, count, birth.files, plan_name, fault) && read_files(&birth, fault) &&
                plan_fits(&birth.plan, birth.cells, birth.names, plan_name, fault) &&
                write_birth(&birth, path, plan_text, by, account, fault);
     }

@@ -499,7 +499,7 @@ static const char *random_decision(struct trial_case *c, uint64_t *state) {
     static const char *const texts[] = {"F", "M", "1", "2.5", "999", "<3", "", "Lx", "Y", "2,5", "P50", "P07"};
     const char *column = columns[below(state, 8)], *to = texts[below(state, 12)];
     const struct participant *who = &c->frame->participants[below(state, c->frame->participant_count)];
-    size_t record = who->record == NO_RECORD ? below(state, c->cells.records) : who->record;
+    size_t record = who->record == NO_RECORD ? below(state, c->cells[0].records) : who->record;
     const char *text = column_text(c->frame, frame_column(c->frame, column), record);
     const char *from = text ? arena_format(&c->arena, "'%s'", text) : "null";
     char row[32] = "";

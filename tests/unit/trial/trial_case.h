@@ -8,12 +8,12 @@
 #include <stdio.h>
 #include <string.h>
 
-enum { CASE_DECISIONS = 512 };
+enum { CASE_DECISIONS = 512, CASE_FILES = 4 };
 
 struct trial_case {
     struct arena arena;
     struct plan plan;
-    struct cells cells;
+    struct cells cells[CASE_FILES]; /* of the plan's files, in their order */
     struct decision decisions[CASE_DECISIONS];
     size_t count, planned;
     unsigned char letters[26];
@@ -30,7 +30,7 @@ static inline char *quoted(struct arena *arena, const char *text) {
 }
 
 static inline struct frame *case_build(struct trial_case *c, size_t count, struct frame *previous, bool check) {
-    return frame_build(&c->plan, &c->cells, "data", c->letters, c->decisions, count, previous, check, &c->fault);
+    return frame_build(&c->plan, c->cells, "data", c->letters, c->decisions, count, previous, check, &c->fault);
 }
 
 /* The plan's codes for missing are the first decisions, as a study has them. */
@@ -46,13 +46,18 @@ static inline void case_plan_codes(struct trial_case *c) {
     c->planned = c->count;
 }
 
-static inline void case_open(struct trial_case *c, const char *csv, const char *plan) {
+static inline void case_open_files(struct trial_case *c, const char *const *csv, size_t count, const char *plan) {
     memset(c, 0, sizeof *c);
     arena_init(&c->arena);
     const char *json = quoted(&c->arena, plan);
-    if (!plan_read(&c->plan, json, strlen(json), "plan.json", &c->fault) ||
-        !cells_read(&c->cells, csv, strlen(csv), "data.csv", &c->fault)) {
+    if (!plan_read(&c->plan, json, strlen(json), "plan.json", &c->fault)) {
         fail_msg("%s", c->fault.message);
+    }
+    assert_int_equal(c->plan.file_count, count);
+    for (size_t f = 0; f < count; f++) {
+        if (!cells_read(&c->cells[f], csv[f], strlen(csv[f]), "data.csv", &c->fault)) {
+            fail_msg("%s", c->fault.message);
+        }
     }
     for (size_t i = 0; i < 26; i++) { /* the last arm is A */
         c->letters[i] = i < c->plan.arm_count ? (unsigned char)(c->plan.arm_count - 1 - i) : 0;
@@ -63,10 +68,16 @@ static inline void case_open(struct trial_case *c, const char *csv, const char *
     c->frame = frame_retain(c->received);
 }
 
+static inline void case_open(struct trial_case *c, const char *csv, const char *plan) {
+    case_open_files(c, &csv, 1, plan);
+}
+
 static inline void case_close(struct trial_case *c) {
     frame_release(c->frame);
     frame_release(c->received);
-    cells_release(&c->cells);
+    for (size_t f = 0; f < CASE_FILES; f++) {
+        cells_release(&c->cells[f]);
+    }
     plan_release(&c->plan);
     arena_release(&c->arena);
 }
