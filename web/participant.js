@@ -201,14 +201,14 @@ function draw(place) {
   const scroll = panel.scrollTop;
   const open = data.discrepancies.filter((discrepancy) => discrepancy.state !== "settled");
   const settled = data.discrepancies.filter((discrepancy) => discrepancy.state === "settled");
-  const records = data.records ?? [];
+  const records = data.records ?? [], files = (data.files ?? []).filter((file) => file.records.length);
   fill(panel,
     head(data.participant, facts()),
-    make("p", { class: "quiet-text" }, records.length > 1 ? `Records ${records.join(" and ")} of the file` : records.length ? `Record ${records[0]} of the file` : ""),
+    make("p", { class: "quiet-text" }, files.length ? files.map((file) => `${file.file}${file.visit === null ? "" : ` ${file.visit}`}: ${file.records.join(", ")}`).join("; ") : records.length > 1 ? `Records ${records.join(" and ")} of the file` : records.length ? `Record ${records[0]} of the file` : ""),
     open.length ? [make("h3", {}, open.length === 1 ? "Open discrepancy" : `${open.length} open discrepancies`),
       make("ul", { class: "plain discrepancies" }, open.map(discrepancyPart))] : null,
     make("h3", {}, "Values"),
-    data.held_aside && data.values.every((value) => value.on_records?.length) ? recordsTable(records) : valuesTable(place),
+    data.held_aside && data.values.every((value) => value.on_records?.length === records.length) ? recordsTable(records) : valuesTable(place),
     settled.length ? [make("h3", {}, "Settled discrepancies"), make("ul", { class: "plain discrepancies" }, settled.map(discrepancyPart))] : null,
     make("h3", {}, "Decisions"),
     data.decisions.length ? make("ol", { class: "plain decisions" }, data.decisions.map((decision) => make("li", {},

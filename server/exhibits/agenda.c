@@ -198,15 +198,20 @@ static void write_meeting(const struct frame *frame, struct json *json) {
     }
 }
 
-static void write_data(const struct frame *frame, const struct study_facts *facts, struct json *json) {
+static void write_data(const struct study_facts *facts, struct json *json) {
+    size_t records = 0, columns = 0; /* of all files */
+    for (size_t f = 0; f < facts->file_count; f++) {
+        records += facts->files[f].records;
+        columns += facts->files[f].columns;
+    }
     json_key_object(json, "data");
     json_field_string(json, "name", facts->data_name);
     json_field_string(json, "received_at", facts->received_at);
     json_field_integer(json, "length", (int64_t)facts->data_length);
     json_field_string(json, "encoding", facts->encoding);
     json_field_string(json, "delimiter", facts->delimiter);
-    json_field_integer(json, "records", (int64_t)frame->cells->records);
-    json_field_integer(json, "columns", (int64_t)frame->cells->columns);
+    json_field_integer(json, "records", (int64_t)records);
+    json_field_integer(json, "columns", (int64_t)columns);
     json_close(json);
 }
 
@@ -239,7 +244,7 @@ bool agenda_json(struct study *study, struct arena *arena, struct text *out, str
     json_field_string(&json, "data_sha256", frame->data_sha256);
     json_field_string(&json, "head", head);
     json_field_bool(&json, "locked", frame->locked);
-    write_data(frame, &facts, &json);
+    write_data(&facts, &json);
     json_field_integer(&json, "decisions", frame->version);
     json_field_string(&json, "care", care);
     json_key_array(&json, "items");

@@ -13,7 +13,8 @@ struct value {
     enum cell_state state;
     uint32_t origin;
     bool doubtful, hidden;
-    const char **on_records; /* what each record says while none is kept, else NULL */
+    const char **on_records; /* what each record of the column's file and visit says while none is kept, else NULL */
+    size_t on_record_count;
 };
 
 struct analysis_of {
@@ -21,10 +22,16 @@ struct analysis_of {
     const char *visit, *why; /* why not, NULL where the participant counts */
 };
 
+enum { SHOWN_RECORDS = 32 };
+
+struct records { /* of a participant in one file, or at one visit of it */
+    size_t record[SHOWN_RECORDS], count;
+};
+
 struct participant_result {
     size_t participant;
-    size_t *records;
-    size_t record_count;
+    struct records records;  /* of the first file, of all visits */
+    struct records *of_slot; /* [plan.slot_count] */
     const char *arm; /* shown arm's label, NULL while pooled or without one */
     struct value *values;
     size_t value_count;
@@ -59,9 +66,11 @@ static void take_values(struct view *view, struct participant_result *result) {
             value->origin = column->origin ? column->origin[record] : 0;
             value->doubtful = is_doubtful(result, value->variable->column);
         } else if (!value->hidden) {
-            value->on_records = ARENA_NEW(view->arena, result->record_count, const char *);
-            for (size_t i = 0; i < result->record_count; i++) {
-                value->on_records[i] = cells_at(frame->cells, result->records[i], column->index);
+            const struct records *records = &result->of_slot[column->slot];
+            value->on_records = ARENA_NEW(view->arena, records->count, const char *);
+            value->on_record_count = records->count;
+            for (size_t i = 0; i < records->count; i++) {
+                value->on_records[i] = cells_at(column->cells, records->record[i], column->index);
             }
         }
     }
@@ -100,13 +109,17 @@ static void take_analyses(struct view *view, struct participant_result *result) 
 
 static bool compute(struct view *view, struct fault *fault) {
     (void)fault;
-    enum { SHOWN_RECORDS = 32 };
     const struct frame *frame = view->frame;
     struct participant_result *result = ARENA_NEW(view->arena, 1, struct participant_result);
     result->participant = (size_t)frame_participant(frame, view_asked(view, "participant"));
-    result->records = ARENA_NEW(view->arena, SHOWN_RECORDS, size_t);
-    size_t all = frame_records(frame, result->participant, result->records, SHOWN_RECORDS);
-    result->record_count = all < SHOWN_RECORDS ? all : SHOWN_RECORDS;
+    size_t all = frame_records(frame, result->participant, result->records.record, SHOWN_RECORDS);
+    result->records.count = all < SHOWN_RECORDS ? all : SHOWN_RECORDS;
+    result->of_slot = ARENA_NEW(view->arena, frame->plan->slot_count, struct records);
+    for (size_t s = 0; s < frame->plan->slot_count; s++) {
+        struct records *records = &result->of_slot[s];
+        all = frame_slot_records(frame, s, result->participant, records->record, SHOWN_RECORDS);
+        records->count = all < SHOWN_RECORDS ? all : SHOWN_RECORDS;
+    }
     checks_run(frame, view->received, view->arena, &result->found);
     result->concerned = ARENA_NEW(view->arena, result->found.count, bool);
     for (size_t i = 0; i < result->found.count; i++) {
@@ -121,7 +134,7 @@ static bool compute(struct view *view, struct fault *fault) {
     return true;
 }
 
-static void value_json(const struct participant_result *result, const struct value *value, struct json *json) {
+static void value_json(const struct value *value, struct json *json) {
     static const char *const kinds[] = {"number", "category", "event"};
     json_object(json);
     json_field_string(json, "column", value->variable->column);
@@ -135,7 +148,7 @@ static void value_json(const struct participant_result *result, const struct val
     json_field_integer(json, "origin", value->origin);
     json_field_bool(json, "doubtful", value->doubtful);
     json_key_array(json, "on_records");
-    for (size_t i = 0; value->on_records && i < result->record_count; i++) {
+    for (size_t i = 0; value->on_records && i < value->on_record_count; i++) {
         json_string(json, value->on_records[i]);
     }
     json_close(json);
@@ -170,6 +183,27 @@ static bool about(const struct participant_result *result, const struct decision
     return false;
 }
 
+static void write_rows(const struct records *records, struct json *json) {
+    for (size_t i = 0; i < records->count; i++) {
+        json_integer(json, (int64_t)records->record[i] + 1);
+    }
+}
+
+/* Where the plan names files, the participant's records of each, and of each planned visit. */
+static void files_json(const struct plan *plan, const struct participant_result *result, struct json *json) {
+    json_key_array(json, "files");
+    for (size_t s = 0; s < plan->slot_count && plan->files[0].id; s++) {
+        json_object(json);
+        json_field_string(json, "file", plan->files[plan->slots[s].file].id);
+        json_field_string(json, "visit", plan->slots[s].code);
+        json_key_array(json, "records");
+        write_rows(&result->of_slot[s], json);
+        json_close(json);
+        json_close(json);
+    }
+    json_close(json);
+}
+
 static void json(const struct view *view, struct json *json) {
     const struct participant_result *result = view->result;
     const struct frame *frame = view->frame;
@@ -178,13 +212,12 @@ static void json(const struct view *view, struct json *json) {
     json_field_string(json, "arm", result->arm);
     json_field_bool(json, "held_aside", frame->participants[result->participant].record == NO_RECORD);
     json_key_array(json, "records");
-    for (size_t i = 0; i < result->record_count; i++) {
-        json_integer(json, (int64_t)result->records[i] + 1);
-    }
+    write_rows(&result->records, json);
     json_close(json);
+    files_json(frame->plan, result, json);
     json_key_array(json, "values");
     for (size_t i = 0; i < result->value_count; i++) {
-        value_json(result, &result->values[i], json);
+        value_json(&result->values[i], json);
     }
     json_close(json);
     json_key_array(json, "discrepancies");

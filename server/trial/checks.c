@@ -443,7 +443,7 @@ static void check_double_visits_of(struct finding *finding, size_t f) {
 static void check_double_visits(struct finding *finding) {
     const struct frame *frame = finding->frame;
     for (size_t f = 0; f < frame->plan->file_count; f++) {
-        if (frame->joins[f].doubled) {
+        if (frame->joins[f].doubled && frame->owner[f]) {
             check_double_visits_of(finding, f);
         }
     }

@@ -807,7 +807,11 @@ static void build_places(struct build *build) {
             frame->place[s][p] = s == 0 && !plan->files[0].by_visit ? frame->participants[p].record : NO_RECORD;
         }
     }
-    frame->joins[0].matched = frame->cells[0].records;
+    for (size_t p = 0; p < n && !plan->files[0].by_visit; p++) {
+        frame->joins[0].matched += frame->participants[p].record_count;
+        frame->joins[0].doubled += frame->participants[p].record == NO_RECORD;
+    }
+    frame->joins[0].blank = frame->cells[0].records - frame->joins[0].matched;
     if (plan->file_count == 1 && !plan->files[0].by_visit) {
         return;
     }
@@ -817,7 +821,7 @@ static void build_places(struct build *build) {
         map_put(&joining.participants, frame->participants[p].id, (int32_t)p);
     }
     for (size_t f = plan->files[0].by_visit ? 0 : 1; f < plan->file_count; f++) {
-        frame->joins[f].matched = 0;
+        frame->joins[f] = (struct join){0};
         if (!plan->files[f].window) {
             join_file(&joining, f);
         }

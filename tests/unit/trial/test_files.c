@@ -90,9 +90,10 @@ static void test_joins_are_counted(void **state) {
     open_case(&c);
     assert_int_equal(c.frame->participant_count, 5);
     assert_int_equal(c.frame->held_aside, 3);
+    expect_join(c.frame, PEOPLE, &(struct join){.matched = 6, .blank = 1, .doubled = 1});
     expect_join(c.frame, VISITS, &(struct join){.matched = 9, .blank = 1, .unmatched = 2, .unplanned = 2, .doubled = 1});
     expect_join(c.frame, EXTRA, &(struct join){.matched = 4, .blank = 1, .unmatched = 1, .doubled = 1});
-    for (size_t f = VISITS; f < FILES; f++) { /* every record is somewhere, once */
+    for (size_t f = PEOPLE; f < FILES; f++) { /* every record is somewhere, once */
         const struct join *join = &c.frame->joins[f];
         assert_int_equal(join->matched + join->blank + join->unmatched + join->unplanned, c.cells[f].records);
     }
