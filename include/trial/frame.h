@@ -90,6 +90,7 @@ struct frame {
     size_t *order;               /* 0-based records of the first file by participant, then as in the file */
     int32_t **owner;             /* [files][records] participant of each record, NOWHERE where none; NULL for a first file with
                                     one row per participant */
+    size_t **dated;              /* [files][records] slot by date, NO_RECORD in no window; NULL where codes say the visit */
     size_t **place;              /* [slots][participants] 0-based record of the slot's file, NO_RECORD or HELD_RECORD */
     struct join *joins;          /* [files] */
     size_t roster;               /* records that stand for participants in the first file: all of them, or with one row per

@@ -151,7 +151,7 @@ static void each_of_window(struct dating *dating, size_t f) {
         if (!text || is_blank(text) || !id || is_blank(id)) {
             continue;
         }
-        int who = frame_participant(frame, id);
+        int who = frame->owner[f][r];
         struct cell cell = {.column = frame->windows[f], .name = file->window_name, .shared = file->window_name, .text = text, .id = id,
             .site = who == NOWHERE ? NULL : frame_site(frame, (size_t)who), .label = "The date", .record = r, .by_window = true,
             .variable = NOWHERE, .participant = who};
@@ -606,7 +606,7 @@ static void check_windows(struct dating *dating) {
         const double *randomised = frame->columns[dates->moments[dates->randomised].variable]->number;
         for (size_t r = 0; r < frame->cells[f].records; r++) {
             const char *id = column_text(frame, frame->identifiers[f], r), *text = column_text(frame, frame->windows[f], r);
-            int who = id ? frame_participant(frame, id) : NOWHERE;
+            int who = frame->owner[f][r];
             struct cell cell = {.column = frame->windows[f], .name = frame->plan->files[f].window_name, .text = text, .id = id,
                 .label = "The date", .record = r, .by_window = true, .variable = NOWHERE, .participant = who};
             cell.site = who == NOWHERE ? NULL : frame_site(frame, (size_t)who);

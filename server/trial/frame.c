@@ -719,6 +719,7 @@ static bool build_identifiers(struct build *build) {
     frame->identifiers = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
     frame->visits = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
     frame->windows = ARENA_NEW(&frame->arena, plan->file_count, struct column *);
+    frame->dated = ARENA_NEW(&frame->arena, plan->file_count, size_t *);
     frame->columns = ARENA_NEW(&frame->arena, plan->variable_count, struct column *);
     for (size_t f = 0; f < plan->file_count; f++) {
         const struct plan_file *file = &plan->files[f];
@@ -758,7 +759,7 @@ static void join_record(struct joining *joining, size_t f, size_t record) {
     const struct plan_file *file = &frame->plan->files[f];
     struct join *join = &frame->joins[f];
     const char *id = column_text(frame, frame->identifiers[f], record);
-    const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
+    const char *code = file->by_visit && !file->window ? column_text(frame, frame->visits[f], record) : NULL;
     frame->owner[f][record] = NOWHERE;
     if (!id || is_blank(id)) {
         join->blank++;
@@ -770,6 +771,9 @@ static void join_record(struct joining *joining, size_t f, size_t record) {
         return;
     }
     frame->owner[f][record] = who;
+    if (file->window) {
+        return; /* placed by its date, when that is known */
+    }
     if (visit == NOWHERE) {
         join->unplanned++;
         return;
@@ -822,9 +826,7 @@ static void build_places(struct build *build) {
     }
     for (size_t f = plan->files[0].by_visit ? 0 : 1; f < plan->file_count; f++) {
         frame->joins[f] = (struct join){0};
-        if (!plan->files[f].window) {
-            join_file(&joining, f);
-        }
+        join_file(&joining, f);
     }
     map_release(&joining.participants);
 }
@@ -923,6 +925,7 @@ static void place_in_window(struct windowing *windowing, size_t record, size_t w
     }
     join->matched++;
     size_t slot = plan->files[windowing->file].first_slot + (size_t)visit;
+    frame->dated[windowing->file][record] = slot;
     double target = plan->dates->moments[dates_moment_of_slot(plan, slot)].target, off = fabs(days - target);
     struct nearest *nearest = &windowing->nearest[(size_t)visit * frame->participant_count + who];
     double best = nearest->same ? fabs(nearest->days - target) : HUGE_VAL;
@@ -942,13 +945,11 @@ static void place_by_window(struct windowing *windowing) {
     struct frame *frame = windowing->frame;
     size_t f = windowing->file, n = frame->participant_count, codes = frame->plan->files[f].codes.count;
     struct join *join = &frame->joins[f];
+    frame->dated[f] = ARENA_NEW(&frame->arena, frame->cells[f].records, size_t);
     for (size_t r = 0; r < frame->cells[f].records; r++) {
-        const char *id = column_text(frame, frame->identifiers[f], r);
-        int who = id && !is_blank(id) ? frame_participant(frame, id) : NOWHERE;
-        frame->owner[f][r] = who;
+        int32_t who = frame->owner[f][r];
         double days = who == NOWHERE ? (double)NAN : days_of_record(frame, f, r, (size_t)who, &windowing->orders);
-        join->blank += !id || is_blank(id);
-        join->unmatched += id && !is_blank(id) && who == NOWHERE;
+        frame->dated[f][r] = NO_RECORD;
         join->undated += who != NOWHERE && isnan(days);
         if (!isnan(days)) {
             place_in_window(windowing, r, (size_t)who, days);
@@ -989,7 +990,6 @@ static bool build_windows(struct build *build) {
                 &frame->windows[f]) || !build_early(build)) {
             return false;
         }
-        frame->owner[f] = ARENA_NEW(&frame->arena, frame->cells[f].records, int32_t);
         struct windowing windowing = {.frame = frame, .file = f, .orders = {.column = file->window_name}};
         windowing.nearest = memory_new(file->codes.count * frame->participant_count, sizeof *windowing.nearest);
         map_init(&windowing.orders.map);
@@ -1013,14 +1013,7 @@ static int file_meant(const struct frame *frame, const struct decision *decision
 size_t frame_slot_of_record(const struct frame *frame, size_t f, size_t record) {
     const struct plan_file *file = &frame->plan->files[f];
     if (file->window) {
-        const char *id = column_text(frame, frame->identifiers[f], record);
-        int who = id ? frame_participant(frame, id) : NOWHERE;
-        struct site_orders orders = {.column = file->window_name};
-        map_init(&orders.map);
-        int visit = who == NOWHERE ? NOWHERE :
-            dates_visit_by_window(frame->plan, f, days_of_record(frame, f, record, (size_t)who, &orders), NULL);
-        map_release(&orders.map);
-        return visit == NOWHERE ? NO_RECORD : file->first_slot + (size_t)visit;
+        return frame->dated[f][record];
     }
     const char *code = file->by_visit ? column_text(frame, frame->visits[f], record) : NULL;
     for (size_t c = 0; code && c < file->codes.count; c++) {
