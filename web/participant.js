@@ -100,6 +100,12 @@ function actionsFor(value, discrepancy) {
   const offer = (kind) => () => offerForm(host, valueDecision(kind, data.participant, value, more), value.column);
   const proposal = discrepancy?.proposal;
   const has = value.current !== null && value.current !== "";
+  if (value.derived) { // nothing to correct in what is computed: its inputs are values of their own
+    return [make("p", { class: "quiet-text" }, `Computed: ${value.derived.formula} (${value.derived.inputs}). To change it, correct what it rests on.`),
+      make("div", { class: "actions" },
+        has ? button("Confirm as computed", offer("confirm"), { "data-key": `act-confirm-${value.column}` }) : null,
+        button("Raise a query", offer("query"), { "data-key": `act-query-${value.column}` })), host];
+  }
   return [make("div", { class: "actions" },
     proposal && discrepancy.state !== "settled" ? button(discrepancy.proposal_words ?? decisionWords(proposal), () => offerForm(host, {
       title: discrepancy.proposal_words ?? decisionWords(proposal),
@@ -163,7 +169,7 @@ function discrepancyPart(discrepancy) {
 }
 
 function valueRow(value, chosen) {
-  const changed = value.current !== value.received;
+  const changed = value.current !== value.received && !value.derived;
   const open = chosen === value.column;
   const above = data.discrepancies.some((discrepancy) => discrepancy.column === value.column && discrepancy.state !== "settled");
   return [make("tr", { class: open ? "chosen" : null },
@@ -171,7 +177,7 @@ function valueRow(value, chosen) {
       type: "button", class: "name", "data-key": `value-${value.column}`, "aria-expanded": String(open),
       on: { click: () => address.go(address.changed({ cell: open ? "" : value.column })) },
     }, value.label, value.unit ? make("small", {}, ` ${value.unit}`) : null), value.doubtful ? make("small", { class: "doubtful" }, " doubtful") : null),
-    make("td", { class: changed ? "replaced" : null }, value.received === "" ? make("em", {}, "blank") : value.received ?? "–"),
+    make("td", { class: changed ? "replaced" : null }, value.derived ? make("small", {}, "computed") : value.received === "" ? make("em", {}, "blank") : value.received ?? "–"),
     make("td", {}, value.state === "observed" ? currentWords(value) : make("em", {}, currentWords(value)),
       value.origin ? make("small", {}, ` by decision ${value.origin}`) : null)),
   open ? make("tr", { class: "chosen" }, make("td", { colspan: "3" }, above ? make("small", {}, "What can be done stands with its discrepancy above.") : actionsFor(value, null))) : null];

@@ -7,6 +7,7 @@
 extern const struct exhibit exhibit_columns;
 extern const struct exhibit exhibit_flow;
 extern const struct exhibit exhibit_baseline;
+extern const struct exhibit exhibit_derived;
 extern const struct exhibit exhibit_discrepancies;
 extern const struct exhibit exhibit_missing_grid;
 extern const struct exhibit exhibit_missing_by_arm;

@@ -49,6 +49,7 @@ struct exhibit {
     enum showing pooled; /* SHOWN_AS_ONE_ARM: arms are one, "all" */
     bool by_arm_look;    /* while coded, showing it is a look at an outcome by arm, entered in the table of looks */
     bool table_first;    /* the table is the exhibit; otherwise it stands behind a fold below the figure */
+    bool (*applies)(const struct plan *plan); /* the page leaves it out of its tabs where false; NULL: always true */
     const char *method;  /* how it is computed, in words, with its sources */
     const struct argument_rule *arguments; /* ends with a NULL name */
     bool (*compute)(struct view *view, struct fault *fault);              /* fills view->result */

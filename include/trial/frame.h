@@ -116,7 +116,7 @@ void frame_release(struct frame *frame); /* NULL is fine */
 
 /* The participant's index by binary search, or NOWHERE. */
 int frame_participant(const struct frame *frame, const char *id);
-/* Current text of a column in a 0-based record: NULL where set missing. */
+/* Current text of a column of a file in a 0-based record: NULL where set missing. */
 static inline const char *column_text(const struct frame *frame, const struct column *column, size_t record) {
     (void)frame;
     return column->changed ? column->changed[record] : cells_at(column->cells, record, column->index);
@@ -125,9 +125,10 @@ static inline const char *column_text(const struct frame *frame, const struct co
 static inline size_t frame_place(const struct frame *frame, const struct column *column, size_t participant) {
     return frame->participants[participant].record == NO_RECORD ? HELD_RECORD : frame->place[column->slot][participant];
 }
-/* The text as received, NULL where the participant has no record to read it from. */
+/* The text as received, NULL where the participant has no record to read it from, and of what is computed. */
 const char *frame_received(const struct frame *frame, const struct column *column, size_t participant);
-/* Current text of a column for a participant: NULL where set missing, held aside or without a record of the visit. */
+/* Current text of a column for a participant: NULL where set missing, held aside or without a record of the visit. Of a computed
+ * value the text it is shown with. */
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant);
 /* The slot that a file's record speaks of, by its visit's code or date; NO_RECORD where of no planned visit. */
 size_t frame_slot_of_record(const struct frame *frame, size_t file, size_t record);

@@ -219,9 +219,7 @@ int plan_outcome(const struct plan *plan, const char *id); /* index or NOWHERE *
 int plan_covariate(const struct plan *plan, const char *id);
 int plan_event(const struct plan *plan, const char *id);
 int plan_variable(const struct plan *plan, const char *column); /* index into variables or NOWHERE */
-/* Whether a variable is, or is computed from, an outcome's follow-up (or another column of the same visit in a file with one row
- * per visit), so that it was recorded after randomisation. */
-bool plan_after_randomisation(const struct plan *plan, int variable);
+int plan_derived(const struct plan *plan, const char *column); /* of "derived.ID"; index or NOWHERE */
 /* The file whose identifiers (or, by_visit, visit codes) the name means: "FILE.COLUMN". NOWHERE where it means neither. */
 int plan_identifier_file(const struct plan *plan, const char *column);
 int plan_visit_file(const struct plan *plan, const char *column);

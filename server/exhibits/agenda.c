@@ -113,7 +113,7 @@ static void write_exhibits(const struct frame *frame, int item, struct json *jso
     json_key_array(json, "exhibits");
     for (size_t i = 0; exhibits[i]; i++) {
         const struct exhibit *exhibit = exhibits[i];
-        if (exhibit->item != item) {
+        if (exhibit->item != item || (exhibit->applies && !exhibit->applies(frame->plan))) {
             continue;
         }
         json_object(json);

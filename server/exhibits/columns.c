@@ -42,6 +42,7 @@ static void describe_variable(struct view *view, struct row *row, int index) {
         variable->outcome != NOWHERE ? (frame->plan->outcomes[variable->outcome].primary ? "primary outcome" : "secondary outcome") :
         variable->event != NOWHERE   ? "event" :
         variable->kind == VARIABLE_DATE ? "date" :
+        variable->covariate == NOWHERE  ? "of a derived value" :
                                        arena_format(view->arena, "covariate, %s", kind_words(variable->kind));
     count_states(row, frame, frame->columns[index]);
     if (arms_hide_column(frame, row->column)) {

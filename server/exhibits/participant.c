@@ -3,6 +3,7 @@
 #include "exhibits/doubtful.h"
 #include "exhibits/list.h"
 #include "exhibits/words.h"
+#include "trial/derived.h"
 #include <math.h>
 #include <string.h>
 
@@ -15,6 +16,8 @@ struct value {
     bool doubtful, hidden;
     const char **on_records; /* what each record of the column's file and visit says while none is kept, else NULL */
     size_t on_record_count;
+    const struct derived *derived; /* where it is computed, else NULL; `inputs` are then what it rests on, as it now reads */
+    const char *inputs, *why;      /* why: words, where it could not be computed, else NULL */
 };
 
 struct analysis_of {
@@ -52,6 +55,20 @@ static bool is_doubtful(const struct participant_result *result, const char *col
     return false;
 }
 
+static void take_derived(struct view *view, const struct participant_result *result, struct value *value) {
+    const struct frame *frame = view->frame;
+    struct derived_value taken;
+    derived_take(&taken, frame, value->derived, result->participant);
+    value->current = frame_text(frame, value->column, result->participant);
+    value->inputs = derived_inputs(view->arena, frame, value->derived, result->participant);
+    value->why = taken.status == DERIVED_COMPUTED ? NULL : derived_status_words(taken.status);
+    value->doubtful = is_doubtful(result, value->variable->column);
+    if (taken.status == DERIVED_HELD_ASIDE) {
+        value->on_record_count = result->records.count;
+        value->on_records = ARENA_NEW(view->arena, value->on_record_count, const char *);
+    }
+}
+
 static void take_values(struct view *view, struct participant_result *result) {
     const struct frame *frame = view->frame;
     for (size_t v = 0; v < frame->plan->variable_count; v++) {
@@ -59,6 +76,11 @@ static void take_values(struct view *view, struct participant_result *result) {
         const struct column *column = frame->columns[v];
         *value = (struct value){.variable = &frame->plan->variables[v], .column = column, .state = (enum cell_state)column->state[result->participant]};
         value->hidden = arms_hide_column(frame, value->variable->column);
+        if (value->variable->derived != NOWHERE) {
+            value->derived = &frame->plan->derived[value->variable->derived];
+            take_derived(view, result, value);
+            continue;
+        }
         size_t record = frame_place(frame, column, result->participant);
         if (record != NO_RECORD && record != HELD_RECORD && !value->hidden) {
             value->received = frame_received(frame, column, result->participant);
@@ -134,8 +156,22 @@ static bool compute(struct view *view, struct fault *fault) {
     return true;
 }
 
-static void value_json(const struct value *value, struct json *json) {
-    static const char *const kinds[] = {"number", "category", "event"};
+/* How a computed value came about; null for one that was recorded. */
+static void derived_json(const struct view *view, const struct value *value, struct json *json) {
+    if (!value->derived) {
+        json_null(json);
+        return;
+    }
+    json_object(json);
+    json_field_string(json, "formula", derived_words(view->arena, value->derived));
+    json_field_string(json, "inputs", value->inputs);
+    json_field_string(json, "why", value->why);
+    json_close(json);
+}
+
+static void value_json(const struct view *view, const struct value *value, struct json *json) {
+    static const char *const kinds[] = {[VARIABLE_NUMBER] = "number", [VARIABLE_CATEGORY] = "category", [VARIABLE_EVENT] = "event",
+        [VARIABLE_DATE] = "date"};
     json_object(json);
     json_field_string(json, "column", value->variable->column);
     json_field_string(json, "label", value->variable->label);
@@ -144,7 +180,10 @@ static void value_json(const struct value *value, struct json *json) {
     json_field_string(json, "received", value->received);
     json_field_string(json, "current", value->current);
     json_field_string(json, "state", value->hidden ? NULL : cell_state_name(value->state));
-    json_field_string(json, "words", value->hidden ? "hidden while blinded: its levels tell the arms apart" : cell_state_words(value->state));
+    json_field_string(json, "words", value->hidden ? "hidden while blinded: its levels tell the arms apart" :
+        value->why ? value->why : cell_state_words(value->state));
+    json_key(json, "derived");
+    derived_json(view, value, json);
     json_field_integer(json, "origin", value->origin);
     json_field_bool(json, "doubtful", value->doubtful);
     json_key_array(json, "on_records");
@@ -217,7 +256,7 @@ static void json(const struct view *view, struct json *json) {
     files_json(frame->plan, result, json);
     json_key_array(json, "values");
     for (size_t i = 0; i < result->value_count; i++) {
-        value_json(&result->values[i], json);
+        value_json(view, &result->values[i], json);
     }
     json_close(json);
     json_key_array(json, "discrepancies");
@@ -261,7 +300,12 @@ static void tables(const struct view *view, struct table **tables, size_t *count
         table_put_header(values, value->variable->label);
         table_put_text(values, value->received);
         table_put_text(values, value->current);
-        table_put_text(values, value->hidden ? "hidden while blinded" : cell_state_words(value->state));
+        if (value->derived) {
+            table_put_format(values, "%s: %s (%s)", value->why ? value->why : "computed", derived_words(view->arena, value->derived),
+                value->inputs);
+        } else {
+            table_put_text(values, value->hidden ? "hidden while blinded" : cell_state_words(value->state));
+        }
     }
     tables[(*count)++] = values;
     struct table *analyses = table_new(view->arena, "Analyses");

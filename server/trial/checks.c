@@ -6,6 +6,7 @@
 #include "intake/number.h"
 #include "server/trial/checks-parts.h"
 #include "trial/arms.h"
+#include "trial/derived.h"
 #include <math.h>
 #include <stdio.h>
 #include <stdlib.h>
@@ -40,6 +41,7 @@ enum check_kind {
     CHECK_PLAUSIBLE,
     CHECK_ELIGIBLE,
     CHECK_SCALE,
+    CHECK_DERIVED,
     CHECK_DATE_UNREADABLE,
     CHECK_DATE_ORDER,
     CHECK_DATE_AMBIGUOUS,
@@ -84,6 +86,8 @@ const struct check checks[] = {
         SEVERITY_MUST_SETTLE},
     [CHECK_SCALE] = {"not-on-scale", "Not on the logarithmic scale", "A value that is not positive on an outcome analysed on log10.",
         SEVERITY_MUST_SETTLE},
+    [CHECK_DERIVED] = {"derived-differs", "Unlike what it is derived from",
+        "A column of the file says another value than its formula gives.", SEVERITY_MUST_SETTLE},
     [CHECK_DATE_UNREADABLE] = {"unreadable-date", "Unreadable dates", "A cell of a date's column that is no date in the declared order.",
         SEVERITY_MUST_SETTLE},
     [CHECK_DATE_ORDER] = {"date-order", "Dates that read only in another order",
@@ -898,6 +902,13 @@ static const char *slip_words(struct finding *finding, const struct range *range
     return "";
 }
 
+/* Of a computed value, what it is computed from, as a sentence to put behind another. */
+static const char *computed_from(struct finding *finding, const struct variable *variable, size_t p) {
+    const struct derived *derived = &finding->frame->plan->derived[variable->derived];
+    return arena_format(finding->arena, " It is computed: %s (%s).", derived_words(finding->arena, derived),
+        derived_inputs(finding->arena, finding->frame, derived, p));
+}
+
 static void check_range(struct finding *finding, enum check_kind check, const struct column *column,
     const struct variable *variable, const struct range *range) {
     const struct frame *frame = finding->frame;
@@ -917,7 +928,9 @@ static void check_range(struct finding *finding, enum check_kind check, const st
         new->message = arena_format(finding->arena, "%s of %s is %s%s%s, outside the %s range %s to %s.%s", variable->label, id,
             number_words(finding, value), *unit ? " " : "", unit, check == CHECK_ELIGIBLE ? "eligible" : "plausible",
             number_words(finding, range->low), number_words(finding, range->high),
-            check == CHECK_PLAUSIBLE ? slip_words(finding, range, value) : " A breach of eligibility is classified, not deleted.");
+            variable->derived != NOWHERE ? computed_from(finding, variable, p) :
+            check == CHECK_PLAUSIBLE     ? slip_words(finding, range, value) :
+                                           " A breach of eligibility is classified, not deleted.");
     }
 }
 
@@ -936,6 +949,25 @@ static void check_scale(struct finding *finding, const struct column *column, co
     }
 }
 
+static void check_claims(struct finding *finding, const struct column *column, const struct variable *variable) {
+    const struct frame *frame = finding->frame;
+    const struct derived *derived = &frame->plan->derived[variable->derived];
+    for (size_t p = 0; derived->claims && p < frame->participant_count; p++) {
+        struct derived_value taken;
+        derived_take(&taken, frame, derived, p);
+        if (!taken.differs) {
+            continue;
+        }
+        const char *id = frame->participants[p].id, *space = *derived->unit ? " " : "";
+        struct discrepancy *new = found(finding, CHECK_DERIVED, derived->claims, id);
+        concerns(finding, new, id);
+        new->value = frame_text(frame, frame->columns[derived->claims_variable], p);
+        new->message = arena_format(finding->arena, "%s of %s is %s%s%s by the file (%s), but %s%s%s as %s (%s); %s a difference of %.3g.", derived->label, id, new->value, space, derived->unit, derived->claims, frame_text(frame, column, p),
+            space, derived->unit, derived_words(finding->arena, derived), derived_inputs(finding->arena, frame, derived, p),
+            isnan(derived->tolerance) ? "rounding explains" : "the plan allows", taken.tolerance);
+    }
+}
+
 /* ---- all of them, in the order of the table ---- */
 
 static void check_variable(struct finding *finding, enum check_kind check, size_t v) {
@@ -947,7 +979,11 @@ static void check_variable(struct finding *finding, enum check_kind check, size_
     }
     bool number = variable->kind == VARIABLE_NUMBER, category = variable->kind == VARIABLE_CATEGORY;
     bool log10_outcome = variable->outcome != NOWHERE && frame->scales[variable->outcome] == SCALE_LOG10;
-    if (check == CHECK_MISSING_CODE) {
+    if (variable->derived != NOWHERE && check == CHECK_DERIVED) {
+        check_claims(finding, column, variable);
+    } else if (variable->derived != NOWHERE && check == CHECK_MISSING_CODE) {
+        return; /* codes are those of the columns it rests on */
+    } else if (check == CHECK_MISSING_CODE) {
         settled_codes(finding, column, variable);
         if (number) {
             suspect_codes(finding, column, variable);

@@ -3,6 +3,7 @@
 #include "base/map.h"
 #include "intake/number.h"
 #include "trial/arms.h"
+#include "trial/derived.h"
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
@@ -1077,12 +1078,57 @@ static bool build_participants(struct build *build) {
     return keep_records(build, KEEPING_CODED) && build_windows(build) && keep_records(build, KEEPING_WINDOWED);
 }
 
+/* A confirmation is the one decision on a computed value that the replay looks at: of the value as it is shown. */
+static bool confirmations_fit(struct build *build, const struct column *column, const char *name) {
+    for (size_t i = 0; i < build->count; i++) {
+        const struct decision *decision = &build->frame->decisions[i];
+        if (!is_new(build, i) || !build->stands[i] || decision->kind != DECISION_CONFIRM || strcmp(decision->column, name) != 0) {
+            continue;
+        }
+        int who = decision->participant ? frame_participant(build->frame, decision->participant) : NOWHERE;
+        if (who == NOWHERE) {
+            return refuse(build, i, decision->participant ? "names a participant who is not in the file" :
+                "is about a computed value; say whose with \"participant\"");
+        }
+        if (!same_text(column->texts[who], decision->value)) {
+            return refuse(build, i, "confirms a value that is not the one now computed");
+        }
+    }
+    return true;
+}
+
+/* A computed column, shared where none of the columns it rests on is another than before. */
+static bool build_derived(struct build *build, size_t d, bool share) {
+    struct frame *frame = build->frame;
+    const struct derived *derived = &frame->plan->derived[d];
+    struct column **column = &frame->columns[derived->variable];
+    for (size_t k = 0; k < derived->of_count && share; k++) {
+        share = build->previous->columns[derived->of[k].variable] == frame->columns[derived->of[k].variable];
+    }
+    if (share) {
+        *column = column_retain(build->previous->columns[derived->variable]);
+    } else {
+        *column = memory_new(1, sizeof **column);
+        atomic_init(&(*column)->references, 1);
+        arena_init(&(*column)->arena);
+        (*column)->kind = VARIABLE_NUMBER;
+        derived_fill(*column, frame, derived);
+        hash_column(frame, *column);
+    }
+    return confirmations_fit(build, *column, derived->column);
+}
+
 static bool build_columns(struct build *build) {
     struct frame *frame = build->frame;
     const struct plan *plan = frame->plan;
     bool share = places_shared(build);
     for (size_t v = 0; v < plan->variable_count; v++) {
-        if (!build_variable(build, v, share)) {
+        if (plan->variables[v].derived == NOWHERE && !build_variable(build, v, share)) {
+            return false;
+        }
+    }
+    for (size_t d = 0; d < plan->derived_count; d++) {
+        if (!build_derived(build, d, share)) {
             return false;
         }
     }
@@ -1230,6 +1276,11 @@ static bool column_fits(struct build *build, size_t i) {
         return refuse(build, i, arena_format(&build->frame->arena, "names the column \"%.60s\", which the plan gives no meaning",
             decision->column));
     }
+    bool of_value = decision->kind == DECISION_CONFIRM || decision->kind == DECISION_QUERY;
+    if (plan_derived(plan, decision->column) != NOWHERE && !of_value) {
+        return refuse(build, i, arena_format(&build->frame->arena, "is about \"%.60s\", which is computed; decide about the columns it rests on",
+            decision->column));
+    }
     bool number = false;
     for (size_t v = 0; v < plan->variable_count && !number; v++) {
         number = plan->variables[v].kind == VARIABLE_NUMBER && plan_covers(decision->column, plan->variables[v].column);
@@ -1313,6 +1364,15 @@ static bool new_ones_fit(struct build *build) {
     return true;
 }
 
+static void hash_derived(struct hash *hash, const struct frame *frame, const struct derived *derived) {
+    hash_field(hash, derived->column);
+    hash_field(hash, frame->columns[derived->variable]->hash);
+    for (size_t k = 0; k < derived->of_count; k++) {
+        hash_field(hash, frame->columns[derived->of[k].variable]->hash);
+    }
+    hash_field(hash, derived->claims ? frame->columns[derived->claims_variable]->hash : NULL);
+}
+
 static void hash_state(struct frame *frame) {
     struct hash hash;
     hash_init(&hash);
@@ -1342,6 +1402,9 @@ static void hash_state(struct frame *frame) {
         hash_field(&hash, moment_name(moment->kind));
         hash_field(&hash, moment->label);
         hash_field(&hash, frame->columns[moment->variable]->hash);
+    }
+    for (size_t i = 0; i < frame->plan->derived_count; i++) {
+        hash_derived(&hash, frame, &frame->plan->derived[i]);
     }
     hash_field(&hash, frame->arm ? frame->arm->hash : NULL);
     for (size_t i = 0; i < frame->plan->outcome_count; i++) {
@@ -1404,11 +1467,17 @@ void frame_release(struct frame *frame) {
 }
 
 const char *frame_text(const struct frame *frame, const struct column *column, size_t participant) {
+    if (column->texts) {
+        return column->texts[participant];
+    }
     size_t record = frame_place(frame, column, participant);
     return record == NO_RECORD || record == HELD_RECORD ? NULL : column_text(frame, column, record);
 }
 
 const char *frame_received(const struct frame *frame, const struct column *column, size_t participant) {
+    if (column->texts) {
+        return NULL;
+    }
     size_t record = frame_place(frame, column, participant);
     return record == NO_RECORD || record == HELD_RECORD ? NULL : cells_at(column->cells, record, column->index);
 }

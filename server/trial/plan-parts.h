@@ -43,6 +43,17 @@ bool read_column(struct reader *reader, const cJSON *item, const char *path, con
 /* In plan-screening.c: the key "screening". */
 bool read_screening(struct reader *reader, const cJSON *root);
 
+/* A column in one text: derived.ID, FILE.COLUMN, FILE.COLUMN@CODE, or a column of the first file. */
+bool settle_text(struct reader *reader, const char *path, const char *text, const char **name, struct place *place);
+bool of_a_file(struct reader *reader, const char *path, const struct place *place); /* not a derived value */
+/* Adds the column to the variables, or finds it there; a column has one kind. */
+bool place_variable(struct reader *reader, const struct variable *wanted, int *index);
+
+/* In plan-derived.c: an item of the key "derived"; its variables, after all others; what may not rest on a follow-up. */
+bool read_derived(struct reader *reader, const cJSON *item, const char *path);
+bool settle_derived(struct reader *reader);
+bool nothing_comes_late(struct reader *reader);
+
 /* In plan-dates.c: the key "dates". */
 bool read_dates(struct reader *reader, const cJSON *root);
 #endif

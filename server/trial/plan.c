@@ -22,8 +22,10 @@ static bool read_file(struct reader *reader, const cJSON *item, const char *path
         !read_texts(reader, item, path, "codes", &file->codes)) {
         return false;
     }
-    if (strpbrk(file->id, ".@,=& ")) {
-        return wrong(reader, join(reader, path, "id"), "must be one word without . @ , = or &");
+    bool derived = strcmp(file->id, "derived") == 0;
+    if (derived || strpbrk(file->id, ".@,=& ")) {
+        return wrong(reader, join(reader, path, "id"), derived ? "\"derived\" means the derived values; give the file another" :
+            "must be one word without . @ , = or &");
     }
     for (size_t i = 0; i < plan->file_count; i++) {
         if (strcmp(plan->files[i].id, file->id) == 0) {
@@ -130,9 +132,19 @@ static bool settle_place(struct reader *reader, const char *path, size_t file, c
         arena_format(&plan->arena, "\"%.60s\" is not among the codes of the file \"%s\"", visit, from->id));
 }
 
-/* A column in one text: FILE.COLUMN, FILE.COLUMN@CODE, or a column of the first file. */
-static bool settle_text(struct reader *reader, const char *path, const char *text, const char **name, struct place *place) {
+/* A column in one text: derived.ID, FILE.COLUMN, FILE.COLUMN@CODE, or a column of the first file. */
+bool settle_text(struct reader *reader, const char *path, const char *text, const char **name, struct place *place) {
     struct plan *plan = reader->plan;
+    int derived = plan_derived(plan, text);
+    if (derived != NOWHERE) {
+        *name = plan->derived[derived].column;
+        *place = (struct place){0};
+        return true;
+    }
+    if (plan->derived && strncmp(text, "derived.", strlen("derived.")) == 0) {
+        return wrong(reader, path, arena_format(&plan->arena,
+            "\"%.60s\" is not the name of a derived value of this plan; one may rest on those before it in the list only", text));
+    }
     const char *dot = strchr(text, '.');
     int found = dot ? file_of(plan, text, (size_t)(dot - text)) : NOWHERE;
     if (found == NOWHERE) {
@@ -143,12 +155,17 @@ static bool settle_text(struct reader *reader, const char *path, const char *tex
     return settle_place(reader, path, (size_t)found, column, at ? at + 1 : NULL, name, place);
 }
 
+bool of_a_file(struct reader *reader, const char *path, const struct place *place) {
+    return place->column || wrong(reader, path, "must be a column of a file; a derived value stands for numbers only");
+}
+
 /* A key whose text names a column; left alone where the key is not there. */
 bool read_column(struct reader *reader, const cJSON *item, const char *path, const char *key, const char **name,
     struct place *place) {
     const char *text = NULL;
     return read_text(reader, item, path, key, false, &text) &&
-           (!text || settle_text(reader, join(reader, path, key), text, name, place));
+           (!text || (settle_text(reader, join(reader, path, key), text, name, place) &&
+                         of_a_file(reader, join(reader, path, key), place)));
 }
 
 /* "column", with "file" and "visit" beside it where there are several files. */
@@ -182,7 +199,8 @@ static bool read_arms(struct reader *reader, const cJSON *root) {
         return true;
     }
     if (!keys_known(reader, arm, "arm", "column levels file visit") ||
-        !read_place(reader, arm, "arm", &plan->arm_column, &plan->arm_place)) {
+        !read_place(reader, arm, "arm", &plan->arm_column, &plan->arm_place) ||
+        !of_a_file(reader, "arm.column", &plan->arm_place)) {
         return false;
     }
     const cJSON *levels = member(arm, "levels");
@@ -430,6 +448,7 @@ static bool read_event(struct reader *reader, const cJSON *item, const char *pat
         !read_text(reader, item, path, "id", true, &event->id) || !id_is_new(reader, path, event->id) ||
         !read_text(reader, item, path, "label", false, &event->label) ||
         !read_place(reader, item, path, &event->column, &event->place) ||
+        !of_a_file(reader, join(reader, path, "column"), &event->place) ||
         !read_texts(reader, item, path, "yes", &event->yes) || !read_texts(reader, item, path, "no", &event->no) ||
         !read_column(reader, item, path, "date", &event->date, &event->date_place) ||
         !read_column(reader, item, path, "reason", &event->reason, &event->reason_place)) {
@@ -494,7 +513,7 @@ static bool same_codes(const struct texts *a, const struct texts *b) {
 }
 
 /* Adds the column to the variables, or finds it there; a column has one kind. */
-static bool place_variable(struct reader *reader, const struct variable *wanted, int *index) {
+bool place_variable(struct reader *reader, const struct variable *wanted, int *index) {
     struct plan *plan = reader->plan;
     bool identifier = plan_identifier_file(plan, wanted->column) != NOWHERE;
     if (identifier || (plan->arm_column && strcmp(wanted->column, plan->arm_column) == 0)) {
@@ -544,6 +563,9 @@ static bool settle_variables(struct reader *reader) {
     size_t room = plan->covariate_count + plan->event_count + (plan->dates ? plan->dates->moment_count : 0);
     for (size_t i = 0; i < plan->outcome_count; i++) {
         room += plan->outcomes[i].visit_count;
+    }
+    for (size_t i = 0; i < plan->derived_count; i++) {
+        room += 2 + plan->derived[i].of_count;
     }
     plan->variables = ARENA_NEW(&plan->arena, room, struct variable);
     for (size_t i = 0; i < plan->covariate_count; i++) {
@@ -610,7 +632,7 @@ static bool settle_variables(struct reader *reader) {
             return false;
         }
     }
-    return true;
+    return settle_derived(reader);
 }
 
 /* A column called NAME@SOMETHING by its file would share the decisions on one called NAME. */
@@ -670,28 +692,18 @@ static bool settle_settings(struct reader *reader, const cJSON *root) {
     }
     const cJSON *site = member(root, "site");
     return !site || (keys_known(reader, site, "site", "column file visit") &&
-                        read_place(reader, site, "site", &plan->site_column, &plan->site_place));
-}
-
-static bool refuse_later_keys(struct reader *reader, const cJSON *root) {
-    static const char *const later[] = {"derived"};
-    for (size_t i = 0; i < sizeof later / sizeof *later; i++) {
-        if (member(root, later[i])) {
-            return fault_set(reader->fault, FAULT_INPUT,
-                "%s: this version of Evenhand does not take \"%s\" yet; leave the key out", reader->name, later[i]);
-        }
-    }
-    return true;
+                        read_place(reader, site, "site", &plan->site_column, &plan->site_place) &&
+                        of_a_file(reader, "site.column", &plan->site_place));
 }
 
 static bool read_plan(struct reader *reader, const cJSON *root) {
     struct plan *plan = reader->plan;
-    if (!refuse_later_keys(reader, root) ||
-        !keys_known(reader, root, "",
+    if (!keys_known(reader, root, "",
             "title participant arm missing_codes outcomes covariates events adjust_for missing_baseline subgroups confidence "
-            "blinding seed site stratified_by standard_error files screening dates") ||
+            "blinding seed site stratified_by standard_error files screening dates derived") ||
         !read_text(reader, root, "", "title", true, &plan->title) ||
         !read_text(reader, root, "", "participant", true, &plan->participant) || !settle_files(reader, root) ||
+        !read_list(reader, root, "derived", (void **)&plan->derived, sizeof *plan->derived, read_derived) ||
         !read_arms(reader, root) ||
         !read_code_list(reader, root, "", &plan->missing_codes) ||
         !read_list(reader, root, "outcomes", (void **)&plan->outcomes, sizeof *plan->outcomes, read_outcome) ||
@@ -705,8 +717,8 @@ static bool read_plan(struct reader *reader, const cJSON *root) {
     if (plan->arm_column && strcmp(plan->arm_column, plan->participant) == 0) {
         return wrong(reader, "arm.column", "is the participant's column; a column has one meaning");
     }
-    return read_dates(reader, root) && settle_variables(reader) && names_differ(reader) && settle_settings(reader, root) &&
-           settle_standard_error(reader, root) && read_screening(reader, root);
+    return read_dates(reader, root) && settle_variables(reader) && names_differ(reader) && nothing_comes_late(reader) &&
+           settle_settings(reader, root) && settle_standard_error(reader, root) && read_screening(reader, root);
 }
 
 /* Where in the text JSON stopped being JSON: 1-based line and column, in characters. */
@@ -772,6 +784,15 @@ int plan_outcome(const struct plan *plan, const char *id) {
 int plan_covariate(const struct plan *plan, const char *id) {
     for (size_t i = 0; i < plan->covariate_count; i++) {
         if (strcmp(plan->covariates[i].id, id) == 0) {
+            return (int)i;
+        }
+    }
+    return NOWHERE;
+}
+
+int plan_derived(const struct plan *plan, const char *column) {
+    for (size_t i = 0; i < plan->derived_count; i++) {
+        if (strcmp(plan->derived[i].column, column) == 0) {
             return (int)i;
         }
     }

@@ -78,7 +78,9 @@ static bool plan_fits(const struct plan *plan, const struct cells *cells, const 
         return false;
     }
     for (size_t i = 0; i < plan->variable_count; i++) {
-        if (!column_is_there(cells, &plan->variables[i].place, plan->variables[i].label, names, plan_name, fault)) {
+        bool of_a_file = plan->variables[i].derived == NOWHERE;
+        if (of_a_file &&
+            !column_is_there(cells, &plan->variables[i].place, plan->variables[i].label, names, plan_name, fault)) {
             return false;
         }
     }
@@ -224,6 +226,9 @@ static size_t planned_decisions(const struct plan *plan, const struct cells *cel
     struct planning planning = {plan, arena, NULL, 0, 0};
     for (size_t v = 0; v < plan->variable_count; v++) {
         const struct variable *variable = &plan->variables[v];
+        if (variable->derived != NOWHERE) {
+            continue;
+        }
         const struct cells *file = &cells[variable->place.file];
         const char *column = plan_column_name(arena, plan, variable->place.file, variable->place.column);
         for (size_t c = 0; c < variable->missing_codes->count; c++) {

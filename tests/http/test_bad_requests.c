@@ -121,7 +121,7 @@ static const struct {
     {"\"title\":\"T\"", "\"title\":\"T\",\"colour\":1",
         "the plan: the key \"colour\" is not one a plan has here; known are: title "
         "participant arm missing_codes outcomes covariates events adjust_for missing_baseline "
-        "subgroups confidence blinding seed site stratified_by standard_error files screening dates"},
+        "subgroups confidence blinding seed site stratified_by standard_error files screening dates derived"},
     {"\"title\":\"T\"", "\"title\":\"T\",\"title\":\"U\"", "the plan: the key \"title\" stands there twice; keep one"},
     {",\"reference\":true", "",
         "the plan: arm.levels must mark exactly one arm as the reference, with \"reference\": true"},

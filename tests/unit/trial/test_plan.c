@@ -201,7 +201,7 @@ static const struct {
     const char *find, *put, *sentence;
 } broken[] = {
     {"'title':", "'titel':", "plan.json: the key \"titel\" is not one a plan has here; known are: title participant arm missing_codes "
-        "outcomes covariates events adjust_for missing_baseline subgroups confidence blinding seed site stratified_by standard_error files screening dates"},
+        "outcomes covariates events adjust_for missing_baseline subgroups confidence blinding seed site stratified_by standard_error files screening dates derived"},
     {"'title': 'Harbour Trial',", "'title': 'A', 'title': 'B',", "plan.json: the key \"title\" stands there twice; keep one"},
     {"'title': 'Harbour Trial',", "", "plan.json: title is missing; a plan needs it"},
     {"'Harbour Trial'", "''", "plan.json: title must be a text in quotes that is not empty"},
@@ -277,7 +277,6 @@ static const struct {
     {"9007199254740992", "1e300", "plan.json: seed must be a whole number from 0"},
     {"'site': {'column': 'centre'}", "'site': 'centre'", "plan.json: site must be an object in braces"},
     {"'outcomes': [", "'files': [], 'outcomes': [", "plan.json: files is empty; name at least one file, or leave the key out"},
-    {"'outcomes': [", "'derived': [], 'outcomes': [", "plan.json: this version of Evenhand does not take \"derived\" yet; leave the key out"},
     {"'kind': 'rescue'", "'strategy': 'ignore'",
         "plan.json: events[0].strategy must be treatment-policy, hypothetical, composite, while-on-treatment or principal-stratum"},
     {"'reason': 'rescue_why'}", "'reason': 'rescue_why'}, {'id': 'again', 'column': 'rescue', 'yes': ['1', 'Y'], 'no': ['N']}",
@@ -293,6 +292,7 @@ static const struct {
         "plan.json: screening gives reasons for more people than were assessed"},
     {"'outcomes': [", "'screening': {'source': 'log', 'assessed': 9, 'reasons': [{'reason': 'a', 'n': 1}, {'reason': 'a', 'n': 1}]}, 'outcomes': [",
         "plan.json: screening.reasons[1].reason is that of an entry before it; add their numbers up"},
+    {"'outcomes': [", "'derived': {}, 'outcomes': [", "plan.json: derived must be a list in square brackets"},
     {"'Female'", "'Femme \xE9'", "plan.json, line 1: a character that is not UTF-8; save the file as UTF-8 and try again"},
 };
 
