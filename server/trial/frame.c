@@ -307,7 +307,7 @@ static size_t record_meant(
     if (column->kind == VARIABLE_PARTICIPANT) {
         return record_of_identifier(frame, column, decision->participant, why);
     }
-    if (frame->windows[column->file] == NULL && frame->plan->files[column->file].window) { /* it is being made: no places yet */
+    if (column == frame->windows[column->file]) { /* records have no place before their date is read */
         *why = "is about a date by which visits are found; say which record with \"row\"";
         return NO_RECORD;
     }

@@ -430,6 +430,192 @@ static void test_states(void **state) {
     close_dated(&dated);
 }
 
+/* ---- visits found by date ---- */
+
+static const char window_plan[] =
+    "{'title': 'T', 'participant': 'pid', 'site': {'column': 'people.site'},"
+    " 'files': [{'id': 'people', 'participant': 'pid'},"
+    "   {'id': 'visits', 'layout': 'visit', 'participant': 'pid', 'codes': ['0', '8', '16']}],"
+    " 'outcomes': [{'id': 'y', 'label': 'Why', 'role': 'primary', 'better': 'lower', 'visits': ["
+    "   {'label': 'Baseline', 'file': 'visits', 'visit': '0', 'column': 'y'}, {'label': '8 weeks', 'file': 'visits', 'visit': '8', 'column': 'y'},"
+    "   {'label': '16 weeks', 'file': 'visits', 'visit': '16', 'column': 'y'}]}],"
+    " 'dates': {'order': 'D/M/Y', 'files': {'people': 'Y/M/D'}, 'randomised': {'column': 'people.rand'}, 'visits': ["
+    "   {'label': 'Baseline', 'file': 'visits', 'visit': '0', 'column': 'on', 'target': 0, 'window': [-14, 14]},"
+    "   {'label': '8 weeks', 'file': 'visits', 'visit': '8', 'column': 'on', 'target': 56, 'window': [-28, 28]},"
+    "   {'label': '16 weeks', 'file': 'visits', 'visit': '16', 'column': 'on', 'target': 112, 'window': [-28, 28]}],"
+    "  'by_window': {'file': 'visits', 'column': 'on'}}}";
+
+/* Randomised on 1 January 2026: day 56 is 26 February, day 112 is 23 April, day 84, between them, 26 March. */
+static const char window_people[] = "pid,site,rand\nP1,01,2026/01/01\nP2,01,2026/01/01\nP3,02,2026/01/01\nP4,02,\n";
+static const char window_visits[] = "pid,on,y\n"
+                                    "P1,30/12/2025,10\n" /* 1: baseline, 2 days before */
+                                    "P1,20/02/2026,11\n" /* 2: 8 weeks, 6 days before: farther than the next */
+                                    "P1,01/03/2026,12\n" /* 3: 8 weeks, 3 days after: stands */
+                                    "P1,26/03/2026,13\n" /* 4: day 84, as near to 8 as to 16 weeks: the later */
+                                    "P1,01/06/2026,14\n" /* 5: day 151, in no window */
+                                    "P2,24/02/2026,20\n" /* 6: 2 days before */
+                                    "P2,28/02/2026,21\n" /* 7: 2 days after: as near, the later stands */
+                                    "P2,23/04/2026,22\n" /* 8: two of one day: held aside */
+                                    "P2,23/04/2026,23\n" /* 9 */
+                                    "P3,03/13/2026,30\n" /* 10: reads only as M/D/Y */
+                                    "P3,01/02/2026,31\n" /* 11 */
+                                    "P4,01/01/2026,40\n" /* 12: no date of randomisation */
+                                    "P9,01/01/2026,90\n" /* 13: nobody of the first file */
+                                    ",01/01/2026,91\n"   /* 14: nobody */
+                                    "P1,,92\n";          /* 15: no date */
+
+static void open_windows(struct dated *dated) {
+    const char *const files[] = {window_people, window_visits};
+    arena_init(&dated->arena);
+    case_open_files(&dated->c, files, 2, window_plan);
+    look(dated);
+}
+
+static void expect_cell(struct dated *dated, const char *id, const char *column, double value, enum cell_state state) {
+    assert_int_equal(case_state(&dated->c, id, column), state);
+    near(case_number(&dated->c, id, column), value, 0, 0, column);
+}
+
+static void test_windows(void **state) {
+    (void)state;
+    struct dated dated;
+    open_windows(&dated);
+    expect_cell(&dated, "P1", "visits.y@0", 10, CELL_OBSERVED);
+    expect_cell(&dated, "P1", "visits.y@8", 12, CELL_OBSERVED);
+    expect_cell(&dated, "P1", "visits.y@16", 13, CELL_OBSERVED);
+    expect_cell(&dated, "P2", "visits.y@0", (double)NAN, CELL_BLANK);
+    expect_cell(&dated, "P2", "visits.y@8", 21, CELL_OBSERVED);
+    expect_cell(&dated, "P2", "visits.y@16", (double)NAN, CELL_HELD_ASIDE);
+    expect_cell(&dated, "P3", "visits.y@8", 31, CELL_OBSERVED); /* 1 February is day 31, 25 before the target */
+    expect_cell(&dated, "P4", "visits.y@0", (double)NAN, CELL_BLANK);
+    expect_text(day_of(&dated, "P1", "visits.on@8"), "2026-03-01", "the date goes with its record");
+    const struct join *join = &dated.c.frame->joins[1];
+    assert_int_equal(join->matched, 9);   /* 1 to 4, 6 to 9, 11 */
+    assert_int_equal(join->farther, 2);   /* 2, 6 */
+    assert_int_equal(join->ties, 2);      /* 4 by targets, 7 by records */
+    assert_int_equal(join->unplanned, 1); /* 5 */
+    assert_int_equal(join->undated, 3);   /* 10, 12, 15 */
+    assert_int_equal(join->unmatched, 1);
+    assert_int_equal(join->blank, 1);
+    assert_int_equal(join->doubled, 1);
+    expect_found(&dated, "outside-window/visits.on/P1/record 5",
+        "The date of P1 (visits, record 5) is 2026-06-01, day 151 after randomisation, in no visit's window; what the record says is in no "
+        "analysis, and counted.", NULL);
+    /* one site's other order; read so, record 10 is of day 71, 15 after the 8 weeks */
+    expect_found(&dated, "date-order/visits.on/site 02",
+        "Site 02, visits.on: 1 of 3 dates cannot be read as D/M/Y; all of them read as M/D/Y (month, day, year).",
+        "{'kind':'date-order','column':'visits.on','order':'M/D/Y','site':'02'}");
+    close_dated(&dated);
+}
+
+/* Decisions move records between visits, and taken back leave no trace; sharing columns between versions changes nothing. */
+static void test_windows_follow_decisions(void **state) {
+    (void)state;
+    static const struct {
+        const char *decisions, *id, *column;
+        double value;
+        enum cell_state state;
+    } steps[] = {
+        {"[{'kind': 'keep-record', 'file': 'visits', 'participant': 'P2', 'row': 9, 'reason': 'r'}]", "P2", "visits.y@16", 23, CELL_OBSERVED},
+        {"[{'kind': 'date-order', 'column': 'visits.on', 'order': 'M/D/Y', 'site': '02', 'reason': 'r'}]", "P3", "visits.y@8", 30, CELL_OBSERVED},
+        {"[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'row': 5, 'from': '01/06/2026', 'to': '2026-04-22', 'reason': 'r'}]",
+            "P1", "visits.y@16", 14, CELL_OBSERVED},
+        {"[{'kind': 'correct', 'column': 'people.rand', 'participant': 'P4', 'from': '', 'to': '2025-12-30', 'reason': 'r'}]", "P4",
+            "visits.y@0", 40, CELL_OBSERVED},
+        {"[{'kind': 'set-missing', 'column': 'visits.on', 'participant': 'P1', 'row': 3, 'from': '01/03/2026', 'reason': 'r'}]", "P1",
+            "visits.y@8", 11, CELL_OBSERVED},
+        {"[{'kind': 'correct', 'column': 'visits.y@8', 'participant': 'P1', 'from': '11', 'to': '111', 'reason': 'r'}]", "P1", "visits.y@8",
+            111, CELL_OBSERVED},
+        {"[{'kind': 'read-as', 'column': 'visits.pid', 'from': 'P9', 'to': 'P3', 'reason': 'r'}]", "P3", "visits.y@0", 90, CELL_OBSERVED},
+    };
+    enum { STEPS = sizeof steps / sizeof *steps };
+    struct dated dated;
+    open_windows(&dated);
+    char states[STEPS + 1][HASH_SIZE];
+    memcpy(states[0], dated.c.frame->state_sha256, HASH_SIZE);
+    for (size_t i = 0; i < STEPS; i++) {
+        case_must(&dated.c, steps[i].decisions);
+        expect_cell(&dated, steps[i].id, steps[i].column, steps[i].value, steps[i].state);
+        struct frame *fresh = case_build(&dated.c, dated.c.count, NULL, false);
+        assert_string_equal(fresh->state_sha256, dated.c.frame->state_sha256);
+        frame_release(fresh);
+        memcpy(states[i + 1], dated.c.frame->state_sha256, HASH_SIZE);
+        look(&dated);
+    }
+    for (size_t i = STEPS; i-- > 0;) {
+        case_must(&dated.c, arena_format(&dated.arena, "[{'kind': 'reverse', 'number': %zu, 'reason': 'r'}]", i + 1));
+        assert_string_equal(dated.c.frame->state_sha256, states[i]);
+    }
+    case_refused(&dated.c, "[{'kind': 'correct', 'column': 'visits.on@8', 'participant': 'P1', 'from': '01/03/2026', 'to': '2026-03-02', 'reason': 'r'}]",
+        "decision 1 of the batch (correct) is about one visit of a date by which visits are found; name visits.on and the record's row; nothing "
+        "was recorded");
+    case_refused(&dated.c, "[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'from': '01/03/2026', 'to': '2026-03-02', 'reason': 'r'}]",
+        "decision 1 of the batch (correct) is about a date by which visits are found; say which record with \"row\"; nothing was recorded");
+    close_dated(&dated);
+}
+
+/* A correction of a visit's value does not fall on another record that a date corrected since has put in its place. */
+static void test_corrections_stay_with_their_value(void **state) {
+    (void)state;
+    struct dated dated;
+    open_windows(&dated);
+    case_must(&dated.c, "[{'kind': 'correct', 'column': 'visits.y@8', 'participant': 'P1', 'from': '12', 'to': '120', 'reason': 'r'}]");
+    case_must(&dated.c, "[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'row': 2, 'from': '20/02/2026', 'to': '2026-02-26', 'reason': 'r'}]");
+    expect_cell(&dated, "P1", "visits.y@8", 11, CELL_OBSERVED);
+    close_dated(&dated);
+}
+
+/* ---- plans ---- */
+
+static void test_broken_plans(void **state) {
+    (void)state;
+    static const struct {
+        const char *from, *to, *sentence;
+    } cases[] = {
+        {"'order': 'D/M/Y', ", "", "plan.json: dates.order is missing: say how dates are written, such as \"D/M/Y\"; it is never guessed"},
+        {"'order': 'D/M/Y'", "'order': 'DMY'", "plan.json: dates.order must be an order of dates, one of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, D/M/YY, "
+            "M/D/YY, YY/M/D, D-MON-YY, serial-1900, serial-1904"},
+        {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'mood': 1", "plan.json: the key \"mood\" in dates is not one a plan has here; known are: order files "
+            "sites earliest randomised visits stopped withdrew died by_window"},
+        {"{'people': 'Y/M/D'}", "{'persons': 'Y/M/D'}", "plan.json: dates.files.persons is not the id of a file of this plan"},
+        {"{'people': 'Y/M/D'}", "{'people': 3}", "plan.json: dates.files.people must be an order of dates, one of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, "
+            "D/M/YY, M/D/YY, YY/M/D, D-MON-YY, serial-1900, serial-1904"},
+        {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'earliest': '01/01/2019'",
+            "plan.json: dates.earliest must be a day as YYYY-MM-DD, such as \"2019-01-01\""},
+        {"'target': 56, ", "", "plan.json: dates.visits[1].window needs a target day, from which it is counted"},
+        {"[-14, 14]", "[3, 14]", "plan.json: dates.visits[0].window is counted from the target day and must hold it, such as [-14, 14]"},
+        {", 'target': 112, 'window': [-28, 28]", "", "plan.json: dates.by_window finds visits by their window, but no visit of \"dates\" gives the "
+            "code \"16\" a target and a window"},
+        {"'randomised': {'column': 'people.rand'}, ", "", "plan.json: dates.by_window counts days from randomisation: give \"dates.randomised\" a "
+            "column that is not in that file"},
+        {"'by_window': {'file': 'visits'", "'by_window': {'file': 'people'",
+            "plan.json: dates.by_window.file must be the id of a file of this plan that has one row per visit"},
+        {",  'by_window': {'file': 'visits', 'column': 'on'}", "", "plan.json: files[1].visit is missing; a plan needs it, unless "
+            "\"dates.by_window\" finds the visits of the file by date"},
+        {"'site': {'column': 'people.site'},", "", NULL},
+        {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'sites': {'01': 'M.D.Y'}", NULL},
+        {"'randomised': {'column': 'people.rand'}", "'randomised': {'column': 'people.pid'}", "plan.json: the column \"people.pid\" is both Date of "
+            "randomisation and the participant's identifier; a column has one meaning"},
+    };
+    struct arena arena;
+    arena_init(&arena);
+    for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
+        const char *at = strstr(window_plan, cases[i].from);
+        assert_non_null(at);
+        const char *json = quoted(&arena, arena_format(&arena, "%.*s%s%s", (int)(at - window_plan), window_plan, cases[i].to,
+            at + strlen(cases[i].from)));
+        struct plan plan;
+        struct fault fault;
+        fault_init(&fault);
+        bool read = plan_read(&plan, json, strlen(json), "plan.json", &fault);
+        expect_text(read ? "read" : fault.message, cases[i].sentence ? cases[i].sentence : "read", cases[i].to);
+        if (read) {
+            plan_release(&plan);
+        }
+    }
+    arena_release(&arena);
+}
+
 int main(void) {
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_texts),
@@ -440,6 +626,10 @@ int main(void) {
         cmocka_unit_test(test_groups),
         cmocka_unit_test(test_refused_orders),
         cmocka_unit_test(test_states),
+        cmocka_unit_test(test_windows),
+        cmocka_unit_test(test_windows_follow_decisions),
+        cmocka_unit_test(test_corrections_stay_with_their_value),
+        cmocka_unit_test(test_broken_plans),
     };
     return cmocka_run_group_tests_name("trial/dates", tests, NULL, NULL);
 }
