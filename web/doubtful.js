@@ -114,7 +114,7 @@ function settlePart(discrepancy) {
     make("div", { class: "actions" },
       open && discrepancy.proposal ? act("a", discrepancy.proposal_words ?? decisionWords(discrepancy.proposal), { class: "strong" }) : null,
       open && discrepancy.rows ? discrepancy.rows.map((row) => button(`Keep record ${row}`, () => offer(keepRecord(list[0], row, discrepancy)), { "data-key": `keep-${row}` })) : null,
-      valued ? act("c", "Confirm") : null,
+      valued ? act("c", "Confirm") : open && notable.has(discrepancy.check) ? act("c", "Note that it is right as it is") : null,
       valued ? act("s", "Set missing") : null,
       valued ? act("e", "Correct") : null,
       discrepancy.state === "queried" ? act("r", "Enter the answer") : null,
@@ -178,8 +178,23 @@ function forEach(discrepancy, kind, make_one) {
     kind === "proposal" ? [{ ...one.proposal, discrepancy: one.id }] : people(one).map((participant) => make_one(one, participant, values))) };
 }
 
+// About no cell: what was found is written in a note that names the discrepancy, and that settles it.
+const notable = new Set(["site-unit", "screening-sum"]);
+
+function offerNote(discrepancy) {
+  offer({
+    title: "Note that it is right as it is",
+    fields: [{ name: "text", label: "What was found", long: true }],
+    decisions: (values) => [{ kind: "note", exhibit: "discrepancies", text: values.text.trim(), discrepancy: discrepancy.id }],
+  });
+}
+
 function offerValue(kind) {
   const discrepancy = current();
+  if (discrepancy && kind === "confirm" && discrepancy.state !== "settled" && notable.has(discrepancy.check)) {
+    offerNote(discrepancy);
+    return;
+  }
   if (!discrepancy || discrepancy.state === "settled" || (discrepancy.value === null && kind !== "query")) return;
   const list = people(discrepancy);
   if (discrepancy.rows && kind !== "query") {
@@ -210,9 +225,9 @@ function accept() {
   offer({
     title: discrepancy.proposal_words ?? decisionWords(proposal),
     before: () => (discrepancy.value === null ? null : discrepancy.value === "" ? "blank" : discrepancy.value),
-    after: () => proposal.to ?? (proposal.kind === "number-format" ? (discrepancy.value ?? "").replace(",", ".") || null : proposal.kind === "confirm" ? proposal.value
+    after: () => (notable.has(discrepancy.check) ? discrepancy.proposal_words : null) ?? proposal.to ?? (proposal.kind === "number-format" ? (discrepancy.value ?? "").replace(",", ".") || null : proposal.kind === "confirm" ? proposal.value
       : proposal.kind === "date-order" ? `read as ${proposal.order}` : proposal.kind === "keep-record" ? `record ${proposal.row} in force` : "missing"),
-    says: whole ? () => `Holds for ${proposal.site ? `all dates of site ${proposal.site} in this column` : "the whole column"}, so it settles every one like it.` : null,
+    says: notable.has(discrepancy.check) ? () => discrepancy.message : whole ? () => `Holds for ${proposal.site ? `all dates of site ${proposal.site} in this column` : "the whole column"}, so it settles every one like it.` : null,
     ...(whole ? { decisions: () => [{ ...proposal, discrepancy: discrepancy.id }] } : forEach(discrepancy, "proposal")),
   });
 }

@@ -72,7 +72,7 @@ function facts() {
     .join(", ");
 }
 
-const currentWords = (value) => (value.state === "observed" || !value.words ? value.current ?? "missing" : value.words);
+const currentWords = (value) => value.converted ?? (value.state === "observed" || !value.words ? value.current ?? "missing" : value.words);
 
 function offerForm(host, spec, cell) {
   busy = true;

@@ -34,6 +34,7 @@ export function decisionWords(decision) {
     case "missing-code": return `${quoted(decision.value)} stands for a missing value${at}`;
     case "number-format": return decision.decimal === "," ? `A comma is the decimal mark${at}` : `A point is the decimal mark${at}`;
     case "date-order": return `Dates${at}${decision.site ? ` of site ${decision.site}` : ""} are written ${decision.order}`;
+    case "convert": return `Convert ${decision.column} at site ${decision.site}: times ${decision.factor} (${decision.unit_from} to ${decision.unit_to})`;
     case "correct": return `Correct ${named(decision.column)}${of} from ${quoted(decision.from)} to ${quoted(decision.to)}`;
     case "set-missing": return `Set ${named(decision.column)}${of} missing (it was ${quoted(decision.from)})`;
     case "confirm": return `Confirm ${named(decision.column)}${of} as recorded: ${quoted(decision.value)}`;

@@ -6,6 +6,7 @@
 
 extern const struct exhibit exhibit_columns;
 extern const struct exhibit exhibit_flow;
+extern const struct exhibit exhibit_sites;
 extern const struct exhibit exhibit_baseline;
 extern const struct exhibit exhibit_derived;
 extern const struct exhibit exhibit_discrepancies;

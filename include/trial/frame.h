@@ -83,6 +83,7 @@ struct frame {
     size_t held_aside;           /* records held aside: repeated, or without an identifier */
     struct column **columns;     /* [plan->variable_count], same order */
     struct column *arm;          /* NULL where the plan has none */
+    struct column *site;         /* NULL where the plan names none; a variable's own where it is one */
     struct column *identifier;   /* of the first file; texts only, as are the next two */
     struct column **identifiers; /* [files] identifiers[0] == identifier */
     struct column **visits;      /* [files] visit codes; NULL where a file has one row per participant */

@@ -13,6 +13,7 @@ enum decision_kind {
     DECISION_MISSING_CODE,
     DECISION_NUMBER_FORMAT,
     DECISION_DATE_ORDER,
+    DECISION_CONVERT,
     DECISION_CORRECT,
     DECISION_SET_MISSING,
     DECISION_CONFIRM,
@@ -56,6 +57,8 @@ struct decision {
     const char *value, *meaning, *decimal, *outcome, *scale, *set, *text, *exhibit;
     const char *file;   /* keep-record: id of the file, NULL for the first */
     const char *order, *site; /* date-order: site NULL for every site */
+    const char *unit_from, *unit_to, *source; /* convert, beside its site */
+    double factor, offset;
     const char *people; /* attending: the list as JSON */
     uint32_t row;      /* 1-based data record in the file, 0 where not given */
     uint32_t reverses; /* number of the decision that a reverse takes back */

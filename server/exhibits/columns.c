@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Participants: what came in, and what each column means. */
+#include "exhibits/conversions.h"
 #include "exhibits/list.h"
 #include "exhibits/words.h"
 #include <stdio.h>
@@ -293,6 +294,7 @@ static void json(const struct view *view, struct json *json) {
         json_close(json);
     }
     json_close(json);
+    conversions_json(view, json);
 }
 
 static void put_counts(struct table *table, const struct row *row) {
@@ -334,6 +336,10 @@ static void tables(const struct view *view, struct table **tables, size_t *count
         table_put_text(table, row->note);
     }
     tables[(*count)++] = table;
+    struct table *conversions = conversions_table(view);
+    if (conversions) {
+        tables[(*count)++] = conversions;
+    }
 }
 
 static const struct argument_rule arguments[] = {{0}};

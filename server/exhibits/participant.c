@@ -3,6 +3,7 @@
 #include "exhibits/doubtful.h"
 #include "exhibits/list.h"
 #include "exhibits/words.h"
+#include "trial/convert.h"
 #include "trial/derived.h"
 #include <math.h>
 #include <string.h>
@@ -14,6 +15,7 @@ struct value {
     enum cell_state state;
     uint32_t origin;
     bool doubtful, hidden;
+    const char *converted; /* "101 mg/dL, from 5.6 by decision 7"; NULL: in its own unit */
     const char **on_records; /* what each record of the column's file and visit says while none is kept, else NULL */
     size_t on_record_count;
     const struct derived *derived; /* where it is computed, else NULL; `inputs` are then what it rests on, as it now reads */
@@ -55,6 +57,14 @@ static bool is_doubtful(const struct participant_result *result, const char *col
     return false;
 }
 
+/* A converted number beside the text it stands for. */
+static const char *converted_words(const struct view *view, size_t variable, size_t participant, const char *text) {
+    const struct column *column = view->frame->columns[variable];
+    const struct decision *by = column->number && !isnan(column->number[participant]) ? convert_of(view->frame, variable, participant) : NULL;
+    return by && !decision_hidden(view, by) ? arena_format(view->arena, "%.6g %s, converted from %s by decision %u", column->number[participant],
+        by->unit_to, text, by->number) : NULL;
+}
+
 static void take_derived(struct view *view, const struct participant_result *result, struct value *value) {
     const struct frame *frame = view->frame;
     struct derived_value taken;
@@ -87,6 +97,7 @@ static void take_values(struct view *view, struct participant_result *result) {
             value->current = frame_text(frame, column, result->participant);
             value->origin = column->origin ? column->origin[record] : 0;
             value->doubtful = is_doubtful(result, value->variable->column);
+            value->converted = converted_words(view, v, result->participant, value->current);
         } else if (!value->hidden) {
             const struct records *records = &result->of_slot[column->slot];
             value->on_records = ARENA_NEW(view->arena, records->count, const char *);
@@ -179,6 +190,7 @@ static void value_json(const struct view *view, const struct value *value, struc
     json_field_string(json, "kind", kinds[value->variable->kind]);
     json_field_string(json, "received", value->received);
     json_field_string(json, "current", value->current);
+    json_field_string(json, "converted", value->converted);
     json_field_string(json, "state", value->hidden ? NULL : cell_state_name(value->state));
     json_field_string(json, "words", value->hidden ? "hidden while blinded: its levels tell the arms apart" :
         value->why ? value->why : cell_state_words(value->state));
@@ -204,7 +216,7 @@ static void value_json(const struct view *view, const struct value *value, struc
 }
 
 /* Decisions about this participant, or about a code of a column that made one of their values what it is. */
-static bool about(const struct participant_result *result, const struct decision *decision, const char *id) {
+static bool about(const struct frame *frame, const struct participant_result *result, const struct decision *decision, const char *id) {
     if (decision->participant) {
         return strcmp(decision->participant, id) == 0;
     }
@@ -215,7 +227,8 @@ static bool about(const struct participant_result *result, const struct decision
                     strcmp(value->current, decision->value) == 0;
         bool format = decision->kind == DECISION_NUMBER_FORMAT && decision->column && value->current &&
                       plan_covers(decision->column, value->variable->column) && strchr(value->current, ',');
-        if (value->origin == decision->number || code || format) {
+        const struct decision *convert = value->converted ? convert_of(frame, i, result->participant) : NULL;
+        if (value->origin == decision->number || code || format || convert == decision) {
             return true;
         }
     }
@@ -268,7 +281,7 @@ static void json(const struct view *view, struct json *json) {
     json_close(json);
     json_key_array(json, "decisions");
     for (size_t i = 0; i < frame->version; i++) {
-        if (about(result, &frame->decisions[i], id)) {
+        if (about(frame, result, &frame->decisions[i], id)) {
             decision_json(view, &frame->decisions[i], frame->stands[i], json);
         }
     }
@@ -299,7 +312,7 @@ static void tables(const struct view *view, struct table **tables, size_t *count
         table_row(values);
         table_put_header(values, value->variable->label);
         table_put_text(values, value->received);
-        table_put_text(values, value->current);
+        table_put_text(values, value->converted ? value->converted : value->current);
         if (value->derived) {
             table_put_format(values, "%s: %s (%s)", value->why ? value->why : "computed", derived_words(view->arena, value->derived),
                 value->inputs);

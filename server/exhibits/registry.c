@@ -10,6 +10,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_columns,
     &exhibit_flow,
     &exhibit_baseline,
+    &exhibit_sites,
     &exhibit_derived,
     &exhibit_discrepancies,
     &exhibit_missing_grid,

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "exhibits/words.h"
 #include "draw/number.h"
+#include "trial/convert.h"
 #include "stats/describe.h"
 #include <ctype.h>
 #include <math.h>
@@ -14,7 +15,8 @@ const char *head_of(const struct view *view) {
 }
 
 static bool hidden(const struct view *view, const struct decision *decision) {
-    return decision->column && arms_hide_column(view->frame, decision->column);
+    return (decision->column && arms_hide_column(view->frame, decision->column)) ||
+           (decision->kind == DECISION_CONVERT && arms_hide_column(view->frame, view->frame->plan->site_column));
 }
 
 bool decision_hidden(const struct view *view, const struct decision *decision) {
@@ -53,6 +55,9 @@ const char *decision_words(const struct view *view, const struct decision *decis
     case DECISION_DATE_ORDER:
         return arena_format(arena, "%s%s%s: dates are %s", label, decision->site ? ", site " : "", decision->site ? decision->site : "",
             decision->order);
+    case DECISION_CONVERT:
+        return arena_format(arena, "%s at site %s: %s; %s", label, *decision->site ? decision->site : "not recorded",
+            convert_words(arena, decision), decision->source);
     case DECISION_CORRECT:
     case DECISION_SET_MISSING:
         return arena_format(arena, "%s of %s: %s becomes %s", label, who, or_nothing(decision->from),

@@ -10,6 +10,7 @@ struct finding { /* a run of the checks over one frame */
     struct discrepancy *list;
     size_t count, room;
     const bool *hidden; /* [variables] whose text may not be shown now */
+    bool **site_asked;  /* [variables][participants] a discrepancy about their site's unit is not settled by a note; NULL: none */
 };
 
 /* A new discrepancy of the check of that name, with the id check/column/what (column NULL: check/what). It may move when the
@@ -19,6 +20,9 @@ void finding_concerns(struct finding *finding, struct discrepancy *what, const c
 /* A decision's JSON of `count` text fields after its kind, and its row where that is not 0. */
 const char *finding_proposal(
     struct finding *finding, const char *kind, const char *const fields[][2], size_t count, uint32_t row);
+
+/* In checks-sites.c: fills site_asked. */
+void check_site_units(struct finding *finding);
 
 /* In checks-dates.c. */
 void check_dates(struct finding *finding);

@@ -6,6 +6,7 @@
 #include "intake/number.h"
 #include "server/trial/checks-parts.h"
 #include "trial/arms.h"
+#include "trial/convert.h"
 #include "trial/derived.h"
 #include <math.h>
 #include <stdio.h>
@@ -38,6 +39,7 @@ enum check_kind {
     CHECK_UNLISTED,
     CHECK_UNREADABLE,
     CHECK_LIMIT,
+    CHECK_SITE_UNIT,
     CHECK_PLAUSIBLE,
     CHECK_ELIGIBLE,
     CHECK_SCALE,
@@ -80,6 +82,8 @@ const struct check checks[] = {
         SEVERITY_MUST_SETTLE},
     [CHECK_LIMIT] = {"below-limit", "Below or above a limit of detection", "A value given only as beyond a limit.",
         SEVERITY_WORTH_A_LOOK},
+    [CHECK_SITE_UNIT] = {"site-unit", "One site in another unit",
+        "Numbers of a site that fit those of the other sites only after a published factor.", SEVERITY_MUST_SETTLE},
     [CHECK_PLAUSIBLE] = {"out-of-plausible-range", "Out of plausible range", "A number outside what the plan calls plausible.",
         SEVERITY_MUST_SETTLE},
     [CHECK_ELIGIBLE] = {"out-of-eligibility", "Outside eligibility", "A number outside what the plan calls eligible.",
@@ -912,9 +916,10 @@ static const char *computed_from(struct finding *finding, const struct variable 
 static void check_range(struct finding *finding, enum check_kind check, const struct column *column,
     const struct variable *variable, const struct range *range) {
     const struct frame *frame = finding->frame;
+    const bool *asked = finding->site_asked[variable - frame->plan->variables]; /* about the unit of their site */
     for (size_t p = 0; range->given && p < frame->participant_count; p++) {
         double value = column->number[p];
-        if (isnan(value) || (value >= range->low && value <= range->high)) {
+        if (isnan(value) || (value >= range->low && value <= range->high) || (asked && asked[p])) {
             continue;
         }
         const char *id = frame->participants[p].id, *unit = variable->unit;
@@ -1019,6 +1024,7 @@ static void run(struct finding *finding) {
     check_double_visits(finding);
     check_unplanned_visits(finding);
     check_arm(finding);
+    check_site_units(finding); /* before ranges: who is asked about as a site is not asked about alone */
     for (int check = CHECK_MISSING_CODE; check < CHECK_COUNT; check++) {
         for (size_t v = 0; v < plan->variable_count; v++) {
             check_variable(finding, (enum check_kind)check, v);
@@ -1048,7 +1054,8 @@ static void look_for_decision(const struct frame *frame, struct discrepancy *wha
         const struct decision *decision = &frame->decisions[i];
         bool confirms = decision->kind == DECISION_CONFIRM && (!decision->value || !what->value || same(decision->value, what->value));
         /* Where there is no cell to confirm, a note that names the discrepancy settles it. */
-        confirms |= decision->kind == DECISION_NOTE && same(what->check, checks[CHECK_SCREENING].name);
+        confirms |= decision->kind == DECISION_NOTE && (same(what->check, checks[CHECK_SCREENING].name) ||
+                                                           same(what->check, checks[CHECK_SITE_UNIT].name));
         if (!frame->stands[i] || !(confirms || decision->kind == DECISION_QUERY) || !decided_about(decision, what)) {
             continue;
         }
@@ -1059,7 +1066,7 @@ static void look_for_decision(const struct frame *frame, struct discrepancy *wha
 
 static bool is_of_site(const struct frame *frame, const struct discrepancy *what, const char *site) {
     int who = what->participant_count ? frame_participant(frame, what->participants[0]) : NOWHERE;
-    return same(who == NOWHERE ? NULL : frame_site(frame, (size_t)who), site);
+    return same(who == NOWHERE ? NULL : site_of(frame, (size_t)who), site);
 }
 
 static size_t file_index(const struct plan *plan, const char *id) {
@@ -1090,7 +1097,8 @@ static uint32_t settler(const struct frame *frame, const struct discrepancy *wha
         bool keeps = keeps_one_of(frame, decision, what);
         bool other_code = (decision->kind == DECISION_READ_AS && !same(decision->from, what->value)) ||
                           (decision->kind == DECISION_MISSING_CODE && !same(decision->value, what->value));
-        const char *site = decision->kind == DECISION_DATE_ORDER ? decision->site : NULL;
+        bool sited = decision->kind == DECISION_DATE_ORDER || decision->kind == DECISION_CONVERT;
+        const char *site = sited ? decision->site : NULL;
         bool column = decision->kind <= DECISION_SET_MISSING && !other_code && (!site || is_of_site(frame, what, site)) && decision->column && what->column &&
                       plan_covers(decision->column, what->column) &&
                       (!decision->participant || same(decision->participant, what->participant));

@@ -3,6 +3,7 @@
 #include "base/map.h"
 #include "intake/number.h"
 #include "trial/arms.h"
+#include "trial/convert.h"
 #include "trial/derived.h"
 #include <math.h>
 #include <stdlib.h>
@@ -557,9 +558,8 @@ struct site_orders {
 
 const char *frame_site(const struct frame *frame, size_t participant) {
     const struct plan *plan = frame->plan;
-    int variable = plan->site_column ? plan_variable(plan, plan->site_column) : NOWHERE;
-    if (variable != NOWHERE && frame->columns && frame->columns[variable]) {
-        return frame_text(frame, frame->columns[variable], participant);
+    if (frame->site) {
+        return frame_text(frame, frame->site, participant);
     }
     const struct cells *cells = plan->site_column ? &frame->cells[plan->site_place.file] : NULL;
     size_t record = !cells || frame->participants[participant].record == NO_RECORD ? NO_RECORD :
@@ -647,7 +647,20 @@ static void hash_column(const struct frame *frame, struct column *column) {
     hash_finish(&hash, column->hash);
 }
 
-static void interpret(struct build *build, struct column *column, const char *name, const struct event *event) {
+/* Conversions come last: they are of what the texts read as numbers. */
+static bool apply_conversions(struct build *build, struct column *column, const char *name) {
+    for (size_t i = 0; column->number && i < build->count; i++) {
+        const struct decision *decision = &build->frame->decisions[i];
+        bool applies = build->stands[i] && convert_covers(decision, name);
+        if (applies && convert_apply(build->frame, column, decision) == 0 && is_new(build, i)) {
+            return refuse(build, i, arena_format(&build->frame->arena, "is about the site \"%.60s\", where the file has no participant",
+                decision->site));
+        }
+    }
+    return true;
+}
+
+static bool interpret(struct build *build, struct column *column, const char *name, const struct event *event) {
     struct frame *frame = build->frame;
     size_t n = frame->participant_count;
     struct codes codes = {0};
@@ -674,7 +687,11 @@ static void interpret(struct build *build, struct column *column, const char *na
             interpret_cell(frame, column, p, &codes, event, sign);
         }
     }
+    if (!apply_conversions(build, column, name)) {
+        return false;
+    }
     hash_column(frame, column);
+    return true;
 }
 
 static struct column *column_new(const struct frame *frame, const struct place *place, enum variable_kind kind) {
@@ -860,8 +877,7 @@ static bool build_column(struct build *build, const char *name, const struct pla
     if (!replay(build, *column, name)) {
         return false;
     }
-    interpret(build, *column, name, event == NOWHERE ? NULL : &build->frame->plan->events[event]);
-    return true;
+    return interpret(build, *column, name, event == NOWHERE ? NULL : &build->frame->plan->events[event]);
 }
 
 /* Whether columns that nothing has touched can be those of the previous frame: their records are the same. */
@@ -886,6 +902,32 @@ static bool build_variable(struct build *build, size_t v, bool share) {
     const struct variable *variable = &frame->plan->variables[v];
     return frame->columns[v] || build_column(build, variable->column, &variable->place, variable->kind, variable->covariate,
                                     variable->event, build->previous ? build->previous->columns[v] : NULL, share, &frame->columns[v]);
+}
+
+/* The site's column comes before those that hang on it. Where a variable is the site they share the column. */
+static bool build_site(struct build *build, bool share) {
+    struct frame *frame = build->frame;
+    const struct plan *plan = frame->plan;
+    if (!plan->site_column || frame->site) {
+        return true;
+    }
+    int v = plan_variable(plan, plan->site_column);
+    if (v == NOWHERE) {
+        return build_column(build, plan->site_column, &plan->site_place, VARIABLE_CATEGORY, NOWHERE, NOWHERE,
+            build->previous ? build->previous->site : NULL, share, &frame->site);
+    }
+    bool built = build_variable(build, (size_t)v, share);
+    frame->site = built ? column_retain(frame->columns[v]) : NULL;
+    return built;
+}
+
+static bool ever_converted(const struct build *build, const char *name) {
+    for (size_t i = 0; i < build->count; i++) {
+        if (convert_covers(&build->frame->decisions[i], name)) {
+            return true;
+        }
+    }
+    return false;
 }
 
 /* ---- visits found by date: of a participant's records in a visit's window the nearest to the target day stands ---- */
@@ -973,9 +1015,9 @@ static bool build_early(struct build *build) {
     for (size_t f = 0; share && f < plan->file_count; f++) {
         share = build->previous->identifiers[f] == build->frame->identifiers[f] && build->previous->visits[f] == build->frame->visits[f];
     }
-    int site = plan->site_column ? plan_variable(plan, plan->site_column) : NOWHERE;
+    bool early = plan->site_column && !plan->files[plan->site_place.file].window;
     int randomised = plan->dates->moments[plan->dates->randomised].variable;
-    return (site == NOWHERE || plan->files[plan->variables[site].place.file].window || build_variable(build, (size_t)site, share)) &&
+    return (!early || build_site(build, share)) &&
            build_variable(build, (size_t)randomised, share);
 }
 
@@ -1122,8 +1164,13 @@ static bool build_columns(struct build *build) {
     struct frame *frame = build->frame;
     const struct plan *plan = frame->plan;
     bool share = places_shared(build);
+    if (!build_site(build, share)) {
+        return false;
+    }
+    bool same_site = build->previous && build->previous->site == frame->site;
     for (size_t v = 0; v < plan->variable_count; v++) {
-        if (plan->variables[v].derived == NOWHERE && !build_variable(build, v, share)) {
+        bool as_before = share && (same_site || !ever_converted(build, plan->variables[v].column));
+        if (plan->variables[v].derived == NOWHERE && !build_variable(build, v, as_before)) {
             return false;
         }
     }
@@ -1259,7 +1306,8 @@ static bool column_fits(struct build *build, size_t i) {
     const struct decision *decision = &frame->decisions[i];
     const struct plan *plan = frame->plan;
     bool known = plan_identifier_file(plan, decision->column) != NOWHERE || plan_visit_file(plan, decision->column) != NOWHERE ||
-                 (plan->arm_column && plan_covers(decision->column, plan->arm_column));
+                 (plan->arm_column && plan_covers(decision->column, plan->arm_column)) ||
+                 (plan->site_column && plan_covers(decision->column, plan->site_column));
     for (size_t v = 0; v < plan->variable_count && !known; v++) {
         known = plan_covers(decision->column, plan->variables[v].column);
     }
@@ -1285,7 +1333,7 @@ static bool column_fits(struct build *build, size_t i) {
     for (size_t v = 0; v < plan->variable_count && !number; v++) {
         number = plan->variables[v].kind == VARIABLE_NUMBER && plan_covers(decision->column, plan->variables[v].column);
     }
-    if (decision->kind == DECISION_NUMBER_FORMAT && !number) {
+    if ((decision->kind == DECISION_NUMBER_FORMAT || decision->kind == DECISION_CONVERT) && !number) {
         return refuse(build, i, arena_format(&build->frame->arena, "is about the column \"%.60s\", which holds no numbers", decision->column));
     }
     if (decision->kind == DECISION_DATE_ORDER && !date_order_fits(build, i)) {
@@ -1302,6 +1350,28 @@ static bool column_fits(struct build *build, size_t i) {
     }
     return decision->kind != DECISION_MISSING_CODE || plan_identifier_file(plan, decision->column) == NOWHERE ||
            refuse(build, i, "is about the identifier, which cannot be missing; correct it, or set it missing to hold the record aside");
+}
+
+/* One conversion of a column at a site stands at a time: two would multiply. */
+static bool convert_fits(struct build *build, size_t i) {
+    struct frame *frame = build->frame;
+    const struct decision *decision = &frame->decisions[i];
+    if (!frame->plan->site_column) {
+        return refuse(build, i, "is about a site, and the plan names no column of sites");
+    }
+    if (arms_hide_column(build->previous, frame->plan->site_column)) {
+        return refuse(build, i, "is about a site, and sites would tell the arms apart while blinded");
+    }
+    for (size_t j = 0; j < i; j++) {
+        const struct decision *other = &frame->decisions[j];
+        bool same_column = other->kind == DECISION_CONVERT &&
+                           (plan_covers(other->column, decision->column) || plan_covers(decision->column, other->column));
+        if (build->stands[j] && same_column && strcmp(other->site, decision->site) == 0) {
+            return refuse(build, i, arena_format(&frame->arena, "is about what decision %u has converted already; reverse that one first",
+                other->number));
+        }
+    }
+    return true;
 }
 
 static bool answers_query(struct build *build, size_t i) {
@@ -1327,6 +1397,8 @@ static bool new_one_fits(struct build *build, size_t i) {
         return reverse_fits(build, i);
     case DECISION_RESPONSE:
         return answers_query(build, i);
+    case DECISION_CONVERT:
+        return convert_fits(build, i);
     case DECISION_LOCK:
     case DECISION_UNLOCK:
         return lock_fits(build, i);
@@ -1457,6 +1529,7 @@ void frame_release(struct frame *frame) {
         column_release(frame->columns[v]);
     }
     column_release(frame->arm);
+    column_release(frame->site);
     for (size_t f = 0; frame->identifiers && f < frame->plan->file_count; f++) {
         column_release(frame->identifiers[f]);
         column_release(frame->visits[f]);
@@ -1486,6 +1559,7 @@ const struct column *frame_column(const struct frame *frame, const char *name) {
     int variable = plan_variable(frame->plan, name);
     return variable != NOWHERE                                                       ? frame->columns[variable] :
         frame->plan->arm_column && strcmp(frame->plan->arm_column, name) == 0        ? frame->arm :
+        frame->plan->site_column && strcmp(frame->plan->site_column, name) == 0      ? frame->site :
         plan_identifier_file(frame->plan, name) != NOWHERE                           ? frame->identifiers[plan_identifier_file(frame->plan, name)] :
         plan_visit_file(frame->plan, name) != NOWHERE                                ? frame->visits[plan_visit_file(frame->plan, name)] :
         plan_window_file(frame->plan, name) != NOWHERE                               ? frame->windows[plan_window_file(frame->plan, name)] :

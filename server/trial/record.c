@@ -17,6 +17,8 @@ const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
         "", true, true, true},
     [DECISION_DATE_ORDER] = {"date-order", "Dates of a column, of one site or all, are written in this order", "column order",
         "site", true, true, true},
+    [DECISION_CONVERT] = {"convert", "Numbers of a column at one site are in another unit", "column site factor unit_from unit_to source",
+        "offset", true, true, true},
     [DECISION_CORRECT] = {"correct", "One value becomes another", "column participant from to", "", true, true, true},
     [DECISION_SET_MISSING] = {"set-missing", "One value is set missing", "column participant from", "", true, true, true},
     [DECISION_CONFIRM] = {"confirm", "A doubtful value is right as recorded", "column value", "participant", true, true,
@@ -45,7 +47,7 @@ const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
 
 /* ---- fields: which there are, of what type, and where a decision keeps them ---- */
 
-enum field_type { FIELD_TEXT, FIELD_TEXT_OR_NULL, FIELD_COUNT, FIELD_WORDS, FIELD_INTERVAL, FIELD_FLAG };
+enum field_type { FIELD_TEXT, FIELD_TEXT_OR_NULL, FIELD_COUNT, FIELD_WORDS, FIELD_INTERVAL, FIELD_FLAG, FIELD_NUMBER };
 
 static const struct field {
     const char *name;
@@ -64,13 +66,18 @@ static const struct field {
     {"meaning", FIELD_TEXT, false, offsetof(struct decision, meaning)},
     {"decimal", FIELD_TEXT, false, offsetof(struct decision, decimal)},
     {"order", FIELD_TEXT, false, offsetof(struct decision, order)},
-    {"site", FIELD_TEXT, false, offsetof(struct decision, site)},
     {"outcome", FIELD_TEXT, false, offsetof(struct decision, outcome)},
     {"scale", FIELD_TEXT, false, offsetof(struct decision, scale)},
     {"set", FIELD_TEXT, false, offsetof(struct decision, set)},
     {"text", FIELD_TEXT, false, offsetof(struct decision, text)},
     {"question", FIELD_TEXT, false, offsetof(struct decision, text)},
     {"exhibit", FIELD_TEXT, false, offsetof(struct decision, exhibit)},
+    {"site", FIELD_TEXT, false, offsetof(struct decision, site)},
+    {"unit_from", FIELD_TEXT, false, offsetof(struct decision, unit_from)},
+    {"unit_to", FIELD_TEXT, false, offsetof(struct decision, unit_to)},
+    {"source", FIELD_TEXT, false, offsetof(struct decision, source)},
+    {"factor", FIELD_NUMBER, false, 0},
+    {"offset", FIELD_NUMBER, false, 0},
     {"people", FIELD_WORDS, false, 0},
     {"criteria", FIELD_WORDS, false, 0},
     {"active", FIELD_INTERVAL, false, 0},
@@ -118,7 +125,8 @@ static void put_text(struct decision *decision, size_t place, const char *text) 
 
 static const char *type_words(enum field_type type) {
     static const char *const words[] = {"a text in quotes", "a text in quotes or null", "a whole number from 1",
-        "a list of texts, such as [\"A. Reader, statistician\"]", "two numbers, the lower first, such as [-5, 0]", "true or false"};
+        "a list of texts, such as [\"A. Reader, statistician\"]", "two numbers, the lower first, such as [-5, 0]", "true or false",
+        "a number"};
     return words[type];
 }
 
@@ -152,6 +160,8 @@ static bool type_fits(const cJSON *item, enum field_type type) {
         return is_interval(item);
     case FIELD_FLAG:
         return cJSON_IsBool(item);
+    case FIELD_NUMBER:
+        return cJSON_IsNumber(item) && isfinite(item->valuedouble);
     }
     return false;
 }
@@ -221,6 +231,10 @@ static void take_fields(struct arena *arena, const cJSON *object, struct decisio
     const cJSON *number = cJSON_GetObjectItemCaseSensitive(object, "number");
     decision->row = row && type_fits(row, FIELD_COUNT) ? (uint32_t)row->valuedouble : 0;
     decision->reverses = number && type_fits(number, FIELD_COUNT) ? (uint32_t)number->valuedouble : 0;
+    const cJSON *factor = cJSON_GetObjectItemCaseSensitive(object, "factor");
+    const cJSON *offset = cJSON_GetObjectItemCaseSensitive(object, "offset");
+    decision->factor = factor && type_fits(factor, FIELD_NUMBER) ? factor->valuedouble : 0;
+    decision->offset = offset && type_fits(offset, FIELD_NUMBER) ? offset->valuedouble : 0;
     decision->planned = cJSON_IsTrue(cJSON_GetObjectItemCaseSensitive(object, "planned"));
 }
 
@@ -240,6 +254,9 @@ static const char *value_wrong(const struct decision *decision) {
     case DECISION_NUMBER_FORMAT:
         return strcmp(decision->decimal, ".") == 0 || strcmp(decision->decimal, ",") == 0 ? NULL :
             "has a \"decimal\" that is neither \".\" nor \",\"";
+    case DECISION_CONVERT:
+        return !(decision->factor > 0) ? "has a \"factor\" that is not above 0" :
+            is_empty(decision->source) ? "has a blank \"source\"; say where the factor is published" : NULL;
     case DECISION_MISSING_CODE:
         return is_empty(decision->value) ? "has a blank \"value\"; a blank cell is missing without a code" : NULL;
     case DECISION_SCALE:

@@ -60,3 +60,10 @@ before <- c(8.1, 7.9, 9.2, 8.4, 7.6, 8.8, 9.0, 7.8, 8.3, 8.6, 9.5, 7.7)
 after <- c(7.5, 7.1, 8.2, 7.7, 7.0, 7.9, 8.8, 7.9, 8.1, 8.4, 9.6, 7.5)
 export("twelve", data.frame(arm = rep(c(1, 0), each = 6), before, after),
        "Made up here: twelve participants in two arms.")
+# What several sites could have measured: the sets are cut to the length of the shortest and stand side by side.
+heights <- na.omit(MASS::survey$Height)
+measured <- seq_len(189)
+export("sites", data.frame(glucose = MASS::Pima.tr$glu[measured], height = heights[measured], weight = MASS::birthwt$lwt,
+                           bmi = MASS::Pima.tr$bmi[measured]),
+       "glucose (mg/dL) and bmi: Pima.tr, Smith et al. 1988; height (cm): survey, Venables & Ripley 1999;",
+       "weight (lb): birthwt, Hosmer & Lemeshow 1989; all from R's package MASS. Licence of the package: GPL-2 or GPL-3.")

@@ -359,7 +359,7 @@ static void test_order_and_names(void **state) {
             assert_string_not_equal(checks[i].name, checks[count].name);
         }
     }
-    assert_int_equal(count, 26);
+    assert_int_equal(count, 27);
     struct checked checked;
     open_checked(&checked, "P3,Lx,f,ely,460,21,<1,y\nP1,Lx,f,ely,460,21,lost,y\nP1,Lx,f,ely,460,21,lost,y\n,Lx,F,Ely,50,21,120,N\nP4,,X,Ely,39,21,300,N\n",
         "linear", "unblinded");

@@ -36,6 +36,8 @@ static const struct {
     {"missing-code", "'reason': 'r', 'meaning': 'not done', 'value': '999', 'column': 'bmi'", "{'value':'999','meaning':'not done'}"},
     {"number-format", "'column': 'bmi', 'decimal': ',', 'reason': 'r'", "{'decimal':','}"},
     {"date-order", "'column': 'seen_on', 'order': 'M/D/Y', 'site': '07', 'reason': 'r'", "{'order':'M/D/Y','site':'07'}"},
+    {"convert", "'column': 'g', 'site': '02', 'factor': 0.0555, 'offset': -1.5, 'unit_from': 'a', 'unit_to': 'b', 'source': 's', 'reason': 'r'",
+        "{'site':'02','unit_from':'a','unit_to':'b','source':'s','factor':0.0555,'offset':-1.5}"},
     {"correct", "'column': 'bmi', 'participant': 'P1', 'from': '460', 'to': '46', 'reason': 'r'", "{}"},
     {"correct", "'column': 'bmi', 'participant': 'P1', 'row': 3, 'from': null, 'to': '', 'reason': 'r'", "{'row':3}"},
     {"set-missing", "'column': 'bmi', 'participant': 'P1', 'from': '', 'reason': 'r'", "{}"},
