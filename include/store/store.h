@@ -86,6 +86,10 @@ struct store_birth {
     const char *at;                       /* NULL: now */
     struct stored_decision *decisions;    /* the first entries of the record; number and hash are filled in */
     size_t decision_count;
+    /* Called once, when all but the record is in, and may be NULL: what the decisions' state_sha256 hang on can be made
+     * meanwhile on another thread. False: nothing is made; the caller knows why. */
+    bool (*settle)(void *context);
+    void *context;
 };
 
 /* Makes a new study at `path`; refuses where anything is there already. The file appears whole, on disk, or not at

@@ -144,6 +144,9 @@ static int fill(sqlite3 *database, const struct store_birth *birth, const char *
     code = code == SQLITE_OK ? insert_texts(database, "INSERT INTO plan(number, version, entered_at, text) VALUES(1, "
         "0, ?1, ?2)", plan, 2) : code;
     code = code == SQLITE_OK ? insert_values(database, birth, at) : code;
+    if (code == SQLITE_OK && birth->settle && !birth->settle(birth->context)) {
+        return SQLITE_ABORT;
+    }
     return code == SQLITE_OK ? insert_record(database, birth, at, arena) : code;
 }
 

@@ -302,7 +302,16 @@ struct birth { /* everything on the way to a new study */
     const struct study_file **files; /* [plan.file_count] in the plan's order */
     const char **names;
     struct cells *cells;
+    struct decision *planned;
+    struct stored_decision *stored;
+    size_t count; /* of both */
+    unsigned char letters[32];
+    struct text *account; /* may be NULL */
+    /* The frame and the account are made on a thread of their own while the store writes cells. */
+    pthread_t thread;
+    bool running;
     struct frame *frame;
+    struct fault frame_fault;
 };
 
 static bool read_files(struct birth *birth, struct fault *fault) {
@@ -315,30 +324,54 @@ static bool read_files(struct birth *birth, struct fault *fault) {
     return true;
 }
 
-static bool write_birth(struct birth *birth, const char *path, const char *plan_text, const char *by, struct text *account,
-    struct fault *fault) {
-    unsigned char letters[32];
+static void *make_frame(void *context) {
+    struct birth *birth = context;
+    birth->frame = frame_build(&birth->plan, birth->cells, "", birth->letters, birth->planned, birth->count, NULL, false, &birth->frame_fault);
+    if (birth->frame && birth->account) {
+        tell_account(birth->account, birth->names, birth->frame, birth->count);
+    }
+    return NULL;
+}
+
+static void await_frame(struct birth *birth) {
+    if (birth->running) {
+        pthread_join(birth->thread, NULL);
+        birth->running = false;
+    }
+}
+
+/* For the store, before it enters the record. */
+static bool settle_states(void *context) {
+    struct birth *birth = context;
+    await_frame(birth);
+    for (size_t i = 0; birth->frame && i < birth->count; i++) {
+        birth->stored[i].state_sha256 = birth->frame->state_sha256;
+    }
+    return birth->frame != NULL;
+}
+
+static void plan_decisions(struct birth *birth, const char *by, const char *at) {
+    birth->count = planned_decisions(&birth->plan, birth->cells, &birth->arena, &birth->planned);
+    birth->stored = ARENA_NEW(&birth->arena, birth->count, struct stored_decision);
+    const char *account = account_name(&birth->arena);
+    for (size_t i = 0; i < birth->count; i++) {
+        birth->planned[i].at = at;
+        birth->planned[i].by = by;
+        birth->planned[i].account = account;
+        birth->planned[i].blinding = blinding_name(birth->plan.blinding);
+        to_stored(&birth->planned[i], &birth->stored[i]);
+    }
+}
+
+static bool write_birth(struct birth *birth, const char *path, const char *plan_text, const char *by, struct fault *fault) {
     char at[CLOCK_SIZE];
     clock_utc(at);
-    if (!draw_letters(letters, birth->plan.arm_count, fault)) {
+    if (!draw_letters(birth->letters, birth->plan.arm_count, fault)) {
         return false;
     }
     note_received(&birth->plan, at);
-    struct decision *planned;
-    size_t count = planned_decisions(&birth->plan, birth->cells, &birth->arena, &planned), files = birth->plan.file_count;
-    birth->frame = frame_build(&birth->plan, birth->cells, "", letters, planned, count, NULL, false, fault);
-    if (!birth->frame) {
-        return false;
-    }
-    struct stored_decision *stored = ARENA_NEW(&birth->arena, count, struct stored_decision);
-    for (size_t i = 0; i < count; i++) {
-        planned[i].at = at;
-        planned[i].by = by;
-        planned[i].account = account_name(&birth->arena);
-        planned[i].blinding = blinding_name(birth->plan.blinding);
-        planned[i].state = birth->frame->state_sha256;
-        to_stored(&planned[i], &stored[i]);
-    }
+    plan_decisions(birth, by, at);
+    size_t files = birth->plan.file_count;
     struct store_file *received = ARENA_NEW(&birth->arena, files, struct store_file);
     struct store_table *tables = ARENA_NEW(&birth->arena, files, struct store_table);
     for (size_t f = 0; f < files; f++) {
@@ -346,19 +379,27 @@ static bool write_birth(struct birth *birth, const char *path, const char *plan_
         received[f] = (struct store_file){.name = birth->names[f], .bytes = birth->files[f]->bytes, .length = birth->files[f]->length};
         tables[f] = (struct store_table){cells->records, cells->columns, cells->names, cells->bytes, cells->start};
     }
-    struct store_value values[] = {{"letters", letters_text(&birth->arena, letters, birth->plan.arm_count)},
+    struct store_value values[] = {{"letters", letters_text(&birth->arena, birth->letters, birth->plan.arm_count)},
         {"program", "Evenhand " EVENHAND_VERSION}};
     struct store_birth store = {.files = received, .tables = tables, .file_count = files, .plan = plan_text, .values = values,
-        .value_count = 2, .by = by, .at = at, .decisions = stored, .decision_count = count};
-    if (account) {
-        tell_account(account, birth->names, birth->frame, count);
+        .value_count = 2, .by = by, .at = at, .decisions = birth->stored, .decision_count = birth->count, .settle = settle_states,
+        .context = birth};
+    fault_init(&birth->frame_fault);
+    birth->running = pthread_create(&birth->thread, NULL, make_frame, birth) == 0;
+    if (!birth->running) {
+        make_frame(birth);
     }
-    return store_create(path, &store, fault);
+    bool done = store_create(path, &store, fault);
+    await_frame(birth);
+    if (!birth->frame) {
+        *fault = birth->frame_fault;
+    }
+    return done;
 }
 
 bool study_create_from(const char *path, const struct study_file *files, size_t count, const char *plan_name, const char *plan,
     size_t plan_length, const char *by, struct text *account, struct fault *fault) {
-    struct birth birth = {0};
+    struct birth birth = {.account = account};
     if (!by || !by[strspn(by, " \t")]) {
         return fault_set(fault, FAULT_INPUT, "say who is loading, by name and role, such as --by \"A. Reader, data manager\"");
     }
@@ -372,7 +413,7 @@ bool study_create_from(const char *path, const struct study_file *files, size_t 
         birth.cells = ARENA_NEW(&birth.arena, birth.plan.file_count, struct cells);
         done = match_files(&birth.plan, &birth.arena, files, count, birth.files, plan_name, fault) && read_files(&birth, fault) &&
                plan_fits(&birth.plan, birth.cells, birth.names, plan_name, fault) &&
-               write_birth(&birth, path, plan_text, by, account, fault);
+               write_birth(&birth, path, plan_text, by, fault);
     }
     frame_release(birth.frame);
     for (size_t f = 0; birth.cells && f < birth.plan.file_count; f++) {
