@@ -75,9 +75,15 @@ static void codes_release(struct codes *codes) {
 
 /* ---- the guess as JSON ---- */
 
+/* FILE.COLUMN@CODE, FILE.COLUMN or COLUMN. */
+static const char *place_name(const struct guess *guess, size_t column, const char *code, struct arena *arena) {
+    const char *name = guess->columns[column].full_name;
+    return code ? arena_format(arena, "%s@%s", name, code) : name;
+}
+
 static const char *visit_of(const struct guess *guess, size_t column) {
     int series = guess->columns[column].series;
-    for (size_t i = 0; series != NOWHERE && i < guess->series[series].count; i++) {
+    for (size_t i = 0; series != NOWHERE && !guess->files[guess->columns[column].file].by_visit && i < guess->series[series].count; i++) {
         if (guess->series[series].columns[i] == column) {
             return guess->series[series].visits[i];
         }
@@ -103,7 +109,13 @@ static void values_json(const struct guess_column *column, struct json *json) {
 static void column_json(const struct guess *guess, size_t index, struct json *json) {
     const struct guess_column *column = &guess->columns[index];
     json_object(json);
-    json_field_string(json, "name", column->name);
+    json_field_string(json, "name", column->full_name);
+    if (guess->with_files) {
+        const struct guess_file *file = &guess->files[column->file];
+        json_field_string(json, "file", file->id);
+        json_field_string(json, "layout", file->by_visit ? "visit" : "participant");
+        json_field_bool(json, "varies", column->varies);
+    }
     json_field_string(json, "label", column->label);
     json_field_string(json, "unit", column->unit);
     json_field_string(json, "role", guess_role_name(column->role));
@@ -123,14 +135,17 @@ static void column_json(const struct guess *guess, size_t index, struct json *js
 }
 
 static void visits_json(const struct guess *guess, const struct guess_series *series, struct json *json) {
+    struct arena arena;
+    arena_init(&arena);
     json_key_array(json, "visits");
     for (size_t i = 0; i < series->count; i++) {
         json_object(json);
         json_field_string(json, "label", series->visits[i]);
-        json_field_string(json, "column", guess->columns[series->columns[i]].name);
+        json_field_string(json, "column", place_name(guess, series->columns[i], series->codes[i], &arena));
         json_close(json);
     }
     json_close(json);
+    arena_release(&arena);
 }
 
 static void series_json(const struct guess *guess, struct json *json) {
@@ -158,7 +173,7 @@ static void codes_json(const struct guess *guess, struct json *json) {
         json_field_string(json, "code", codes.list[i].text);
         json_key_array(json, "columns");
         for (size_t j = 0; j < codes.list[i].count; j++) {
-            json_string(json, guess->columns[codes.list[i].columns[j]].name);
+            json_string(json, guess->columns[codes.list[i].columns[j]].full_name);
         }
         json_close(json);
         json_close(json);
@@ -167,13 +182,42 @@ static void codes_json(const struct guess *guess, struct json *json) {
     codes_release(&codes);
 }
 
+static void file_json(const struct guess *guess, size_t index, struct json *json) {
+    const struct guess_file *file = &guess->files[index];
+    json_object(json);
+    json_field_string(json, "id", file->id);
+    json_field_string(json, "name", file->name);
+    json_field_integer(json, "records", (int64_t)file->records);
+    json_key_array(json, "columns");
+    for (size_t i = 0; i < file->column_count; i++) {
+        json_string(json, guess->columns[file->first_column + i].name);
+    }
+    json_close(json);
+    json_field_bool(json, "first", index == guess->first);
+    json_field_string(json, "layout", file->by_visit ? "visit" : "participant");
+    json_field_string(json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
+    json_field_integer(json, "participants", (int64_t)file->participants);
+    json_field_integer(json, "shared", (int64_t)file->shared);
+    json_field_string(json, "visit", file->visit == NOWHERE ? NULL : guess->columns[file->visit].name);
+    json_key_array(json, "codes");
+    for (size_t i = 0; i < file->code_count; i++) {
+        json_object(json);
+        json_field_string(json, "code", file->codes[i].code);
+        json_field_string(json, "label", file->codes[i].label);
+        json_field_integer(json, "records", (int64_t)file->codes[i].records);
+        json_close(json);
+    }
+    json_close(json);
+    json_close(json);
+}
+
 void guess_json(const struct guess *guess, struct json *json) {
     json_object(json);
     json_field_string(json, "name", guess->name);
     json_field_integer(json, "records", (int64_t)guess->records);
     json_field_string(
-        json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].name);
-    json_field_string(json, "arm", guess->arm == NOWHERE ? NULL : guess->columns[guess->arm].name);
+        json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].full_name);
+    json_field_string(json, "arm", guess->arm == NOWHERE ? NULL : guess->columns[guess->arm].full_name);
     json_key_array(json, "columns");
     for (size_t i = 0; i < guess->column_count; i++) {
         column_json(guess, i, json);
@@ -181,6 +225,11 @@ void guess_json(const struct guess *guess, struct json *json) {
     json_close(json);
     series_json(guess, json);
     codes_json(guess, json);
+    json_key_array(json, "files");
+    for (size_t i = 0; i < guess->file_count; i++) {
+        file_json(guess, i, json);
+    }
+    json_close(json);
     json_close(json);
 }
 
@@ -252,21 +301,40 @@ static void draft_outcome(struct draft *draft, const struct guess_series *series
     json_close(json);
 }
 
+/* The code of the first visit at which a column of a file with one row per visit has values; NULL in other files. */
+static const char *at_first_visit(const struct guess *guess, size_t index) {
+    const struct guess_column *column = &guess->columns[index];
+    const struct guess_file *file = &guess->files[column->file];
+    for (size_t i = 0; file->by_visit && i < file->code_count; i++) {
+        if (column->filled_at && column->filled_at[i]) {
+            return file->codes[i].code;
+        }
+    }
+    return file->code_count ? file->codes[0].code : NULL;
+}
+
+static const char *column_place(struct draft *draft, size_t index) {
+    return place_name(draft->guess, index, at_first_visit(draft->guess, index), &draft->arena);
+}
+
 /* Without a series the last number is taken for the outcome, measured once. */
 static void draft_lone(struct draft *draft) {
     const struct guess *guess = draft->guess;
     for (size_t i = 0; i < guess->column_count; i++) {
-        draft->lone = guess->columns[i].role == GUESS_NUMBER ? (int)i : draft->lone;
+        const struct guess_column *column = &guess->columns[i];
+        bool may_be = column->role == GUESS_NUMBER && strcmp(column->label, "Age") != 0 && !guess->files[column->file].by_visit;
+        draft->lone = may_be ? (int)i : draft->lone;
     }
     if (draft->lone != NOWHERE) {
         const struct guess_column *column = &guess->columns[draft->lone];
         size_t columns[] = {(size_t)draft->lone};
-        const char *visits[] = {"Follow-up"};
+        const char *visits[] = {"Follow-up"}, *codes[] = {at_first_visit(guess, (size_t)draft->lone)};
         const struct known_name *known = known_name_of(name_id(column->name, &draft->arena));
         struct guess_series series = {.id = name_id(column->name, &draft->arena),
             .label = column->label,
             .unit = column->unit,
             .columns = columns,
+            .codes = codes,
             .visits = visits,
             .count = 1,
             .lower_is_better = !(known && known->higher_is_better),
@@ -310,7 +378,7 @@ static void draft_arm(struct draft *draft) {
     }
     reference = reference ? reference : first;
     json_key_object(draft->json, "arm");
-    json_field_string(draft->json, "column", column->name);
+    json_field_string(draft->json, "column", column_place(draft, (size_t)guess->arm));
     json_key_array(draft->json, "levels");
     for (size_t i = 0; i < column->value_count; i++) {
         if (column->values[i].listed) {
@@ -380,7 +448,7 @@ static void draft_covariates(struct draft *draft, const char **subgroups, size_t
         json_object(json);
         json_field_string(json, "id", id);
         json_field_string(json, "label", column->label);
-        json_field_string(json, "column", column->name);
+        json_field_string(json, "column", column_place(draft, i));
         json_field_string(json, "kind", number ? "number" : "category");
         if (number && *column->unit) {
             json_field_string(json, "unit", column->unit);
@@ -415,11 +483,11 @@ static void draft_events(struct draft *draft) {
     json_key_array(draft->json, "events");
     for (size_t i = 0; i < draft->guess->column_count; i++) {
         const struct guess_column *column = &draft->guess->columns[i];
-        if (column->role == GUESS_EVENT) {
+        if (column->role == GUESS_EVENT && !column->varies) { /* what differs by visit is for a person to say */
             json_object(draft->json);
             json_field_string(draft->json, "id", take_id(draft, name_id(column->name, &draft->arena)));
             json_field_string(draft->json, "label", column->label);
-            json_field_string(draft->json, "column", column->name);
+            json_field_string(draft->json, "column", column_place(draft, i));
             draft_answers(draft, column, true);
             draft_answers(draft, column, false);
             json_close(draft->json);
@@ -433,6 +501,39 @@ static const char *title_of(const char *name, struct arena *arena) {
     return name_words(end && end != name ? arena_bytes(arena, name, (size_t)(end - name)) : name, arena);
 }
 
+static void draft_file(struct draft *draft, const struct guess_file *file) {
+    const struct guess *guess = draft->guess;
+    json_object(draft->json);
+    json_field_string(draft->json, "id", file->id);
+    json_field_string(draft->json, "name", file->name);
+    json_field_string(draft->json, "layout", file->by_visit ? "visit" : "participant");
+    json_field_string(draft->json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
+    if (file->by_visit) {
+        json_field_string(draft->json, "visit", file->visit == NOWHERE ? NULL : guess->columns[file->visit].name);
+        json_key_array(draft->json, "codes");
+        for (size_t i = 0; i < file->code_count; i++) {
+            json_string(draft->json, file->codes[i].code);
+        }
+        json_close(draft->json);
+    }
+    json_close(draft->json);
+}
+
+static void draft_files(struct draft *draft) {
+    const struct guess *guess = draft->guess;
+    if (!guess->with_files) {
+        return;
+    }
+    json_key_array(draft->json, "files");
+    draft_file(draft, &guess->files[guess->first]);
+    for (size_t f = 0; f < guess->file_count; f++) {
+        if (f != guess->first) {
+            draft_file(draft, &guess->files[f]);
+        }
+    }
+    json_close(draft->json);
+}
+
 void guess_plan_json(const struct guess *guess, struct json *json) {
     struct draft draft = {.guess = guess, .json = json, .lone = NOWHERE};
     arena_init(&draft.arena);
@@ -444,6 +545,7 @@ void guess_plan_json(const struct guess *guess, struct json *json) {
     json_field_string(json, "title", title_of(guess->name, &draft.arena));
     json_field_string(
         json, "participant", guess->participant == NOWHERE ? NULL : guess->columns[guess->participant].name);
+    draft_files(&draft);
     draft_arm(&draft);
     json_key_array(json, "missing_codes");
     for (size_t i = 0; i < draft.codes.count; i++) {

@@ -140,6 +140,16 @@ static void read_glued(struct readings *readings, size_t column, const char *nam
     }
 }
 
+/* "Y1 Y2 Y3" without anything else in the name: the letter by which an outcome is commonly called, not years. */
+static void outcome_letter(struct reading *reading, const struct name_parts *parts) {
+    if (parts->count == 2 && reading->unit && parts->part[1].glued && strcmp(parts->part[0].text, "y") == 0) {
+        reading->stem = "y";
+        reading->unit = NULL;
+        reading->order = reading->number;
+        reading->glued = true;
+    }
+}
+
 /* "weightv1": where the stem without its last letter is a known name and with it is none, the letter is the unit. */
 static void split_unit(struct reading *reading, struct arena *arena) {
     size_t length = strlen(reading->stem);
@@ -165,6 +175,7 @@ static void read_name(struct readings *readings, size_t column, const char *name
         }
         reading.stem = joined(parts.part, parts.count - length, readings->arena);
         split_unit(&reading, readings->arena);
+        outcome_letter(&reading, &parts);
         if (has_letter(reading.stem) || (parts.count == length && (reading.unit || isnan(reading.number)))) {
             add_reading(readings, reading);
             break;
@@ -289,6 +300,15 @@ static const char *free_id(const struct guess *guess, const char *wanted, struct
     return id;
 }
 
+void guess_add_series(struct guess *guess, struct guess_series series) {
+    series.id = free_id(guess, series.id, &guess->arena);
+    for (size_t i = 0; i < series.count; i++) {
+        guess->columns[series.columns[i]].series = (int)guess->series_count;
+    }
+    series.scale = scale_of(guess, &series);
+    guess->series[guess->series_count++] = series;
+}
+
 static void add_series(struct guess *guess, const struct reading *const *members, size_t count) {
     struct arena *arena = &guess->arena;
     struct guess_series *series = &guess->series[guess->series_count];
@@ -301,19 +321,26 @@ static void add_series(struct guess *guess, const struct reading *const *members
         .count = count,
         .lower_is_better = !(known && known->higher_is_better)};
     series->columns = ARENA_NEW(arena, count, size_t);
+    series->codes = ARENA_NEW(arena, count, const char *);
     series->visits = ARENA_NEW(arena, count, const char *);
     for (size_t i = 0; i < count; i++) {
         series->columns[i] = members[i]->column;
         series->visits[i] = visit_label(members, count, i, arena);
         for (size_t j = 0; j < i; j++) {
             if (strcmp(series->visits[j], series->visits[i]) == 0) {
-                series->visits[i] = guess->columns[members[i]->column].name;
+                series->visits[i] = guess->columns[members[i]->column].full_name;
             }
         }
         guess->columns[members[i]->column].series = (int)guess->series_count;
     }
     series->scale = scale_of(guess, series);
     guess->series_count++;
+}
+
+/* Of the same size, within a factor of three: a count of eight weeks is no baseline of counts of two. */
+static bool same_size(const struct guess *guess, size_t left, size_t right) {
+    double a = fabs(guess->columns[left].median), b = fabs(guess->columns[right].median);
+    return isnan(a) || isnan(b) || (a <= 3 * b && b <= 3 * a);
 }
 
 /* "baseline number3m number12m": a column that is called baseline and nothing else belongs to the one series without.
@@ -326,7 +353,8 @@ static void adopt_bare(
     }
     for (size_t i = 0; i < readings->count; i++) {
         const struct reading *bare = &readings->list[i];
-        if (!*bare->stem && bare->order < 0 && guess->columns[bare->column].series == NOWHERE) {
+        if (!*bare->stem && bare->order < 0 && guess->columns[bare->column].series == NOWHERE &&
+            same_size(guess, bare->column, members[0]->column)) {
             memmove(members + 1, members, *count * sizeof *members);
             members[0] = bare;
             (*count)++;
@@ -360,7 +388,7 @@ static int larger_first(const void *left, const void *right) {
 void guess_visits(struct guess *guess) {
     struct readings readings = {.arena = &guess->arena};
     for (size_t i = 0; i < guess->column_count; i++) {
-        if (guess->columns[i].role == GUESS_NUMBER) {
+        if (guess->columns[i].role == GUESS_NUMBER && !guess->files[guess->columns[i].file].by_visit) {
             read_name(&readings, i, guess->columns[i].name);
         }
     }
@@ -390,4 +418,60 @@ void guess_visits(struct guess *guess) {
     memory_free(members);
     memory_free(readings.list);
     number_series(guess);
+}
+
+/* ---- the codes of a visit column ---- */
+
+bool visit_code_read(const char *name, const char *code, struct arena *arena, double *order, const char **label) {
+    struct name_parts parts, column;
+    struct reading reading = {.number = NAN, .order = NAN};
+    char *end;
+    *order = NAN;
+    *label = code;
+    double number = strtod(code, &end);
+    bool bare = end != code && !end[strspn(end, " ")];
+    if (bare) {
+        const struct unit *unit = NULL;
+        name_take(&column, name, arena);
+        for (size_t i = 0; i < column.count && !(unit && unit->one); i++) {
+            const struct unit *found = column.part[i].digits ? NULL : unit_of(column.part[i].text);
+            unit = found ? found : unit;
+        }
+        reading.unit = unit;
+        reading.number = number;
+        reading.order = number * (unit ? unit->days : 1);
+    } else {
+        name_take(&parts, code, arena);
+        if (!read_visit(parts.part, parts.count, false, &reading)) {
+            bool any = false; /* "Week 8 follow-up", "Baseline visit": the first parts that say a time */
+            for (size_t length = parts.count > 1 ? 2 : 1; length >= 1 && !any; length--) {
+                for (size_t at = 0; at + length <= parts.count && !any; at++) {
+                    any = read_visit(parts.part + at, length, false, &reading);
+                }
+            }
+            if (!any) {
+                return false;
+            }
+        }
+    }
+    const struct reading *member = &reading;
+    *order = reading.order;
+    if (bare && !(reading.unit && reading.unit->one)) {
+        name_take(&column, name, arena);
+        const char *what = name_has(&column, "period") ? "Period"
+                           : name_has(&column, "time t tp timepoint") ? "Time"
+                                                                      : "Visit";
+        *label = number == 0 ? "Baseline" : arena_format(arena, "%s %s", what, code);
+    } else {
+        *label = visit_label(&member, 1, 0, arena);
+    }
+    return true;
+}
+
+bool visit_code_is_screening(double order) {
+    return order <= ORDER_SCREENING;
+}
+
+bool visit_code_is_baseline(double order) {
+    return order > ORDER_SCREENING && order <= 0;
 }

@@ -1,27 +1,18 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 #include "trial/guess.h"
-#include "intake/number.h"
 #include "server/trial/guess-parts.h"
 #include <math.h>
 #include <stdlib.h>
 #include <string.h>
 
 static const char *const role_names[GUESS_ROLE_COUNT] = {
-    "nothing", "participant", "arm", "number", "category", "event", "date"};
+    "nothing", "participant", "arm", "number", "category", "event", "date", "visit"};
 
 const char *guess_role_name(enum guess_role role) {
     return role_names[role];
 }
 
 /* ---- counting the distinct texts of a column ---- */
-
-struct look_value { /* a distinct text while its column is looked at */
-    struct guess_value value;
-    size_t first; /* place among the distinct texts, in order of appearance */
-    double number;
-    enum number_reading reading;
-    bool sentinel; /* has the shape of a code for missing */
-};
 
 struct tally_slot {
     const char *text;
@@ -63,18 +54,7 @@ static int frequent_first(const void *left, const void *right) {
 
 /* ---- what the values of one column are ---- */
 
-struct look { /* one column while it is looked at */
-    const struct cells *cells;
-    struct guess *guess;
-    struct guess_column *column;
-    size_t index;
-    struct name_parts parts;
-    struct look_value *values; /* all distinct texts, the most frequent first */
-    size_t value_count, dates;
-    bool numeric;
-};
-
-static bool is_blank(const char *text) {
+bool text_is_blank(const char *text) {
     return !text[strspn(text, " \t\r\n")];
 }
 
@@ -88,7 +68,7 @@ static void count_values(struct look *look) {
     tally.entry = memory_new(records + 1, sizeof *tally.entry);
     for (size_t record = 0; record < records; record++) {
         const char *text = cells_at(look->cells, record, look->index);
-        if (is_blank(text)) {
+        if (text_is_blank(text)) {
             look->column->blank++;
         } else {
             look->column->filled++;
@@ -387,7 +367,7 @@ static size_t listed(const struct look *look) {
 
 /* ---- roles ---- */
 
-static bool names_site(const struct look *look) {
+bool look_names_site(const struct look *look) {
     return name_has(&look->parts, "site siteid centre center clinic hospital practice ward");
 }
 
@@ -401,44 +381,49 @@ static enum guess_role role_of(const struct look *look) {
         return GUESS_DATE;
     }
     if (look->numeric && look->parts.count && strcmp(look->parts.part[look->parts.count - 1].text, "id") == 0) {
-        return names_site(look) ? GUESS_CATEGORY : GUESS_NOTHING; /* a number that only names something */
+        return look_names_site(look) ? GUESS_CATEGORY : GUESS_NOTHING; /* a number that only names something */
     }
-    bool small_codes = look->numeric && column->decimals == 0 && plain <= (names_site(look) ? 50u : 5u) &&
+    bool small_codes = look->numeric && column->decimals == 0 && plain <= (look_names_site(look) ? 50u : 5u) &&
                        column->filled >= 4 * plain && fabs(column->low) <= 1000 &&
-                       fabs(column->high) <= (names_site(look) ? 1e6 : 20);
+                       fabs(column->high) <= (look_names_site(look) ? 1e6 : 20);
     if (look->numeric && !small_codes) {
         return GUESS_NUMBER;
     }
-    return plain <= (names_site(look) ? 60u : 24u) && 2 * plain <= column->filled + 1 ? GUESS_CATEGORY : GUESS_NOTHING;
+    return plain <= (look_names_site(look) ? 60u : 24u) && 2 * plain <= column->filled + 1 ? GUESS_CATEGORY : GUESS_NOTHING;
 }
 
-static int participant_score(const struct look *look) {
+int look_names_participant(const struct look *look) {
     static const char words[] =
         "id pid ptid subjid usubjid subject subj participant patient patid pat pt record recordid studyid "
         "study randno screenno person";
     static const char weak[] = "rownames row rown obs case no nr num number x index";
+    const char *last = look->parts.count ? look->parts.part[look->parts.count - 1].text : "";
+    int score = name_has(&look->parts, words) ? 6 : name_has(&look->parts, weak) ? 3 : 0;
+    return score + (score && strlen(last) > 2 && strcmp(last + strlen(last) - 2, "id") == 0);
+}
+
+static int participant_score(const struct look *look) {
     const struct guess_column *column = look->column;
     if (column->filled == 0 || 10 * column->distinct < 9 * column->filled ||
         10 * column->filled < 9 * look->cells->records || column->decimals > 0 || look->dates) {
         return 0;
     }
     bool unique = column->distinct == column->filled;
-    int score = name_has(&look->parts, words) ? 6 : unique && name_has(&look->parts, weak) ? 3 : 0;
+    int score = look_names_participant(look);
+    score = score < 6 && !unique ? 0 : score;
     if (!score && unique && !look->numeric && look->index == 0) {
         score = 2;
     }
-    const char *last = look->parts.count ? look->parts.part[look->parts.count - 1].text : "";
-    score += score && strlen(last) > 2 && strcmp(last + strlen(last) - 2, "id") == 0;
     return score ? score + (look->index == 0) + unique : 0;
 }
 
-static int arm_score(const struct look *look) {
+int guess_arm_score(const struct look *look) {
     static const char strong[] =
         "arm armcd actarm trt trtp treat treatment allocation alloc allocated randomised randomized "
         "randomisation randomization assigned assignment intervention rand trtgrp treatgrp studyarm";
-    static const char weak[] = "grp group tx rx therapy regimen condition drug cohort rgroup";
+    static const char weak[] = "grp group tx rx therapy regimen condition drug cohort rgroup diet";
     size_t levels = listed(look), least = SIZE_MAX, most = 0, total = 0;
-    if (levels < 2 || levels > 8 || look->column->series != NOWHERE ||
+    if (levels < 2 || levels > 8 || look->column->series != NOWHERE || look->column->varies ||
         name_has(&look->parts, "age bmi blood ethnic ethnicity risk race sex day date week duration") ||
         (look->column->role != GUESS_CATEGORY && look->column->role != GUESS_EVENT)) {
         return 0;
@@ -464,7 +449,8 @@ static bool event_name(const struct look *look) {
  * might be a code for missing. */
 static void keep_values(struct look *look) {
     struct guess_column *column = look->column;
-    bool all = column->role == GUESS_CATEGORY || column->role == GUESS_EVENT || column->role == GUESS_ARM;
+    bool all = column->role == GUESS_CATEGORY || column->role == GUESS_EVENT || column->role == GUESS_ARM ||
+               column->role == GUESS_VISIT;
     for (int filling = 0; filling < 2; filling++) {
         size_t kept = 0;
         for (size_t i = 0; i < look->value_count; i++) {
@@ -484,10 +470,11 @@ static void keep_values(struct look *look) {
     }
 }
 
-static void begin_look(struct look *look, struct guess *guess, const struct cells *cells, size_t index) {
-    struct guess_column *column = &guess->columns[index];
-    *look = (struct look){.cells = cells, .guess = guess, .column = column, .index = index};
-    *column = (struct guess_column){.name = cells->names[index], .unit = "", .series = NOWHERE};
+static void begin_look(struct look *look, struct guess *guess, const struct cells *cells, size_t file, size_t index) {
+    struct guess_column *column = &guess->columns[guess->files[file].first_column + index];
+    *look = (struct look){.cells = cells, .guess = guess, .column = column, .index = index, .file = file};
+    *column = (struct guess_column){
+        .name = cells->names[index], .full_name = cells->names[index], .unit = "", .series = NOWHERE, .file = file};
     name_take(&look->parts, column->name, &guess->arena);
     column->label = name_words(column->name, &guess->arena);
     const struct known_name *known = known_name_of(name_id(column->name, &guess->arena));
@@ -503,11 +490,12 @@ static void begin_look(struct look *look, struct guess *guess, const struct cell
     }
 }
 
-/* The columns with the best score; a role no other column may have. */
-static int best(struct look *looks, size_t count, int (*score)(const struct look *look)) {
+/* The column with the best score, among equals the first file's. */
+static int best_arm(const struct guess *guess, struct look *looks) {
     int found = NOWHERE, most = 0;
-    for (size_t i = 0; i < count; i++) {
-        int here = score(&looks[i]);
+    for (size_t i = 0; i < guess->column_count; i++) {
+        int here = guess_arm_score(&looks[i]);
+        here = here ? 2 * here + (looks[i].file == guess->first) : 0;
         if (here > most) {
             most = here;
             found = (int)i;
@@ -520,44 +508,98 @@ static void settle_events(struct guess *guess, struct look *looks) {
     size_t last = 0;
     for (size_t i = 0; i < guess->series_count; i++) {
         size_t at = guess->series[i].columns[guess->series[i].count - 1];
-        last = at > last ? at : last;
+        last = at > last && !guess->series[i].codes[guess->series[i].count - 1] ? at : last;
     }
     for (size_t i = 0; i < guess->column_count; i++) {
         struct guess_column *column = &guess->columns[i];
-        bool after = guess->series_count && i > last && !looks[i].numeric;
+        bool after = guess->series_count && i > last && !looks[i].numeric && !guess->files[looks[i].file].by_visit;
         if (column->role == GUESS_CATEGORY && yes_and_no(&looks[i]) && (event_name(&looks[i]) || after)) {
             column->role = GUESS_EVENT;
         }
     }
 }
 
-void guess_take(struct guess *guess, const struct cells *cells, const char *name) {
-    *guess = (struct guess){.name = name,
-        .records = cells->records,
-        .column_count = cells->columns,
-        .participant = NOWHERE,
-        .arm = NOWHERE};
+int guess_identifier(const struct look *looks, size_t count) {
+    int found = NOWHERE, most = 0;
+    for (size_t i = 0; i < count; i++) {
+        int here = participant_score(&looks[i]);
+        if (here > most) {
+            most = here;
+            found = (int)i;
+        }
+    }
+    return found;
+}
+
+static const char *free_file_id(const struct guess *guess, size_t count, const char *name, struct arena *arena) {
+    const char *end = strrchr(name, '.');
+    const char *wanted = name_id(end && end != name ? arena_bytes(arena, name, (size_t)(end - name)) : name, arena);
+    const char *id = wanted;
+    for (size_t i = 0, n = 2; i < count; i++) {
+        if (strcmp(guess->files[i].id, id) == 0) {
+            id = arena_format(arena, "%s_%zu", wanted, n++);
+            i = (size_t)-1;
+        }
+    }
+    return id;
+}
+
+static void begin_files(struct guess *guess, const struct guess_source *sources, size_t count) {
+    *guess = (struct guess){.file_count = count, .participant = NOWHERE, .arm = NOWHERE};
     arena_init(&guess->arena);
-    guess->columns = ARENA_NEW(&guess->arena, cells->columns, struct guess_column);
-    struct look *looks = memory_new(cells->columns, sizeof *looks);
-    for (size_t i = 0; i < cells->columns; i++) {
-        begin_look(&looks[i], guess, cells, i);
+    guess->files = ARENA_NEW(&guess->arena, count, struct guess_file);
+    for (size_t f = 0; f < count; f++) {
+        guess->files[f] = (struct guess_file){.id = free_file_id(guess, f, sources[f].name, &guess->arena),
+            .name = sources[f].name,
+            .records = sources[f].cells->records,
+            .first_column = guess->column_count,
+            .column_count = sources[f].cells->columns,
+            .participant = NOWHERE,
+            .visit = NOWHERE};
+        guess->column_count += sources[f].cells->columns;
     }
-    guess->participant = best(looks, cells->columns, participant_score);
-    if (guess->participant != NOWHERE) {
-        guess->columns[guess->participant].role = GUESS_PARTICIPANT;
+    guess->columns = ARENA_NEW(&guess->arena, guess->column_count, struct guess_column);
+}
+
+static void name_columns(struct guess *guess) {
+    const struct guess_file *first = &guess->files[guess->first];
+    guess->name = first->name;
+    guess->records = first->records;
+    guess->participant = first->participant;
+    guess->with_files = guess->file_count > 1 || first->by_visit;
+    for (size_t i = 0; i < guess->column_count && guess->with_files; i++) {
+        struct guess_column *column = &guess->columns[i];
+        column->full_name = arena_format(&guess->arena, "%s.%s", guess->files[column->file].id, column->name);
     }
-    guess->arm = best(looks, cells->columns, arm_score);
+}
+
+void guess_take_all(struct guess *guess, const struct guess_source *sources, size_t count) {
+    begin_files(guess, sources, count);
+    struct look *looks = memory_new(guess->column_count, sizeof *looks);
+    for (size_t f = 0; f < count; f++) {
+        for (size_t i = 0; i < sources[f].cells->columns; i++) {
+            begin_look(&looks[guess->files[f].first_column + i], guess, sources[f].cells, f, i);
+        }
+    }
+    guess_layouts(guess, sources, looks);
+    name_columns(guess);
+    guess->arm = best_arm(guess, looks);
     if (guess->arm != NOWHERE) {
         guess->columns[guess->arm].role = GUESS_ARM;
     }
     guess_visits(guess);
+    guess_visit_columns(guess, looks);
     settle_events(guess, looks);
-    for (size_t i = 0; i < cells->columns; i++) {
+    for (size_t i = 0; i < guess->column_count; i++) {
         keep_values(&looks[i]);
         memory_free(looks[i].values);
     }
     memory_free(looks);
+}
+
+void guess_take(struct guess *guess, const struct cells *cells, const char *name) {
+    const struct guess_source source = {.name = name, .cells = cells};
+    guess_take_all(guess, &source, 1);
 }
 
 void guess_release(struct guess *guess) {

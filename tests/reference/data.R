@@ -67,3 +67,28 @@ export("sites", data.frame(glucose = MASS::Pima.tr$glu[measured], height = heigh
                            bmi = MASS::Pima.tr$bmi[measured]),
        "glucose (mg/dL) and bmi: Pima.tr, Smith et al. 1988; height (cm): survey, Venables & Ripley 1999;",
        "weight (lb): birthwt, Hosmer & Lemeshow 1989; all from R's package MASS. Licence of the package: GPL-2 or GPL-3.")
+# Data sets whose columns nobody named for us: what the guesses on the form are checked with.
+export("respiratory", subset(HSAUR3::respiratory, as.integer(subject) <= 60),
+       "Respiratory status by month in a randomised trial in two centres (the first 60 patients);",
+       "Davis 1991, Semi-parametric analysis of repeated measurements; from R's package HSAUR3.",
+       "Licence of the package: GPL-2.")
+export("toenail", subset(HSAUR3::toenail, as.integer(patientID) <= 60),
+       "Toenail infection by visit in a randomised trial (the first 60 patients); De Backer et al. 1998,",
+       "J Am Acad Dermatol 38:S57; from R's package HSAUR3. Licence of the package: GPL-2.")
+export("seizures", HSAUR3::epilepsy, "Seizures in four periods of two weeks in a randomised trial, one row per period;",
+       "Thall & Vail 1990, Biometrics 46:657; from R's package HSAUR3 (epilepsy). Licence of the package: GPL-2.")
+export("seizures-wide", robustbase::epilepsy, "The same trial, one row per patient: from R's package robustbase (epilepsy).",
+       "Licence of the package: GPL-2 or later.")
+export("bacteria", MASS::bacteria, "Presence of a bacterium by week in a randomised trial; Menzies School of Health",
+       "Research 1999-2000; from R's package MASS. Licence of the package: GPL-2 or GPL-3.")
+export("chicks", datasets::ChickWeight, "Weights (g) of chicks by day on four diets; Crowder & Hand 1990,",
+       "Analysis of Repeated Measures, example 5.3; from R's package datasets (ChickWeight). Licence: GPL-2 or GPL-3 (part of R).")
+export("plasma", HSAUR3::plasma, "Erythrocyte sedimentation and plasma proteins; Collett & Jemain 1985,",
+       "Sains Malaysiana 4:493; from R's package HSAUR3. Licence of the package: GPL-2.")
+export("trees-ozone", MASS::Sitka, "Log-size of spruce trees by day, in ozone-enriched air and in controls; Diggle et al. 1994,",
+       "Analysis of Longitudinal Data; from R's package MASS (Sitka). Licence of the package: GPL-2 or GPL-3.")
+export("schizophrenia", HSAUR3::schizophrenia2, "Thought disorder by month after admission; Davis 2002,",
+       "Statistical Methods for the Analysis of Repeated Measurements; from R's package HSAUR3 (schizophrenia2).",
+       "Licence of the package: GPL-2.")
+export("calcium", boot::calcium, "Calcium uptake of cells by time; Rawlings 1988, Applied Regression Analysis;",
+       "from R's package boot. Licence of the package: unlimited.")
