@@ -24,7 +24,7 @@ const char *guess_role_name(enum guess_role role); /* "nothing", "participant", 
 /* One received file, and what a person has said of it; what was not said is guessed. */
 enum guess_layout { LAYOUT_GUESSED, LAYOUT_PARTICIPANT, LAYOUT_VISIT };
 struct guess_source {
-    const char *name;
+    const char *name, *sheet; /* sheet: of a spreadsheet with several, NULL: the only one */
     const struct cells *cells;
     enum guess_layout layout;
     const char *participant, *visit; /* names of columns; NULL, or one that the file does not have: guessed */
@@ -39,7 +39,7 @@ struct guess_code { /* a visit of a file with one row per participant and visit 
 };
 
 struct guess_file {
-    const char *id, *name; /* id: one word from the name, as the plan's "files" has it */
+    const char *id, *name, *sheet; /* id: one word from the name, as the plan's "files" has it */
     size_t records;
     size_t first_column, column_count; /* among the guess's columns */
     bool by_visit;
@@ -97,7 +97,7 @@ struct guess {
     size_t records;
     struct guess_file *files; /* in the order given */
     size_t file_count, first; /* first: the file that has every participant */
-    bool with_files;          /* the plan has "files": there are several, or the one has a row per visit */
+    bool with_files;          /* the plan has "files": there are several, or the one has a row per visit or a sheet */
     struct guess_column *columns;
     size_t column_count;
     struct guess_series *series;
@@ -115,7 +115,7 @@ void guess_release(struct guess *guess);
 /* An object: {"name", "records", "participant", "arm", "columns": [{"name", "label", "unit", "role", "filled", "blank",
  * "distinct", "numbers", "unreadable", "low", "median", "high", "decimals", "series", "visit", "values": [{"text",
  * "label", "count", "listed", "missing_code"}]}], "series": [{"id", "label", "unit", "scale", "better", "visits":
- * [{"label", "column"}]}], "missing_codes": [{"code", "columns": [NAME]}], "files": [{"id", "name", "records", "columns",
+ * [{"label", "column"}]}], "missing_codes": [{"code", "columns": [NAME]}], "files": [{"id", "name", "sheet", "records", "columns",
  * "first", "layout", "participant", "participants", "shared", "visit", "codes": [{"code", "label", "records"}]}]};
  * participant, arm and visit are column names or null. Where the plan has "files" the columns' names are FILE.COLUMN, a
  * column also has "file", "layout" and "varies", and a series' columns are FILE.COLUMN or FILE.COLUMN@CODE; a file's own

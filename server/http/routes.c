@@ -3,7 +3,7 @@
 #include "base/hash.h"
 #include "exhibits/registry.h"
 #include "server/http/guards.h"
-#include "intake/cells.h"
+#include "intake/read.h"
 #include "trial/guess.h"
 #include <cjson/cJSON.h>
 #include <dirent.h>
@@ -375,37 +375,86 @@ static void answer_decisions(struct server_state *state, const struct request *r
     cJSON_Delete(object);
 }
 
+/* ---- drafts: files on their way to a study ---- */
+
+/* Reads all files of the draft and answers what they mean; `sources` says per file what a person has said (name and cells
+ * are filled in here). */
+static bool answer_guess(
+    const struct draft *draft, struct guess_source *sources, uint64_t id, struct reply *reply, struct fault *fault) {
+    struct cells *cells = ARENA_NEW(&reply->arena, draft->count, struct cells);
+    size_t read = 0;
+    while (read < draft->count) {
+        const struct draft_file *file = &draft->files[read];
+        if (!read_cells(&cells[read], file->bytes, file->length, file->name, file->sheet, fault)) {
+            break;
+        }
+        sources[read].name = file->name;
+        sources[read].sheet = file->sheet;
+        sources[read].cells = &cells[read];
+        read++;
+    }
+    bool done = read == draft->count;
+    if (done) {
+        struct guess guess;
+        struct json json;
+        guess_take_all(&guess, sources, draft->count);
+        json_init(&json, &reply->body);
+        json_object(&json);
+        json_field_integer(&json, "draft", (int64_t)id);
+        json_key(&json, "guess");
+        guess_json(&guess, &json);
+        json_key(&json, "plan");
+        guess_plan_json(&guess, &json);
+        json_close(&json);
+        json_finish(&json);
+        guess_release(&guess);
+        reply->content_type = "application/json";
+    }
+    while (read) {
+        cells_release(&cells[--read]);
+    }
+    return done;
+}
+
+static bool take_draft(struct server_state *state, double id, struct draft *taken, struct fault *fault) {
+    return (id >= 1 && id < 1e15 && draft_take(state, (uint64_t)id, taken)) ||
+           fault_set(fault, FAULT_MISSING, "that file is no longer at hand; drop it on the page again");
+}
+
+static bool is_sheet_or_file(const char *text) {
+    return *text && strlen(text) <= 200;
+}
+
 static bool draft(struct server_state *state, const struct request *request, struct reply *reply, struct fault *fault) {
-    const char *name = request_asked(request, "name");
+    const char *name = request_asked(request, "name"), *sheet = request_asked(request, "sheet");
+    const char *said = request_asked(request, "draft");
     for (size_t i = 0; i < request->query_count; i++) {
-        if (strcmp(request->query[i].name, "name") != 0) {
-            return fault_set(fault, FAULT_INPUT, "\"%.60s\" is not known here; known is: name", request->query[i].name);
+        const char *asked = request->query[i].name;
+        if (strcmp(asked, "name") != 0 && strcmp(asked, "draft") != 0 && strcmp(asked, "sheet") != 0) {
+            return fault_set(fault, FAULT_INPUT, "\"%.60s\" is not known here; known are: name draft sheet", asked);
         }
     }
-    if (!name || !*name || strlen(name) > 200 || strchr(name, '/')) {
+    if (!name || !is_sheet_or_file(name) || strchr(name, '/') || (sheet && !is_sheet_or_file(sheet))) {
         return fault_set(fault, FAULT_INPUT, "say the file's name, without its folder: /drafts?name=export.csv");
     }
-    struct cells cells;
-    if (!cells_read(&cells, request->body ? request->body : "", (size_t)request->body_length, name, fault)) {
+    struct cells cells; /* a file that cannot be read leaves the draft as it was */
+    const char *bytes = request->body ? request->body : "";
+    if (!read_cells(&cells, bytes, (size_t)request->body_length, name, sheet, fault)) {
         return false;
     }
-    uint64_t id = draft_keep(state, name, request->body, (size_t)request->body_length);
-    struct guess guess;
-    guess_take(&guess, &cells, name);
-    struct json json;
-    json_init(&json, &reply->body);
-    json_object(&json);
-    json_field_integer(&json, "draft", (int64_t)id);
-    json_key(&json, "guess");
-    guess_json(&guess, &json);
-    json_key(&json, "plan");
-    guess_plan_json(&guess, &json);
-    json_close(&json);
-    json_finish(&json);
-    guess_release(&guess);
     cells_release(&cells);
-    reply->content_type = "application/json";
-    return true;
+    struct draft held = {0};
+    if (said && !take_draft(state, said[strspn(said, "0123456789")] ? 0 : strtod(said, NULL), &held, fault)) {
+        return false;
+    }
+    held.id = held.id ? held.id : draft_number(state);
+    struct guess_source sources[DRAFT_FILES] = {0};
+    bool done = draft_add(&held, name, sheet, bytes, (size_t)request->body_length, fault) &&
+                answer_guess(&held, sources, held.id, reply, fault);
+    if (held.count) {
+        draft_give_back(state, &held);
+    }
+    return done;
 }
 
 static void answer_drafts(struct server_state *state, const struct request *request, struct reply *reply) {
@@ -414,6 +463,113 @@ static void answer_drafts(struct server_state *state, const struct request *requ
     if (!draft(state, request, reply, &fault)) {
         reply_fault(reply, &fault);
     }
+}
+
+/* A text of an entry of "files", NULL where it is not there. */
+static bool said_text(const cJSON *item, const char *key, const char **text, struct fault *fault) {
+    const cJSON *value = cJSON_GetObjectItemCaseSensitive(item, key);
+    *text = cJSON_IsString(value) ? value->valuestring : NULL;
+    return !value || *text || fault_set(fault, FAULT_INPUT, "\"%s\" of a file must be a text in quotes", key);
+}
+
+static bool said_codes(const cJSON *item, struct guess_source *source, struct arena *arena, struct fault *fault) {
+    const cJSON *codes = cJSON_GetObjectItemCaseSensitive(item, "codes");
+    if (!codes) {
+        return true;
+    }
+    size_t count = cJSON_IsArray(codes) ? (size_t)cJSON_GetArraySize(codes) : SIZE_MAX;
+    if (count > 80) {
+        return fault_set(fault, FAULT_INPUT, "\"codes\" of a file must be a list of at most 80 visit codes, in order of time");
+    }
+    const char **list = ARENA_NEW(arena, count + 1, const char *);
+    for (const cJSON *code = codes->child; code; code = code->next) {
+        if (!cJSON_IsString(code) || !*code->valuestring) {
+            return fault_set(fault, FAULT_INPUT, "\"codes\" of a file must be texts in quotes that are not empty");
+        }
+        for (size_t i = 0; i < source->code_count; i++) {
+            if (strcmp(list[i], code->valuestring) == 0) {
+                return fault_set(fault, FAULT_INPUT, "\"codes\" of a file lists \"%.60s\" twice; keep one", code->valuestring);
+            }
+        }
+        list[source->code_count++] = code->valuestring;
+    }
+    source->codes = list;
+    return true;
+}
+
+/* One entry of "files": which of the draft's it is, and what is said of it. */
+static bool said_of(const cJSON *item, const struct draft *draft, struct guess_source *sources, bool *named, struct arena *arena,
+    struct fault *fault) {
+    const char *name, *layout;
+    if (!cJSON_IsObject(item)) {
+        return fault_set(fault, FAULT_INPUT, "\"files\" must list objects, each with the file's \"name\"");
+    }
+    if (!only_keys(item, "name layout participant visit codes", fault) || !said_text(item, "name", &name, fault) ||
+        !said_text(item, "layout", &layout, fault)) {
+        return false;
+    }
+    size_t at = 0;
+    while (at < draft->count && (!name || strcmp(draft->files[at].name, name) != 0)) {
+        at++;
+    }
+    if (at == draft->count) {
+        return fault_set(fault, FAULT_INPUT, "\"files\" names \"%.80s\", and no such file has been dropped", name ? name : "");
+    }
+    if (named[at]) {
+        return fault_set(fault, FAULT_INPUT, "\"files\" names \"%.80s\" twice; keep one", name);
+    }
+    struct guess_source *source = &sources[at];
+    named[at] = true;
+    source->layout = !layout                                ? LAYOUT_GUESSED
+                     : strcmp(layout, "participant") == 0 ? LAYOUT_PARTICIPANT
+                                                            : LAYOUT_VISIT;
+    if (layout && source->layout == LAYOUT_VISIT && strcmp(layout, "visit") != 0) {
+        return fault_set(fault, FAULT_INPUT, "\"layout\" of a file must be \"participant\" or \"visit\"");
+    }
+    return said_text(item, "participant", &source->participant, fault) && said_text(item, "visit", &source->visit, fault) &&
+           said_codes(item, source, arena, fault);
+}
+
+static bool guess_again(struct server_state *state, const cJSON *object, struct reply *reply, struct fault *fault) {
+    const cJSON *id = cJSON_GetObjectItemCaseSensitive(object, "draft");
+    const cJSON *files = cJSON_GetObjectItemCaseSensitive(object, "files");
+    if (!only_keys(object, "draft files", fault)) {
+        return false;
+    }
+    if (!cJSON_IsNumber(id)) {
+        return fault_set(fault, FAULT_INPUT, "\"draft\" is missing: give the number that /drafts answered");
+    }
+    if (!cJSON_IsArray(files) || !files->child) {
+        return fault_set(fault, FAULT_INPUT, "\"files\" is missing: name at least one of the files that were dropped");
+    }
+    struct draft held;
+    if (!take_draft(state, id->valuedouble, &held, fault)) {
+        return false;
+    }
+    struct guess_source sources[DRAFT_FILES] = {0};
+    bool named[DRAFT_FILES] = {false}, done = true;
+    for (const cJSON *item = files->child; item && done; item = item->next) {
+        done = said_of(item, &held, sources, named, &reply->arena, fault);
+    }
+    for (size_t i = held.count; i-- > 0 && done;) {
+        if (!named[i]) {
+            draft_drop(&held, i);
+            memmove(&sources[i], &sources[i + 1], (held.count - i) * sizeof *sources);
+        }
+    }
+    done = done && answer_guess(&held, sources, held.id, reply, fault);
+    draft_give_back(state, &held);
+    return done;
+}
+
+static void answer_guesses(struct server_state *state, const struct request *request, struct reply *reply) {
+    struct fault fault;
+    fault_init(&fault);
+    cJSON *object = body_object(request, &fault);
+    if (!object || !guess_again(state, object, reply, &fault)) {
+        reply_fault(reply, &fault);
+    }
+    cJSON_Delete(object);
 }
 
 /* "file" of the body as a path in the folder. */
@@ -461,11 +617,15 @@ static bool create(struct server_state *state, const struct request *request, co
     if (!none_open(state, fault)) {
         return false;
     }
-    if (!draft_take(state, (uint64_t)id->valuedouble, &taken)) {
-        return fault_set(fault, FAULT_MISSING, "that file is no longer at hand; drop it on the page again");
+    if (!take_draft(state, id->valuedouble, &taken, fault)) {
+        return false;
+    }
+    struct study_file files[DRAFT_FILES];
+    for (size_t i = 0; i < taken.count; i++) {
+        files[i] = (struct study_file){taken.files[i].name, taken.files[i].bytes, taken.files[i].length};
     }
     char *plan_text = cJSON_Print(plan);
-    bool done = study_create(path, taken.name, taken.bytes, taken.length, "the plan", plan_text ? plan_text : "",
+    bool done = study_create_from(path, files, taken.count, "the plan", plan_text ? plan_text : "",
         plan_text ? strlen(plan_text) : 0, by, account, fault);
     cJSON_free(plan_text);
     done = done && server_open_study(state, path, fault);
@@ -549,6 +709,7 @@ const struct route routes[] = {
     {"GET", "/exhibit/", "an exhibit: NAME, NAME.json, NAME.csv or NAME.svg, with its arguments", 0, answer_exhibit},
     {"POST", "/decisions", "records a batch of decisions", 4 * ONE_MB, answer_decisions},
     {"POST", "/drafts", "reads an export and guesses what its columns mean", 256 * ONE_MB, answer_drafts},
+    {"POST", "/guesses", "guesses again over files of a draft, with what a person says of their layout", 4 * ONE_MB, answer_guesses},
     {"POST", "/studies", "makes a study from a draft and a plan", 4 * ONE_MB, answer_studies},
     {"POST", "/open", "opens a study of the folder", 4 * ONE_MB, answer_open},
     {"POST", "/close", "closes the open study", 4 * ONE_MB, answer_close},

@@ -134,10 +134,49 @@ void account_name(char *name, size_t size) {
 
 /* ---- drafts ---- */
 
+static void file_release(struct draft_file *file) {
+    memory_free(file->name);
+    memory_free(file->sheet);
+    memory_free(file->bytes);
+    *file = (struct draft_file){0};
+}
+
 void draft_release(struct draft *draft) {
-    memory_free(draft->name);
-    memory_free(draft->bytes);
+    for (size_t i = 0; i < draft->count; i++) {
+        file_release(&draft->files[i]);
+    }
     *draft = (struct draft){0};
+}
+
+void draft_drop(struct draft *draft, size_t file) {
+    draft->length -= draft->files[file].length;
+    file_release(&draft->files[file]);
+    draft->count--;
+    memmove(&draft->files[file], &draft->files[file + 1], (draft->count - file) * sizeof *draft->files);
+    draft->files[draft->count] = (struct draft_file){0};
+}
+
+bool draft_add(struct draft *draft, const char *name, const char *sheet, const char *bytes, size_t length, struct fault *fault) {
+    size_t at = 0;
+    while (at < draft->count && strcmp(draft->files[at].name, name) != 0) {
+        at++;
+    }
+    size_t others = draft->length - (at < draft->count ? draft->files[at].length : 0);
+    if (at == DRAFT_FILES) {
+        return fault_set(fault, FAULT_INPUT, "a study takes at most %d files here", DRAFT_FILES);
+    }
+    if (others + length > draft_room) {
+        return fault_set(fault, FAULT_INPUT, "%.80s and the files before it are together larger than the %zu MB that a study takes here",
+            name, draft_room >> 20);
+    }
+    if (at < draft->count) {
+        file_release(&draft->files[at]);
+    }
+    draft->files[at] = (struct draft_file){memory_text(name), memory_text(sheet), memory_new(length + 1, 1), length};
+    memcpy(draft->files[at].bytes, bytes, length);
+    draft->count += at == draft->count;
+    draft->length = others + length;
+    return true;
 }
 
 /* With the mutex held: the place of the oldest draft, or a free one. */
@@ -166,16 +205,6 @@ static void place_draft(struct server_state *state, const struct draft *draft) {
     *place = *draft;
 }
 
-uint64_t draft_keep(struct server_state *state, const char *name, const char *bytes, size_t length) {
-    struct draft draft = {.name = memory_text(name), .bytes = memory_new(length + 1, 1), .length = length};
-    memcpy(draft.bytes, bytes, length);
-    pthread_mutex_lock(&state->mutex);
-    draft.id = ++state->last_draft;
-    place_draft(state, &draft);
-    pthread_mutex_unlock(&state->mutex);
-    return draft.id;
-}
-
 bool draft_take(struct server_state *state, uint64_t id, struct draft *draft) {
     bool found = false;
     pthread_mutex_lock(&state->mutex);
@@ -188,6 +217,13 @@ bool draft_take(struct server_state *state, uint64_t id, struct draft *draft) {
     }
     pthread_mutex_unlock(&state->mutex);
     return found;
+}
+
+uint64_t draft_number(struct server_state *state) {
+    pthread_mutex_lock(&state->mutex);
+    uint64_t id = ++state->last_draft;
+    pthread_mutex_unlock(&state->mutex);
+    return id;
 }
 
 void draft_give_back(struct server_state *state, struct draft *draft) {

@@ -13,10 +13,15 @@ struct session {
     uint64_t used;        /* for throwing out the one unused for longest */
 };
 
-struct draft {
-    uint64_t id; /* 0 where the place is free */
-    char *name, *bytes;
+struct draft_file {
+    char *name, *sheet, *bytes; /* sheet: NULL where none was named */
     size_t length;
+};
+enum { DRAFT_FILES = 20 };
+struct draft { /* files dropped on the page that are to become one study */
+    uint64_t id; /* 0 where the place is free */
+    struct draft_file files[DRAFT_FILES];
+    size_t count, length; /* length: of all together */
 };
 
 struct server_state {
@@ -48,11 +53,15 @@ bool session_known(struct server_state *state, const char *cookie);
 void session_by(struct server_state *state, const char *cookie, const char *by); /* remembers who is deciding */
 const char *session_who(struct server_state *state, const char *cookie, char by[BY_SIZE]); /* or "not said" */
 
-/* Keeps a copy of the bytes; the oldest drafts make room. */
-uint64_t draft_keep(struct server_state *state, const char *name, const char *bytes, size_t length);
+/* Adds a copy of a file to a draft that is in nobody's hands but the caller's; one of that name is replaced. A fault where there
+ * are too many, or they are too large together: then the draft is as before. */
+bool draft_add(struct draft *draft, const char *name, const char *sheet, const char *bytes, size_t length, struct fault *fault);
+void draft_drop(struct draft *draft, size_t file); /* takes a file out */
 /* Takes the draft out of the state (the caller gives it back or releases it), so that nobody pushes it out meanwhile.
  */
 bool draft_take(struct server_state *state, uint64_t id, struct draft *draft);
+uint64_t draft_number(struct server_state *state); /* for a new draft's id */
+/* Puts a draft with an id into the state and empties it; the oldest drafts make room. */
 void draft_give_back(struct server_state *state, struct draft *draft);
 void draft_release(struct draft *draft);
 #endif

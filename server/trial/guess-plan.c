@@ -187,6 +187,7 @@ static void file_json(const struct guess *guess, size_t index, struct json *json
     json_object(json);
     json_field_string(json, "id", file->id);
     json_field_string(json, "name", file->name);
+    json_field_string(json, "sheet", file->sheet);
     json_field_integer(json, "records", (int64_t)file->records);
     json_key_array(json, "columns");
     for (size_t i = 0; i < file->column_count; i++) {
@@ -506,6 +507,9 @@ static void draft_file(struct draft *draft, const struct guess_file *file) {
     json_object(draft->json);
     json_field_string(draft->json, "id", file->id);
     json_field_string(draft->json, "name", file->name);
+    if (file->sheet) {
+        json_field_string(draft->json, "sheet", file->sheet);
+    }
     json_field_string(draft->json, "layout", file->by_visit ? "visit" : "participant");
     json_field_string(draft->json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
     if (file->by_visit) {

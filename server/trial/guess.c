@@ -551,6 +551,7 @@ static void begin_files(struct guess *guess, const struct guess_source *sources,
     for (size_t f = 0; f < count; f++) {
         guess->files[f] = (struct guess_file){.id = free_file_id(guess, f, sources[f].name, &guess->arena),
             .name = sources[f].name,
+            .sheet = sources[f].sheet,
             .records = sources[f].cells->records,
             .first_column = guess->column_count,
             .column_count = sources[f].cells->columns,
@@ -566,7 +567,7 @@ static void name_columns(struct guess *guess) {
     guess->name = first->name;
     guess->records = first->records;
     guess->participant = first->participant;
-    guess->with_files = guess->file_count > 1 || first->by_visit;
+    guess->with_files = guess->file_count > 1 || first->by_visit || first->sheet;
     for (size_t i = 0; i < guess->column_count && guess->with_files; i++) {
         struct guess_column *column = &guess->columns[i];
         column->full_name = arena_format(&guess->arena, "%s.%s", guess->files[column->file].id, column->name);

@@ -64,9 +64,9 @@ static const struct {
     {"half a character of UTF-16", "\377\376i\000d\000,\000x", 9, 1, 9,
         "x.csv, line 1, byte 9: half a character of UTF-16 at the end of the file; "
         "save the file as UTF-8 and load that"},
-    {"a compressed folder", "PK\003\004\000\000\000", 7, 1, 1,
-        "x.csv, line 1, column 1: a NUL byte, which no text file has; export the "
-        "file again as text and load that"},
+    {"a compressed folder", "PK\003\004\000\000\000", 7, 0, 0,
+        "x.csv begins as a spreadsheet (.xlsx) does but is cut short or damaged: it is not a whole zip; copy or export it "
+        "again and load that"},
     {"another delimiter in the middle", "id;x\n1;2\n1,2\n", 13, 3, 1,
         "x.csv, line 3, column 1: 1 field where the header has 2; mend the line or "
         "its quotes and load again"},
@@ -348,7 +348,16 @@ static const struct {
     {"POST", "/drafts", "", 400, "say the file's name, without its folder: /drafts?name=export.csv"},
     {"POST", "/drafts?name=", "", 400, "say the file's name, without its folder: /drafts?name=export.csv"},
     {"POST", "/drafts?name=a/b.csv", "", 400, "say the file's name, without its folder: /drafts?name=export.csv"},
-    {"POST", "/drafts?name=x&y=1", "", 400, "\"y\" is not known here; known is: name"},
+    {"POST", "/drafts?name=x&y=1", "", 400, "\"y\" is not known here; known are: name draft sheet"},
+    {"POST", "/drafts?name=x&draft=77", "id,x\n1,2\n", 404, "that file is no longer at hand; drop it on the page again"},
+    {"POST", "/drafts?name=x&draft=-1", "id,x\n1,2\n", 404, "that file is no longer at hand; drop it on the page again"},
+    {"POST", "/drafts?name=x&sheet=A", "id,x\n1,2\n", 400,
+        "x is a file of delimited text and has no sheets; take sheet \"A\" out of the plan's files"},
+    {"POST", "/guesses", "{\"files\":[]}", 400, "\"draft\" is missing: give the number that /drafts answered"},
+    {"POST", "/guesses", "{\"draft\":77}", 400, "\"files\" is missing: name at least one of the files that were dropped"},
+    {"POST", "/guesses", "{\"draft\":77,\"files\":[{\"name\":\"x\"}]}", 404,
+        "that file is no longer at hand; drop it on the page again"},
+    {"POST", "/guesses", "{\"draft\":77,\"files\":[{}],\"x\":1}", 400, "\"x\" is not known here; known are: draft files"},
 };
 
 static void every_broken_request_gets_its_sentence(void **state) {

@@ -275,6 +275,119 @@ static void a_study_is_made_from_a_dropped_file_by_the_guesses_alone(void **stat
     free(body);
 }
 
+/* ---- several files ---- */
+
+static const char people[] = "pid,arm,sex\nA1,x,F\nA2,y,M\nA3,x,F\nA4,y,M\nA5,x,F\nA6,y,M\n";
+static const char visits[] = "pid,visit,pain\nA1,V0,40\nA1,V8,31\nA2,V0,52\nA2,V8,50\nA3,V0,43\nA3,V8,33\nA4,V0,61\nA4,V8,57\n"
+                             "A5,V0,38\nA5,V8,30\nA6,V0,47\nA6,V8,46\n";
+
+static cJSON *draft_with(const struct house *house, const char *name, const char *csv, double draft) {
+    char target[96];
+    struct reply reply;
+    snprintf(target, sizeof target, draft > 0 ? "/drafts?name=%s&draft=%.0f" : "/drafts?name=%s", name, draft);
+    ask(house, "POST", target, csv, &reply);
+    if (reply.status != 200) {
+        fail_msg("%u %s", reply.status, reply.body.data);
+    }
+    cJSON *answer = json_of(&reply);
+    reply_release(&reply);
+    return answer;
+}
+
+static const char *in_guess(const cJSON *answer, int file, const char *key) {
+    const cJSON *files = cJSON_GetObjectItem(cJSON_GetObjectItem(answer, "guess"), "files");
+    const cJSON *value = cJSON_GetObjectItem(cJSON_GetArrayItem(files, file), key);
+    return cJSON_IsString(value) ? value->valuestring : NULL;
+}
+
+static int files_in(const cJSON *answer) {
+    return cJSON_GetArraySize(cJSON_GetObjectItem(cJSON_GetObjectItem(answer, "guess"), "files"));
+}
+
+static double id_of(const cJSON *answer) {
+    return cJSON_GetObjectItem(answer, "draft")->valuedouble;
+}
+
+static void a_study_is_made_from_two_files(void **state) {
+    const struct house *house = *state;
+    struct reply reply;
+    cJSON *first = draft_with(house, "visits.csv", visits, 0);
+    assert_string_equal(in_guess(first, 0, "layout"), "visit");
+    cJSON *both = draft_with(house, "people.csv", people, id_of(first));
+    assert_true(id_of(both) == id_of(first));
+    assert_int_equal(files_in(both), 2);
+    char target[96];
+    snprintf(target, sizeof target, "/drafts?name=people.csv&draft=%.0f", id_of(first));
+    ask(house, "POST", target, "id,x\n1\n", &reply); /* leaves the draft as it was */
+    assert_int_equal(reply.status, 400);
+    reply_release(&reply);
+    cJSON *ask_for = cJSON_CreateObject();
+    cJSON_AddNumberToObject(ask_for, "draft", id_of(both));
+    cJSON_AddStringToObject(ask_for, "file", "two.study");
+    cJSON_AddItemToObject(ask_for, "plan", cJSON_DetachItemFromObject(both, "plan"));
+    cJSON_AddStringToObject(ask_for, "by", "D Loader, data manager");
+    char *body = cJSON_PrintUnformatted(ask_for);
+    ask(house, "POST", "/studies", body, &reply);
+    if (reply.status != 201) {
+        fail_msg("%u %s", reply.status, reply.body.data);
+    }
+    cJSON *made = json_of(&reply);
+    assert_non_null(strstr(cJSON_GetObjectItem(made, "account")->valuestring, "visits.csv"));
+    reply_release(&reply);
+    ask(house, "GET", "/exhibit/flow.json", NULL, &reply);
+    assert_int_equal(reply.status, 200);
+    reply_release(&reply);
+    ask(house, "POST", "/close", "{}", &reply);
+    reply_release(&reply);
+    free(body);
+    cJSON_Delete(ask_for);
+    cJSON_Delete(made);
+    cJSON_Delete(first);
+    cJSON_Delete(both);
+}
+
+static void what_is_said_of_files_is_guessed_with_and_files_are_taken_out(void **state) {
+    const struct house *house = *state;
+    struct reply reply;
+    char body[512];
+    cJSON *first = draft_with(house, "visits.csv", visits, 0), *both = draft_with(house, "people.csv", people, id_of(first));
+    static const struct {
+        const char *files;
+        unsigned status;
+        const char *wanted; /* a part of the answer */
+    } asked[] = {
+        {"[{\"name\":\"visits.csv\",\"layout\":\"participant\"},{\"name\":\"people.csv\"}]", 200,
+            "\"layout\":\"participant\",\"participant\":\"pid\""},
+        {"[{\"name\":\"visits.csv\",\"layout\":\"visit\",\"visit\":\"visit\",\"codes\":[\"V8\",\"V0\"]},{\"name\":\"people.csv\"}]", 200,
+            "\"codes\":[\"V8\",\"V0\"]"},
+        {"[{\"name\":\"visits.csv\",\"layout\":\"table\"}]", 400, "must be \\\"participant\\\" or \\\"visit\\\""},
+        {"[{\"name\":\"visits.csv\",\"codes\":[\"V8\",\"V8\"]}]", 400, "lists \\\"V8\\\" twice"},
+        {"[{\"name\":\"visits.csv\",\"codes\":\"V8\"}]", 400, "must be a list of at most 80 visit codes"},
+        {"[{\"name\":\"visits.csv\",\"participant\":5}]", 400, "\\\"participant\\\" of a file must be a text in quotes"},
+        {"[{\"name\":\"visits.csv\"},{\"name\":\"visits.csv\"}]", 400, "names \\\"visits.csv\\\" twice"},
+        {"[{\"name\":\"x.csv\"}]", 400, "no such file has been dropped"},
+        {"[5]", 400, "must list objects"},
+        {"[{\"name\":\"people.csv\"}]", 200, "\"name\":\"people.csv\""},
+        {"[{\"name\":\"people.csv\"},{\"name\":\"visits.csv\"}]", 400, "no such file has been dropped"}, /* it was taken out */
+    };
+    for (size_t i = 0; i < sizeof asked / sizeof *asked; i++) {
+        snprintf(body, sizeof body, "{\"draft\":%.0f,\"files\":%s}", id_of(first), asked[i].files);
+        ask(house, "POST", "/guesses", body, &reply);
+        if (reply.status != asked[i].status || !strstr(reply.body.data, asked[i].wanted)) {
+            fail_msg("%s\n%u %s", asked[i].files, reply.status, reply.body.data);
+        }
+        reply_release(&reply);
+    }
+    cJSON_Delete(first);
+    cJSON_Delete(both);
+    cJSON *again = draft_with(house, "people.csv", people, 0);
+    cJSON *same = draft_with(house, "people.csv", "id,x\n1,2\n2,3\n", id_of(again)); /* the same name: in its place */
+    assert_int_equal(files_in(same), 1);
+    assert_null(strstr(cJSON_GetObjectItem(cJSON_GetObjectItem(same, "guess"), "name")->valuestring, "visits"));
+    cJSON_Delete(again);
+    cJSON_Delete(same);
+}
+
 static void a_refused_plan_leaves_the_draft_and_no_file(void **state) {
     const struct house *house = *state;
     struct reply reply;
@@ -399,6 +512,8 @@ int main(void) {
         WITH_STUDY(refused_decisions_name_their_entry_and_record_nothing),
         WITHOUT_STUDY(without_a_study_the_folder_is_listed),
         WITHOUT_STUDY(a_study_is_made_from_a_dropped_file_by_the_guesses_alone),
+        WITHOUT_STUDY(a_study_is_made_from_two_files),
+        WITHOUT_STUDY(what_is_said_of_files_is_guessed_with_and_files_are_taken_out),
         WITHOUT_STUDY(a_refused_plan_leaves_the_draft_and_no_file),
         WITHOUT_STUDY(old_drafts_make_room),
         WITHOUT_STUDY(a_study_is_opened_and_closed),
