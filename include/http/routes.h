@@ -10,16 +10,17 @@
  *   POST /decisions           {"version": N, "by": "Name, role", "decisions": [...]} -> {"version": M}
  *                             409 {"fault", "row", "column", "version"} where the study has moved past N;
  *                             otherwise a fault's row is the 1-based entry of the batch
- *   POST /drafts?name=FILE    the bytes of an export -> {"draft": ID, "guess": {...}, "plan": {...}} (see trial/guess.h). With
- *                             draft=ID the file joins those of that draft (one of the same name is replaced), and the answer
- *                             is about all of them; sheet=NAME says which sheet of a spreadsheet. A draft is kept in memory
- *                             until the server ends or newer ones push it out; at most 20 files and 512 MB together
- *   POST /guesses             {"draft": ID, "files": [{"name", "layout", "participant", "visit", "codes"}]} guesses again with
- *                             what a person says of each file; only "name" must stand, "layout" is participant or visit,
- *                             "codes" lists the visits in order of time. Files that are not named are taken out. Answers
- *                             as /drafts does
- *   POST /studies             {"draft": ID, "file": "NAME.study", "plan": {...}, "by": "Name, role"} makes the study of all
- *                             the draft's files in the folder and opens it -> 201 {"file", "account"}
+ *   POST /drafts?name=FILE    the bytes of an export -> {"draft": ID, "guess": {...}, "plan": {...}} (see
+ *                             trial/guess.h). With draft=ID the file joins those of that draft (one of the same name is
+ *                             replaced), and the answer is about all of them; sheet=NAME says which sheet of a
+ *                             spreadsheet. A draft is kept in memory until the server ends or newer ones push it out;
+ *                             at most 20 files and 512 MB together
+ *   POST /guesses             {"draft": ID, "files": [{"name", "layout", "participant", "visit", "codes"}]} guesses
+ *                             again with what a person says of each file; only "name" must stand, "layout" is
+ *                             participant or visit, "codes" lists the visits in order of time. Files that are not named
+ *                             are taken out. Answers as /drafts does
+ *   POST /studies             {"draft": ID, "file": "NAME.study", "plan": {...}, "by": "Name, role"} makes the study of
+ *                             all the draft's files in the folder and opens it -> 201 {"file", "account"}
  *   POST /open                {"file": "NAME.study"} opens a study of the folder -> {"file"}
  *   POST /close               {} -> {"closed": true}; running requests finish first
  *

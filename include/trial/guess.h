@@ -32,7 +32,7 @@ struct guess_source {
     size_t code_count;               /* 0: guessed */
 };
 
-struct guess_code { /* a visit of a file with one row per participant and visit */
+struct guess_code {           /* a visit of a file with one row per participant and visit */
     const char *code, *label; /* label in words: "Baseline", "8 weeks" */
     double order;             /* in time; NaN where the code says none */
     size_t records;
@@ -43,9 +43,9 @@ struct guess_file {
     size_t records;
     size_t first_column, column_count; /* among the guess's columns */
     bool by_visit;
-    int participant, visit; /* among the guess's columns, or NOWHERE */
-    size_t participants;    /* how many different identifiers */
-    size_t shared;          /* how many of them the first file has */
+    int participant, visit;   /* among the guess's columns, or NOWHERE */
+    size_t participants;      /* how many different identifiers */
+    size_t shared;            /* how many of them the first file has */
     struct guess_code *codes; /* by_visit: the visits that seem to be planned, in order of time */
     size_t code_count;
 };
@@ -105,25 +105,27 @@ struct guess {
     int participant, arm; /* columns, or NOWHERE; participant: the first file's */
 };
 
-/* What the columns of one file mean, guessed from nothing but the file. Borrows cells and name while the guess lives. */
+/* What the columns of one file mean, guessed from nothing but the file. Borrows cells and name while the guess lives.
+ */
 void guess_take(struct guess *guess, const struct cells *cells, const char *name);
-/* The same of several files that belong together, and of files with one row per participant and visit. Which column is the
- * identifier follows from names and from the values that the files share; the first file is the one with one row per
- * participant that knows the arm, else that has most participants. count >= 1. */
+/* The same of several files that belong together, and of files with one row per participant and visit. Which column is
+ * the identifier follows from names and from the values that the files share; the first file is the one with one row
+ * per participant that knows the arm, else that has most participants. count >= 1. */
 void guess_take_all(struct guess *guess, const struct guess_source *sources, size_t count);
 void guess_release(struct guess *guess);
 /* An object: {"name", "records", "participant", "arm", "columns": [{"name", "label", "unit", "role", "filled", "blank",
  * "distinct", "numbers", "unreadable", "low", "median", "high", "decimals", "series", "visit", "values": [{"text",
  * "label", "count", "listed", "missing_code"}]}], "series": [{"id", "label", "unit", "scale", "better", "visits":
- * [{"label", "column"}]}], "missing_codes": [{"code", "columns": [NAME]}], "files": [{"id", "name", "sheet", "records", "columns",
- * "first", "layout", "participant", "participants", "shared", "visit", "codes": [{"code", "label", "records"}]}]};
- * participant, arm and visit are column names or null. Where the plan has "files" the columns' names are FILE.COLUMN, a
- * column also has "file", "layout" and "varies", and a series' columns are FILE.COLUMN or FILE.COLUMN@CODE; a file's own
- * "participant" and "visit" are as in its header, its "columns" the list of its header. */
+ * [{"label", "column"}]}], "missing_codes": [{"code", "columns": [NAME]}], "files": [{"id", "name", "sheet", "records",
+ * "columns", "first", "layout", "participant", "participants", "shared", "visit", "codes": [{"code", "label",
+ * "records"}]}]}; participant, arm and visit are column names or null. Where the plan has "files" the columns' names
+ * are FILE.COLUMN, a column also has "file", "layout" and "varies", and a series' columns are FILE.COLUMN or
+ * FILE.COLUMN@CODE; a file's own "participant" and "visit" are as in its header, its "columns" the list of its header.
+ */
 void guess_json(const struct guess *guess, struct json *json);
 /* A whole draft plan after the contract of plans: plan_read takes it when a participant's column and a number were
  * found
- * that may be an outcome. Plausible ranges, eligibility and adjustment are left for the person to say. Covariates of a file with one row per
- * visit are taken at its first visit. */
+ * that may be an outcome. Plausible ranges, eligibility and adjustment are left for the person to say. Covariates of a
+ * file with one row per visit are taken at its first visit. */
 void guess_plan_json(const struct guess *guess, struct json *json);
 #endif

@@ -377,8 +377,8 @@ static void answer_decisions(struct server_state *state, const struct request *r
 
 /* ---- drafts: files on their way to a study ---- */
 
-/* Reads all files of the draft and answers what they mean; `sources` says per file what a person has said (name and cells
- * are filled in here). */
+/* Reads all files of the draft and answers what they mean; `sources` says per file what a person has said (name and
+ * cells are filled in here). */
 static bool answer_guess(
     const struct draft *draft, struct guess_source *sources, uint64_t id, struct reply *reply, struct fault *fault) {
     struct cells *cells = ARENA_NEW(&reply->arena, draft->count, struct cells);
@@ -479,7 +479,8 @@ static bool said_codes(const cJSON *item, struct guess_source *source, struct ar
     }
     size_t count = cJSON_IsArray(codes) ? (size_t)cJSON_GetArraySize(codes) : SIZE_MAX;
     if (count > 80) {
-        return fault_set(fault, FAULT_INPUT, "\"codes\" of a file must be a list of at most 80 visit codes, in order of time");
+        return fault_set(
+            fault, FAULT_INPUT, "\"codes\" of a file must be a list of at most 80 visit codes, in order of time");
     }
     const char **list = ARENA_NEW(arena, count + 1, const char *);
     for (const cJSON *code = codes->child; code; code = code->next) {
@@ -488,7 +489,8 @@ static bool said_codes(const cJSON *item, struct guess_source *source, struct ar
         }
         for (size_t i = 0; i < source->code_count; i++) {
             if (strcmp(list[i], code->valuestring) == 0) {
-                return fault_set(fault, FAULT_INPUT, "\"codes\" of a file lists \"%.60s\" twice; keep one", code->valuestring);
+                return fault_set(
+                    fault, FAULT_INPUT, "\"codes\" of a file lists \"%.60s\" twice; keep one", code->valuestring);
             }
         }
         list[source->code_count++] = code->valuestring;
@@ -498,8 +500,8 @@ static bool said_codes(const cJSON *item, struct guess_source *source, struct ar
 }
 
 /* One entry of "files": which of the draft's it is, and what is said of it. */
-static bool said_of(const cJSON *item, const struct draft *draft, struct guess_source *sources, bool *named, struct arena *arena,
-    struct fault *fault) {
+static bool said_of(const cJSON *item, const struct draft *draft, struct guess_source *sources, bool *named,
+    struct arena *arena, struct fault *fault) {
     const char *name, *layout;
     if (!cJSON_IsObject(item)) {
         return fault_set(fault, FAULT_INPUT, "\"files\" must list objects, each with the file's \"name\"");
@@ -513,21 +515,20 @@ static bool said_of(const cJSON *item, const struct draft *draft, struct guess_s
         at++;
     }
     if (at == draft->count) {
-        return fault_set(fault, FAULT_INPUT, "\"files\" names \"%.80s\", and no such file has been dropped", name ? name : "");
+        return fault_set(
+            fault, FAULT_INPUT, "\"files\" names \"%.80s\", and no such file has been dropped", name ? name : "");
     }
     if (named[at]) {
         return fault_set(fault, FAULT_INPUT, "\"files\" names \"%.80s\" twice; keep one", name);
     }
     struct guess_source *source = &sources[at];
     named[at] = true;
-    source->layout = !layout                                ? LAYOUT_GUESSED
-                     : strcmp(layout, "participant") == 0 ? LAYOUT_PARTICIPANT
-                                                            : LAYOUT_VISIT;
+    source->layout = !layout ? LAYOUT_GUESSED : strcmp(layout, "participant") == 0 ? LAYOUT_PARTICIPANT : LAYOUT_VISIT;
     if (layout && source->layout == LAYOUT_VISIT && strcmp(layout, "visit") != 0) {
         return fault_set(fault, FAULT_INPUT, "\"layout\" of a file must be \"participant\" or \"visit\"");
     }
-    return said_text(item, "participant", &source->participant, fault) && said_text(item, "visit", &source->visit, fault) &&
-           said_codes(item, source, arena, fault);
+    return said_text(item, "participant", &source->participant, fault) &&
+           said_text(item, "visit", &source->visit, fault) && said_codes(item, source, arena, fault);
 }
 
 static bool guess_again(struct server_state *state, const cJSON *object, struct reply *reply, struct fault *fault) {
@@ -709,7 +710,8 @@ const struct route routes[] = {
     {"GET", "/exhibit/", "an exhibit: NAME, NAME.json, NAME.csv or NAME.svg, with its arguments", 0, answer_exhibit},
     {"POST", "/decisions", "records a batch of decisions", 4 * ONE_MB, answer_decisions},
     {"POST", "/drafts", "reads an export and guesses what its columns mean", 256 * ONE_MB, answer_drafts},
-    {"POST", "/guesses", "guesses again over files of a draft, with what a person says of their layout", 4 * ONE_MB, answer_guesses},
+    {"POST", "/guesses", "guesses again over files of a draft, with what a person says of their layout", 4 * ONE_MB,
+        answer_guesses},
     {"POST", "/studies", "makes a study from a draft and a plan", 4 * ONE_MB, answer_studies},
     {"POST", "/open", "opens a study of the folder", 4 * ONE_MB, answer_open},
     {"POST", "/close", "closes the open study", 4 * ONE_MB, answer_close},

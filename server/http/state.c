@@ -156,7 +156,8 @@ void draft_drop(struct draft *draft, size_t file) {
     draft->files[draft->count] = (struct draft_file){0};
 }
 
-bool draft_add(struct draft *draft, const char *name, const char *sheet, const char *bytes, size_t length, struct fault *fault) {
+bool draft_add(
+    struct draft *draft, const char *name, const char *sheet, const char *bytes, size_t length, struct fault *fault) {
     size_t at = 0;
     while (at < draft->count && strcmp(draft->files[at].name, name) != 0) {
         at++;
@@ -166,8 +167,9 @@ bool draft_add(struct draft *draft, const char *name, const char *sheet, const c
         return fault_set(fault, FAULT_INPUT, "a study takes at most %d files here", DRAFT_FILES);
     }
     if (others + length > draft_room) {
-        return fault_set(fault, FAULT_INPUT, "%.80s and the files before it are together larger than the %zu MB that a study takes here",
-            name, draft_room >> 20);
+        return fault_set(fault, FAULT_INPUT,
+            "%.80s and the files before it are together larger than the %zu MB that a study takes here", name,
+            draft_room >> 20);
     }
     if (at < draft->count) {
         file_release(&draft->files[at]);

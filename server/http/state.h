@@ -18,7 +18,7 @@ struct draft_file {
     size_t length;
 };
 enum { DRAFT_FILES = 20 };
-struct draft { /* files dropped on the page that are to become one study */
+struct draft {   /* files dropped on the page that are to become one study */
     uint64_t id; /* 0 where the place is free */
     struct draft_file files[DRAFT_FILES];
     size_t count, length; /* length: of all together */
@@ -53,9 +53,10 @@ bool session_known(struct server_state *state, const char *cookie);
 void session_by(struct server_state *state, const char *cookie, const char *by); /* remembers who is deciding */
 const char *session_who(struct server_state *state, const char *cookie, char by[BY_SIZE]); /* or "not said" */
 
-/* Adds a copy of a file to a draft that is in nobody's hands but the caller's; one of that name is replaced. A fault where there
- * are too many, or they are too large together: then the draft is as before. */
-bool draft_add(struct draft *draft, const char *name, const char *sheet, const char *bytes, size_t length, struct fault *fault);
+/* Adds a copy of a file to a draft that is in nobody's hands but the caller's; one of that name is replaced. A fault
+ * where there are too many, or they are too large together: then the draft is as before. */
+bool draft_add(
+    struct draft *draft, const char *name, const char *sheet, const char *bytes, size_t length, struct fault *fault);
 void draft_drop(struct draft *draft, size_t file); /* takes a file out */
 /* Takes the draft out of the state (the caller gives it back or releases it), so that nobody pushes it out meanwhile.
  */

@@ -13,7 +13,7 @@ enum { VISITS_MOST = 80 }; /* as many codes as a visit column may have */
 
 struct ranks {
     const struct look *look;
-    int32_t *of; /* per record; NOWHERE where blank */
+    int32_t *of;        /* per record; NOWHERE where blank */
     const char **texts; /* per number, in order of appearance */
     size_t count, filled;
 };
@@ -52,7 +52,8 @@ static int names_visit(const struct look *look, struct arena *arena) {
     if (look->value_count < 2 || look->value_count > VISITS_MOST) {
         return 0;
     }
-    if (name_has(&look->parts, "visit visits visitnum visitno visitcode vis visno timepoint occasion wave assessment period session")) {
+    if (name_has(&look->parts,
+            "visit visits visitnum visitno visitcode vis visno timepoint occasion wave assessment period session")) {
         return 6;
     }
     if (name_has(&look->parts, "time week weeks wk month months mth day days hour hours year event phase")) {
@@ -70,7 +71,8 @@ static int names_visit(const struct look *look, struct arena *arena) {
 }
 
 /* How many other columns of the file are the same in every record of one participant. */
-static size_t constants(const struct guess_file *file, const struct look *looks, const struct ranks *who, const struct look *visit) {
+static size_t constants(
+    const struct guess_file *file, const struct look *looks, const struct ranks *who, const struct look *visit) {
     size_t found = 0;
     const char **seen = memory_new(who->count + 1, sizeof *seen);
     for (size_t c = 0; c < file->column_count; c++) {
@@ -116,11 +118,12 @@ static size_t different_pairs(const struct ranks *who, const struct ranks *when,
 }
 
 /* 0: no; else the more the likelier. */
-static int pair_score(const struct guess_file *file, const struct look *looks, const struct ranks *who, const struct ranks *when,
-    int visit_name, bool said) {
+static int pair_score(const struct guess_file *file, const struct look *looks, const struct ranks *who,
+    const struct ranks *when, int visit_name, bool said) {
     size_t records = who->look->cells->records, both;
     int name = look_names_participant(who->look);
-    if (who->look == when->look || who->count < 3 || 10 * who->filled < 9 * records || 5 * who->filled < 6 * who->count) {
+    if (who->look == when->look || who->count < 3 || 10 * who->filled < 9 * records ||
+        5 * who->filled < 6 * who->count) {
         return 0; /* identifiers stand in most records, and in more than one record each */
     }
     size_t different = different_pairs(who, when, records, &both);
@@ -152,8 +155,8 @@ static bool may_identify(const struct look *look) {
 }
 
 /* The likeliest pair, with what is said of either taken as it is. */
-static int best_pair(struct guess *guess, const struct guess_file *file, const struct look *looks, int said_who, int said_when,
-    int *participant, int *visit) {
+static int best_pair(struct guess *guess, const struct guess_file *file, const struct look *looks, int said_who,
+    int said_when, int *participant, int *visit) {
     int most = 0;
     for (size_t v = file->first_column; v < file->first_column + file->column_count; v++) {
         int name = said_when == NOWHERE ? names_visit(&looks[v], &guess->arena) : said_when == (int)v ? 6 : 0;
@@ -184,7 +187,8 @@ static int best_pair(struct guess *guess, const struct guess_file *file, const s
 /* What nothing in the values supports but a person has said: the best names that are left. */
 static void fill_from_names(struct guess *guess, struct guess_file *file, const struct look *looks) {
     int most = 0;
-    for (size_t i = file->first_column; i < file->first_column + file->column_count && file->participant == NOWHERE; i++) {
+    for (size_t i = file->first_column; i < file->first_column + file->column_count && file->participant == NOWHERE;
+         i++) {
         int score = (int)i == file->visit ? 0 : look_names_participant(&looks[i]);
         if (score > most) {
             most = score;
@@ -203,8 +207,8 @@ static void fill_from_names(struct guess *guess, struct guess_file *file, const 
     file->visit = file->visit == NOWHERE ? found : file->visit;
 }
 
-static void settle_layout(struct guess *guess, struct guess_file *file, const struct guess_source *source, const struct look *looks,
-    int who) {
+static void settle_layout(struct guess *guess, struct guess_file *file, const struct guess_source *source,
+    const struct look *looks, int who) {
     int said_when = column_of(guess, file, source->visit);
     int participant = NOWHERE, visit = NOWHERE;
     int alone = guess_identifier(looks + file->first_column, file->column_count);
@@ -254,7 +258,8 @@ static void label_apart(struct guess_file *file) {
     }
 }
 
-static void settle_codes(struct guess *guess, struct guess_file *file, const struct guess_source *source, const struct look *look) {
+static void settle_codes(
+    struct guess *guess, struct guess_file *file, const struct guess_source *source, const struct look *look) {
     file->codes = ARENA_NEW(&guess->arena, look->value_count + source->code_count + 1, struct guess_code);
     for (size_t i = 0; i < source->code_count; i++) {
         struct guess_code *code = &file->codes[file->code_count++];
@@ -279,7 +284,8 @@ static void settle_codes(struct guess *guess, struct guess_file *file, const str
 
 /* ---- what varies by visit ---- */
 
-/* Does the number go up whenever the visit is a later one? For nearly all records that follow one of the same participant. */
+/* Does the number go up whenever the visit is a later one? For nearly all records that follow one of the same
+ * participant. */
 static bool rises(const struct look *look, const struct ranks *who, const int32_t *when) {
     size_t *last = memory_new(who->count + 1, sizeof *last); /* 1 + the record before */
     size_t steps = 0, with_time = 0;
@@ -289,7 +295,8 @@ static bool rises(const struct look *look, const struct ranks *who, const int32_
         }
         size_t before = last[who->of[r]];
         if (before && when[before - 1] != when[r]) {
-            double step = strtod(cells_at(look->cells, r, look->index), NULL) - strtod(cells_at(look->cells, before - 1, look->index), NULL);
+            double step = strtod(cells_at(look->cells, r, look->index), NULL) -
+                          strtod(cells_at(look->cells, before - 1, look->index), NULL);
             steps++;
             with_time += when[r] > when[before - 1] ? step > 0 : step < 0;
         }
@@ -301,13 +308,14 @@ static bool rises(const struct look *look, const struct ranks *who, const int32_
 
 /* A number that names the record, or a time that the visit's code says already, is no outcome. */
 static bool counts_records(const struct look *look, const struct ranks *who, const int32_t *when) {
-    static const char times[] = "visit visitnum time day days week weeks month months year years hour hours date wk mth";
+    static const char times[] =
+        "visit visitnum time day days week weeks month months year years hour hours date wk mth";
     return look->column->role == GUESS_NUMBER && look->column->varies &&
            (look_names_participant(look) || (name_has(&look->parts, times) && rises(look, who, when)));
 }
 
-static void count_by_visit(
-    struct guess *guess, const struct guess_file *file, const struct look *look, const struct ranks *who, const int32_t *when) {
+static void count_by_visit(struct guess *guess, const struct guess_file *file, const struct look *look,
+    const struct ranks *who, const int32_t *when) {
     struct guess_column *column = look->column;
     const char **seen = memory_new(who->count + 1, sizeof *seen);
     bool *differs = memory_new(who->count + 1, sizeof *differs);
@@ -334,7 +342,8 @@ static void count_by_visit(
     memory_free(differs);
 }
 
-static void look_by_visit(struct guess *guess, const struct guess_file *file, const struct look *looks, const struct ranks *who) {
+static void look_by_visit(
+    struct guess *guess, const struct guess_file *file, const struct look *looks, const struct ranks *who) {
     const struct look *visit = &looks[file->visit];
     int32_t *when = memory_new(file->records + 1, sizeof *when);
     struct map codes;
@@ -389,7 +398,8 @@ static size_t first_file(const struct guess *guess, const struct look *looks) {
     size_t found = 0, most = 0;
     for (size_t f = 0; f < guess->file_count; f++) {
         const struct guess_file *file = &guess->files[f];
-        size_t worth = file->participant == NOWHERE ? 0 : 1u + (file->by_visit ? 0u : 4u) + (has_arm(file, looks) ? 2u : 0u);
+        size_t worth =
+            file->participant == NOWHERE ? 0 : 1u + (file->by_visit ? 0u : 4u) + (has_arm(file, looks) ? 2u : 0u);
         const struct guess_file *best = &guess->files[found];
         if (f == 0 || worth > most || (worth == most && file->participants > best->participants)) {
             most = worth;
@@ -408,7 +418,8 @@ static size_t shared(const struct map *first, const struct look *look) {
 }
 
 /* The column whose values are the first file's identifiers; what its name says decides between equals. */
-static int shared_column(const struct guess_file *file, const struct look *looks, const struct map *first, const char *name) {
+static int shared_column(
+    const struct guess_file *file, const struct look *looks, const struct map *first, const char *name) {
     int found = NOWHERE;
     size_t most = 0;
     for (size_t i = file->first_column; i < file->first_column + file->column_count; i++) {
@@ -416,7 +427,8 @@ static int shared_column(const struct guess_file *file, const struct look *looks
         if (2 * here < looks[i].value_count || here < 3 || !may_identify(&looks[i])) {
             continue;
         }
-        here = 20 * here + (size_t)look_names_participant(&looks[i]) + (strcmp(looks[i].column->name, name) == 0 ? 10 : 0);
+        here =
+            20 * here + (size_t)look_names_participant(&looks[i]) + (strcmp(looks[i].column->name, name) == 0 ? 10 : 0);
         if (here > most) {
             most = here;
             found = (int)i;
@@ -443,8 +455,10 @@ static void join_files(struct guess *guess, const struct guess_source *sources, 
     for (size_t f = 0; f < guess->file_count; f++) {
         struct guess_file *file = &guess->files[f];
         bool said = column_of(guess, file, sources[f].participant) != NOWHERE;
-        bool poor = file->participant == NOWHERE || 2 * shared(&map, &looks[file->participant]) < looks[file->participant].value_count;
-        int better = f != guess->first && !said && poor ? shared_column(file, looks, &map, identifier->column->name) : NOWHERE;
+        bool poor = file->participant == NOWHERE ||
+                    2 * shared(&map, &looks[file->participant]) < looks[file->participant].value_count;
+        int better =
+            f != guess->first && !said && poor ? shared_column(file, looks, &map, identifier->column->name) : NOWHERE;
         if (better != NOWHERE) {
             settle_layout(guess, file, &sources[f], looks, better);
             count_participants(file, looks);
@@ -454,7 +468,8 @@ static void join_files(struct guess *guess, const struct guess_source *sources, 
     map_release(&map);
 }
 
-static void settle_roles(struct guess *guess, const struct guess_source *sources, struct look *looks, struct guess_file *file) {
+static void settle_roles(
+    struct guess *guess, const struct guess_source *sources, struct look *looks, struct guess_file *file) {
     if (file->participant != NOWHERE) {
         looks[file->participant].column->role = GUESS_PARTICIPANT;
     }
@@ -505,14 +520,16 @@ static size_t visits_of(const struct guess_file *file, const struct guess_column
         }
     }
     /* A screening value is no baseline where there is one. */
-    if (count > 2 && visit_code_is_screening(file->codes[visits[0]].order) && visit_code_is_baseline(file->codes[visits[1]].order)) {
+    if (count > 2 && visit_code_is_screening(file->codes[visits[0]].order) &&
+        visit_code_is_baseline(file->codes[visits[1]].order)) {
         memmove(visits, visits + 1, --count * sizeof *visits);
     }
     return count;
 }
 
 /* Measured at several visits and not always the same, or only after the baseline. */
-static bool an_outcome(const struct guess_file *file, const struct guess_column *column, const size_t *visits, size_t count) {
+static bool an_outcome(
+    const struct guess_file *file, const struct guess_column *column, const size_t *visits, size_t count) {
     bool after = count && visits[0] > 0 && !visit_code_is_baseline(file->codes[visits[0]].order);
     return column->role == GUESS_NUMBER && count && (count > 1 ? column->varies : after);
 }

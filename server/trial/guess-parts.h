@@ -57,20 +57,23 @@ struct look {
 bool look_names_site(const struct look *look);
 /* How much a name speaks of a participant's identifier: 0 not at all, 3 weakly, 6 plainly, one more ending in "id". */
 int look_names_participant(const struct look *look);
-/* The column of one file that identifies a participant by its name and by being different in every record, or NOWHERE. */
+/* The column of one file that identifies a participant by its name and by being different in every record, or NOWHERE.
+ */
 int guess_identifier(const struct look *looks, size_t count);
 int guess_arm_score(const struct look *look); /* 0: cannot be the arm */
 bool text_is_blank(const char *text);
 
 /* ---- layouts, see guess-layout.c ---- */
 
-/* How a column called `name` ("" for none) with this code says a time; false where it says none. The order is that of the
- * codes of a visit column and of names of columns alike. */
+/* How a column called `name` ("" for none) with this code says a time; false where it says none. The order is that of
+ * the codes of a visit column and of names of columns alike. */
 bool visit_code_read(const char *name, const char *code, struct arena *arena, double *order, const char **label);
 bool visit_code_is_screening(double order);
 bool visit_code_is_baseline(double order);
-/* Settles layout, identifier, visit column and codes of every file, and which file is first; then what varies by visit. */
-void guess_layouts(struct guess *guess, const struct guess_source *sources, struct look *looks); /* sets role and varies too */
+/* Settles layout, identifier, visit column and codes of every file, and which file is first; then what varies by visit.
+ */
+void guess_layouts(
+    struct guess *guess, const struct guess_source *sources, struct look *looks); /* sets role and varies too */
 /* Series of what was measured at several visits of files with one row per visit, after guess_visits. */
 void guess_visit_columns(struct guess *guess, struct look *looks);
 void guess_add_series(struct guess *guess, struct guess_series series); /* sets the columns' series and a free id */

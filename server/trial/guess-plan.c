@@ -83,7 +83,9 @@ static const char *place_name(const struct guess *guess, size_t column, const ch
 
 static const char *visit_of(const struct guess *guess, size_t column) {
     int series = guess->columns[column].series;
-    for (size_t i = 0; series != NOWHERE && !guess->files[guess->columns[column].file].by_visit && i < guess->series[series].count; i++) {
+    for (size_t i = 0;
+         series != NOWHERE && !guess->files[guess->columns[column].file].by_visit && i < guess->series[series].count;
+         i++) {
         if (guess->series[series].columns[i] == column) {
             return guess->series[series].visits[i];
         }
@@ -196,7 +198,8 @@ static void file_json(const struct guess *guess, size_t index, struct json *json
     json_close(json);
     json_field_bool(json, "first", index == guess->first);
     json_field_string(json, "layout", file->by_visit ? "visit" : "participant");
-    json_field_string(json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
+    json_field_string(
+        json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
     json_field_integer(json, "participants", (int64_t)file->participants);
     json_field_integer(json, "shared", (int64_t)file->shared);
     json_field_string(json, "visit", file->visit == NOWHERE ? NULL : guess->columns[file->visit].name);
@@ -323,7 +326,8 @@ static void draft_lone(struct draft *draft) {
     const struct guess *guess = draft->guess;
     for (size_t i = 0; i < guess->column_count; i++) {
         const struct guess_column *column = &guess->columns[i];
-        bool may_be = column->role == GUESS_NUMBER && strcmp(column->label, "Age") != 0 && !guess->files[column->file].by_visit;
+        bool may_be =
+            column->role == GUESS_NUMBER && strcmp(column->label, "Age") != 0 && !guess->files[column->file].by_visit;
         draft->lone = may_be ? (int)i : draft->lone;
     }
     if (draft->lone != NOWHERE) {
@@ -511,7 +515,8 @@ static void draft_file(struct draft *draft, const struct guess_file *file) {
         json_field_string(draft->json, "sheet", file->sheet);
     }
     json_field_string(draft->json, "layout", file->by_visit ? "visit" : "participant");
-    json_field_string(draft->json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
+    json_field_string(
+        draft->json, "participant", file->participant == NOWHERE ? NULL : guess->columns[file->participant].name);
     if (file->by_visit) {
         json_field_string(draft->json, "visit", file->visit == NOWHERE ? NULL : guess->columns[file->visit].name);
         json_key_array(draft->json, "codes");

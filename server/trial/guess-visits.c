@@ -458,7 +458,7 @@ bool visit_code_read(const char *name, const char *code, struct arena *arena, do
     *order = reading.order;
     if (bare && !(reading.unit && reading.unit->one)) {
         name_take(&column, name, arena);
-        const char *what = name_has(&column, "period") ? "Period"
+        const char *what = name_has(&column, "period")                ? "Period"
                            : name_has(&column, "time t tp timepoint") ? "Time"
                                                                       : "Visit";
         *label = number == 0 ? "Baseline" : arena_format(arena, "%s %s", what, code);

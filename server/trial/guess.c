@@ -389,7 +389,8 @@ static enum guess_role role_of(const struct look *look) {
     if (look->numeric && !small_codes) {
         return GUESS_NUMBER;
     }
-    return plain <= (look_names_site(look) ? 60u : 24u) && 2 * plain <= column->filled + 1 ? GUESS_CATEGORY : GUESS_NOTHING;
+    return plain <= (look_names_site(look) ? 60u : 24u) && 2 * plain <= column->filled + 1 ? GUESS_CATEGORY
+                                                                                           : GUESS_NOTHING;
 }
 
 int look_names_participant(const struct look *look) {

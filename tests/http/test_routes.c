@@ -278,8 +278,9 @@ static void a_study_is_made_from_a_dropped_file_by_the_guesses_alone(void **stat
 /* ---- several files ---- */
 
 static const char people[] = "pid,arm,sex\nA1,x,F\nA2,y,M\nA3,x,F\nA4,y,M\nA5,x,F\nA6,y,M\n";
-static const char visits[] = "pid,visit,pain\nA1,V0,40\nA1,V8,31\nA2,V0,52\nA2,V8,50\nA3,V0,43\nA3,V8,33\nA4,V0,61\nA4,V8,57\n"
-                             "A5,V0,38\nA5,V8,30\nA6,V0,47\nA6,V8,46\n";
+static const char visits[] =
+    "pid,visit,pain\nA1,V0,40\nA1,V8,31\nA2,V0,52\nA2,V8,50\nA3,V0,43\nA3,V8,33\nA4,V0,61\nA4,V8,57\n"
+    "A5,V0,38\nA5,V8,30\nA6,V0,47\nA6,V8,46\n";
 
 static cJSON *draft_with(const struct house *house, const char *name, const char *csv, double draft) {
     char target[96];
@@ -350,7 +351,8 @@ static void what_is_said_of_files_is_guessed_with_and_files_are_taken_out(void *
     const struct house *house = *state;
     struct reply reply;
     char body[512];
-    cJSON *first = draft_with(house, "visits.csv", visits, 0), *both = draft_with(house, "people.csv", people, id_of(first));
+    cJSON *first = draft_with(house, "visits.csv", visits, 0),
+          *both = draft_with(house, "people.csv", people, id_of(first));
     static const struct {
         const char *files;
         unsigned status;
@@ -358,17 +360,19 @@ static void what_is_said_of_files_is_guessed_with_and_files_are_taken_out(void *
     } asked[] = {
         {"[{\"name\":\"visits.csv\",\"layout\":\"participant\"},{\"name\":\"people.csv\"}]", 200,
             "\"layout\":\"participant\",\"participant\":\"pid\""},
-        {"[{\"name\":\"visits.csv\",\"layout\":\"visit\",\"visit\":\"visit\",\"codes\":[\"V8\",\"V0\"]},{\"name\":\"people.csv\"}]", 200,
-            "\"codes\":[\"V8\",\"V0\"]"},
+        {"[{\"name\":\"visits.csv\",\"layout\":\"visit\",\"visit\":\"visit\",\"codes\":[\"V8\",\"V0\"]},{\"name\":"
+         "\"people.csv\"}]",
+            200, "\"codes\":[\"V8\",\"V0\"]"},
         {"[{\"name\":\"visits.csv\",\"layout\":\"table\"}]", 400, "must be \\\"participant\\\" or \\\"visit\\\""},
         {"[{\"name\":\"visits.csv\",\"codes\":[\"V8\",\"V8\"]}]", 400, "lists \\\"V8\\\" twice"},
         {"[{\"name\":\"visits.csv\",\"codes\":\"V8\"}]", 400, "must be a list of at most 80 visit codes"},
-        {"[{\"name\":\"visits.csv\",\"participant\":5}]", 400, "\\\"participant\\\" of a file must be a text in quotes"},
+        {"[{\"name\":\"visits.csv\",\"participant\":5}]", 400,
+            "\\\"participant\\\" of a file must be a text in quotes"},
         {"[{\"name\":\"visits.csv\"},{\"name\":\"visits.csv\"}]", 400, "names \\\"visits.csv\\\" twice"},
-        {"[{\"name\":\"x.csv\"}]", 400, "no such file has been dropped"},
-        {"[5]", 400, "must list objects"},
+        {"[{\"name\":\"x.csv\"}]", 400, "no such file has been dropped"}, {"[5]", 400, "must list objects"},
         {"[{\"name\":\"people.csv\"}]", 200, "\"name\":\"people.csv\""},
-        {"[{\"name\":\"people.csv\"},{\"name\":\"visits.csv\"}]", 400, "no such file has been dropped"}, /* it was taken out */
+        {"[{\"name\":\"people.csv\"},{\"name\":\"visits.csv\"}]", 400,
+            "no such file has been dropped"}, /* it was taken out */
     };
     for (size_t i = 0; i < sizeof asked / sizeof *asked; i++) {
         snprintf(body, sizeof body, "{\"draft\":%.0f,\"files\":%s}", id_of(first), asked[i].files);

@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Guesses for what really comes: open data sets whose columns nobody named for us, files with one row per visit, several
- * files. What each open data set's columns are is said by the help page of the R package it is from; the tables below say
- * it in one line each. */
+/* Guesses for what really comes: open data sets whose columns nobody named for us, files with one row per visit,
+ * several files. What each open data set's columns are is said by the help page of the R package it is from; the tables
+ * below say it in one line each. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -34,7 +34,8 @@ static void say_files(const struct guess *guess, struct text *out) {
         const struct guess_file *file = &guess->files[f];
         text_format(out, "%s%s%s", f ? ", " : "", guess->file_count > 1 && f == guess->first ? "first " : "",
             file->by_visit ? "visits" : "participants");
-        text_format(out, " of %s", file->participant == NOWHERE ? "-" : name_in(guess, &guess->columns[file->participant]));
+        text_format(
+            out, " of %s", file->participant == NOWHERE ? "-" : name_in(guess, &guess->columns[file->participant]));
         if (file->by_visit) {
             text_format(out, " by %s", file->visit == NOWHERE ? "-" : guess->columns[file->visit].name);
             for (size_t i = 0; i < file->code_count; i++) {
@@ -88,26 +89,35 @@ static const struct {
 } open_data[] = {
     {"anorexia.csv", "participants of -; arm Treat; wt: Prewt=Baseline, Postwt=Follow-up", false},
     {"btheb.csv",
-        "participants of -; arm treatment; outcome: before=Baseline, month2=2 months, month3=3 months, month5=5 months, "
+        "participants of -; arm treatment; outcome: before=Baseline, month2=2 months, month3=3 months, month5=5 "
+        "months, "
         "month8=8 months; categories drug length",
         false},
-    {"polyps.csv", "participants of -; arm treatment; number: baseline=Baseline, number3m=3 months; numbers age; categories gender", false},
+    {"polyps.csv",
+        "participants of -; arm treatment; number: baseline=Baseline, number3m=3 months; numbers age; categories "
+        "gender",
+        false},
     {"respiratory.csv",
         "visits of subject by month 0 1 2 3 4; arm treatment; numbers age; categories centre gender status", false},
-    {"toenail.csv", "visits of patientID by visit 1 2 3 4 5 6 7; arm treatment; categories outcome; nothing time", false},
+    {"toenail.csv", "visits of patientID by visit 1 2 3 4 5 6 7; arm treatment; categories outcome; nothing time",
+        false},
     {"seizures.csv",
         "visits of subject by period 1 2 3 4; arm treatment; seizure_rate: seizure.rate@1=Period 1, "
         "seizure.rate@2=Period 2, seizure.rate@3=Period 3, seizure.rate@4=Period 4; numbers base age",
         true},
     {"seizures-wide.csv",
-        "participants of ID; arm Trt; y: Y1=Visit 1, Y2=Visit 2, Y3=Visit 3, Y4=Visit 4; numbers Base Age Ysum Age10 Base4", true},
+        "participants of ID; arm Trt; y: Y1=Visit 1, Y2=Visit 2, Y3=Visit 3, Y4=Visit 4; numbers Base Age Ysum Age10 "
+        "Base4",
+        true},
     {"bacteria.csv", "visits of ID by week 0 2 4 6 11; arm trt; categories y ap hilo", false},
-    {"chicks.csv", "visits of Chick by Time 0 2 4 6 8 10 12 14 16 18 20 21; arm Diet; weight: weight@0=Baseline, weight@2=Time 2, "
+    {"chicks.csv",
+        "visits of Chick by Time 0 2 4 6 8 10 12 14 16 18 20 21; arm Diet; weight: weight@0=Baseline, weight@2=Time 2, "
         "weight@4=Time 4, weight@6=Time 6, weight@8=Time 8, weight@10=Time 10, weight@12=Time 12, weight@14=Time 14, "
         "weight@16=Time 16, weight@18=Time 18, weight@20=Time 20, weight@21=Time 21",
         true},
     {"plasma.csv", "participants of -; arm -; numbers fibrinogen globulin; categories ESR", false},
-    {"trees-ozone.csv", "visits of tree by Time 152 174 201 227 258; arm treat; size: size@152=Time 152, size@174=Time 174, "
+    {"trees-ozone.csv",
+        "visits of tree by Time 152 174 201 227 258; arm treat; size: size@152=Time 152, size@174=Time 174, "
         "size@201=Time 201, size@227=Time 227, size@258=Time 258",
         true},
     {"schizophrenia.csv", "visits of subject by month 0 2 6 8 10; arm -; categories onset disorder", false},
@@ -209,9 +219,12 @@ static void the_four_files_of_the_demonstration_are_read(void **state) {
     struct quayside_files files;
     quayside_make_files(QUAYSIDE_SEED, &files);
     static const char wanted[] =
-        "participants of events.pid, visits of visits.pid by visit V0 V8 V26, visits of labs.pid by visit V0 V8 V26, first participants of "
-        "people.pid; arm people.grp; sbp: visits.sbp@V0=Baseline, visits.sbp@V8=Visit 8, visits.sbp@V26=Visit 26; uacr: "
-        "labs.uacr@V0=Baseline, labs.uacr@V8=Visit 8, labs.uacr@V26=Visit 26; numbers people.age people.bmi; categories people.site "
+        "participants of events.pid, visits of visits.pid by visit V0 V8 V26, visits of labs.pid by visit V0 V8 V26, "
+        "first participants of "
+        "people.pid; arm people.grp; sbp: visits.sbp@V0=Baseline, visits.sbp@V8=Visit 8, visits.sbp@V26=Visit 26; "
+        "uacr: "
+        "labs.uacr@V0=Baseline, labs.uacr@V8=Visit 8, labs.uacr@V26=Visit 26; numbers people.age people.bmi; "
+        "categories people.site "
         "people.sex; events events.rescue; dates events.rescue_date visits.date labs.sampled people.randomised";
     struct given given = {0};
     give(&given, "events.csv", files.events_csv.data, files.events_csv.length); /* not in the plan's order */
@@ -235,8 +248,8 @@ static void the_four_files_of_the_demonstration_are_read(void **state) {
     quayside_files_release(&files);
 }
 
-/* Invented: the identifier has another name in each file, one file has a weak one, visits are words, an unscheduled visit is
- * no planned one, what is measured once is no series, a time beside the visit is no outcome. */
+/* Invented: the identifier has another name in each file, one file has a weak one, visits are words, an unscheduled
+ * visit is no planned one, what is measured once is no series, a time beside the visit is no outcome. */
 static void files_join_by_their_values(void **state) {
     (void)state;
     struct text people, visits, blood;
@@ -249,7 +262,8 @@ static void files_join_by_their_values(void **state) {
     static const char *const when[] = {"week 12", "Screening", "week 4", "Baseline"};
     static const size_t weeks[] = {14, 0, 6, 2};
     for (size_t i = 0; i < 40; i++) {
-        text_format(&people, "N%03zu,%s,%s,%zu\n", 200 + i, i % 2 ? "placebo" : "active", i % 3 ? "F" : "M", 40 + (i * 7) % 31);
+        text_format(
+            &people, "N%03zu,%s,%s,%zu\n", 200 + i, i % 2 ? "placebo" : "active", i % 3 ? "F" : "M", 40 + (i * 7) % 31);
         for (size_t v = 0; v < 4; v++) {
             text_format(&visits, "%zu;N%03zu;%s;%zu;", 4 * i + v, 200 + i, when[v], weeks[v] + i % 2);
             text_format(&visits, v == 3 ? "%zu;" : ";", 150 + (i * 11) % 40);
@@ -257,14 +271,17 @@ static void files_join_by_their_values(void **state) {
             text_format(&visits, v == 0 ? "%zu\n" : "\n", 300 + (i * 17) % 200);
         }
         for (size_t v = 0; v < 2; v++) {
-            text_format(&blood, "S%zu,N%03zu,%s,%zu.%zu\n", 9000 + 2 * i + v, 200 + i, v ? "V2" : "V1", 1 + (i * 3 + v) % 9, i % 10);
+            text_format(&blood, "S%zu,N%03zu,%s,%zu.%zu\n", 9000 + 2 * i + v, 200 + i, v ? "V2" : "V1",
+                1 + (i * 3 + v) % 9, i % 10);
         }
     }
     text_string(&visits, "900;N205;unscheduled;5;;44;\n");
     static const char wanted[] =
-        "first participants of people.SUBJID, visits of visits.code by occasion Screening Baseline week 4 week 12, visits of "
+        "first participants of people.SUBJID, visits of visits.code by occasion Screening Baseline week 4 week 12, "
+        "visits of "
         "blood.who by EVENT V1 V2; arm people.ALLOC; pain: visits.pain@Baseline=Baseline, visits.pain@week 4=4 weeks, "
-        "visits.pain@week 12=12 weeks; walk: visits.walk@week 12=12 weeks; crp: blood.crp@V1=Visit 1, blood.crp@V2=Visit 2; numbers "
+        "visits.pain@week 12=12 weeks; walk: visits.walk@week 12=12 weeks; crp: blood.crp@V1=Visit 1, "
+        "blood.crp@V2=Visit 2; numbers "
         "people.AGE visits.height; categories people.SEX; nothing visits.row visits.weeks_since blood.sample";
     struct given given = {0};
     give(&given, "people.csv", people.data, people.length);
@@ -297,7 +314,8 @@ static void what_is_said_stands(void **state) {
     given.source[0].codes = codes;
     given.source[0].code_count = 3;
     guessed(&given,
-        "visits of subject by period 4 2 9; arm treatment; seizure_rate: seizure.rate@4=Period 4, seizure.rate@2=Period 2; numbers "
+        "visits of subject by period 4 2 9; arm treatment; seizure_rate: seizure.rate@4=Period 4, "
+        "seizure.rate@2=Period 2; numbers "
         "base age",
         NULL);
     given.source[0].visit = "age"; /* nonsense is taken too: the form shows what comes of it */
@@ -313,8 +331,8 @@ static void what_is_said_stands(void **state) {
 
 static void any_files_give_a_guess(void **state) {
     (void)state;
-    static const char *const texts[] = {"a\n", "id,visit\n", "id,visit,x\n1,1,2\n1,2,3\n2,1,4\n2,2,5\n3,1,6\n3,2,8\n", "visit\n1\n2\n3\n",
-        "id,week,week\u00a0,y\n,,,\n,,,\n", "id\n1\n2\n3\n"};
+    static const char *const texts[] = {"a\n", "id,visit\n", "id,visit,x\n1,1,2\n1,2,3\n2,1,4\n2,2,5\n3,1,6\n3,2,8\n",
+        "visit\n1\n2\n3\n", "id,week,week\u00a0,y\n,,,\n,,,\n", "id\n1\n2\n3\n"};
     enum { TEXTS = sizeof texts / sizeof *texts };
     for (size_t i = 0; i < TEXTS; i++) {
         for (size_t j = 0; j < TEXTS; j++) {
