@@ -41,6 +41,8 @@ struct boxes_group {
     size_t row_count;
     const struct boxes_contrast *contrasts;
     size_t contrast_count;
+    bool banded; /* a stretch of the axis is shaded behind the group: a planned window */
+    double band_low, band_high;
 };
 
 struct boxes {

@@ -8,6 +8,7 @@ extern const struct exhibit exhibit_columns;
 extern const struct exhibit exhibit_flow;
 extern const struct exhibit exhibit_sites;
 extern const struct exhibit exhibit_baseline;
+extern const struct exhibit exhibit_dates;
 extern const struct exhibit exhibit_derived;
 extern const struct exhibit exhibit_discrepancies;
 extern const struct exhibit exhibit_missing_grid;

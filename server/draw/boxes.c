@@ -42,6 +42,8 @@ static void find_axis(const struct canvas *canvas, const struct boxes *boxes, st
         for (size_t r = 0; r < boxes->groups[g].row_count; r++) {
             box_row_range(&boxes->groups[g].rows[r], &low, &high);
         }
+        low = boxes->groups[g].banded ? fmin(low, boxes->groups[g].band_low) : low;
+        high = boxes->groups[g].banded ? fmax(high, boxes->groups[g].band_high) : high;
     }
     low = isnan(boxes->axis.low) ? low : boxes->axis.low;
     high = isnan(boxes->axis.high) ? high : boxes->axis.high;
@@ -159,12 +161,25 @@ static double draw_group(struct canvas *canvas, const struct boxes *boxes, const
     return fmax(y, level_bottom);
 }
 
+/* The shaded stretch of a group that ends at `bottom`, as far as the axis goes. */
+static void draw_band(struct canvas *canvas, const struct columns *columns, const struct boxes_group *group, double top, double bottom) {
+    double left = axis_place(&columns->axis, group->band_low), right = axis_place(&columns->axis, group->band_high);
+    if (group->banded && right > left) {
+        canvas_rectangle(canvas, left, top, right - left, bottom - top, PALETTE_BAND, NULL, 0.0, NULL);
+    }
+}
+
 static double draw_groups(struct canvas *canvas, const struct boxes *boxes, const struct columns *columns) {
     double y = 2.0, gap = 6.0 * canvas->unit;
     for (size_t g = 0; g < boxes->group_count; g++) {
         if (g) {
             canvas_line(canvas, 0.0, y, canvas->width, y, PALETTE_HAIRLINE, canvas->unit, NULL);
             y += gap;
+        }
+        if (boxes->groups[g].banded) { /* it lies under the rows, so their height is asked first */
+            struct canvas probe = *canvas;
+            probe.html = NULL;
+            draw_band(canvas, columns, &boxes->groups[g], y, draw_group(&probe, boxes, columns, &boxes->groups[g], y));
         }
         y = draw_group(canvas, boxes, columns, &boxes->groups[g], y);
     }

@@ -12,6 +12,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_baseline,
     &exhibit_sites,
     &exhibit_derived,
+    &exhibit_dates,
     &exhibit_discrepancies,
     &exhibit_missing_grid,
     &exhibit_missing_by_arm,
