@@ -60,7 +60,7 @@ static const char *effect_open(const struct frame *frame, const struct counts *c
     return !frame->arm                                ? "the plan has no arm" :
         frame->blinding == BLINDING_POOLED            ? "closed while pooled" :
         frame->blinding == BLINDING_CODED             ? "shown by letter" :
-                                                        "open";
+                                                        "shown by name";
 }
 
 static const char *record_open(const struct frame *frame, const struct counts *counts, struct arena *arena) {

@@ -106,7 +106,7 @@ static bool paired(const struct view *view, struct fault *fault) {
     const struct outcome *outcome = outcome_of(view);
     if (outcome->visit_count == 1) {
         return fault_set(fault, FAULT_INPUT,
-            "before-after: %s has one visit, so there is nothing before it to pair it with", outcome->id);
+            "before-after: %s has one visit, so there is nothing before it to pair it with", outcome->label);
     }
     return view->visit > 0 ||
            fault_set(fault, FAULT_INPUT, "before-after: visit=%s is the baseline itself; say a later visit",

@@ -63,7 +63,8 @@ static void make_caption(struct view *view, const struct change_result *result) 
     view->caption = arena_format(view->arena, "%s, %s%s%s, %s. Box: quartiles (type 7); heavy bar: median; cross: mean; line: furthest value "
         "within 1.5 box lengths; every participant is drawn, those beyond the lines are named.%s", what, scale,
         view->scale == SCALE_LINEAR && *outcome->unit ? ", " : "", view->scale == SCALE_LINEAR ? outcome->unit : "",
-        set_words(view->set), result->fitted ? " Differences at the right are baseline-adjusted, from one model." : "");
+        set_words(view->set), !result->fitted ? "" : result->has_change ?
+            " Differences at the right are baseline-adjusted, from one model." : " Differences at the right are from one model.");
 }
 
 static bool compute(struct view *view, struct fault *fault) {
@@ -292,7 +293,10 @@ static void figure(const struct view *view, const struct figure *figure, struct 
 static void title_of(const struct view *view, struct text *title) {
     const struct outcome *outcome = &view->frame->plan->outcomes[view->outcome];
     const char *visit = outcome->visits[view->visit].label;
-    if (view->arms.pooled) {
+    if (outcome->visit_count == 1) {
+        text_format(title, view->arms.pooled ? "How is %s at %s spread?" : "Does %s at %s differ between the arms?", what_words(view),
+            lower_first(view, visit));
+    } else if (view->arms.pooled) {
         text_format(title, "How did %s change from baseline to %s?", what_words(view), lower_first(view, visit));
     } else {
         text_format(title, "Does the change in %s to %s differ between the arms?", what_words(view), lower_first(view, visit));

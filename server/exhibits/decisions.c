@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Record: every decision, in order. */
+#include "exhibits/ledger.h"
 #include "exhibits/list.h"
 #include "exhibits/words.h"
 #include <string.h>
@@ -24,8 +25,8 @@ static bool compute(struct view *view, struct fault *fault) {
         without_evidence += frame->stands[i] && decision->kind == DECISION_CORRECT && !decision->evidence;
     }
     view->result = result;
-    view->caption = arena_format(view->arena, "%zu decisions, %zu corrections without evidence of a source.", result->count,
-        without_evidence);
+    view->caption = arena_format(view->arena, "%s, %s without evidence of a source.", count_words(view, result->count, "decision"),
+        count_words(view, without_evidence, "correction"));
     return true;
 }
 

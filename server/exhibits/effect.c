@@ -33,13 +33,6 @@ static const struct {
     [TRIMMED_MEAN] = {"trimmed-mean", "20% trimmed means of change", "20% trimmed means of change", ROLE_SUPPLEMENTARY, false, true},
 };
 
-/* With the robust standard error in front, it is the classical one that is "the same". */
-static const char *label_of(enum method method, enum scale scale, bool robust_first) {
-    enum method named = robust_first && method == ANCOVA_HC3 ? ANCOVA : method;
-    const char *label = scale == SCALE_LOG10 ? methods[named].ratio_label : methods[named].label;
-    return robust_first && method == ANCOVA ? "The same, classical standard error" : label;
-}
-
 struct contrast {
     size_t arm;
     struct estimate estimates[METHODS];
@@ -249,6 +242,27 @@ static void estimate_all(struct effect_result *result, const struct view *view, 
 
 /* ---- words ---- */
 
+/* What the model in front is called: an outcome with one visit has no baseline to adjust for. */
+static const char *model_words(const struct effect_result *result, enum scale scale) {
+    bool ratio = scale == SCALE_LOG10;
+    if (result->model.design.baseline_column != NOWHERE) {
+        return ratio ? methods[ANCOVA].ratio_label : methods[ANCOVA].label;
+    }
+    return result->adjust_count ? (ratio ? "Adjusted ratio" : "Adjusted difference") :
+                                  (ratio ? "Ratio of geometric means" : "Difference in means");
+}
+
+/* With the robust standard error in front, it is the classical one that is "the same". */
+static const char *label_of(const struct effect_result *result, enum method method, enum scale scale) {
+    if (method == result->first) {
+        return model_words(result, scale);
+    }
+    if (method == ANCOVA) {
+        return "The same, classical standard error";
+    }
+    return scale == SCALE_LOG10 ? methods[method].ratio_label : methods[method].label;
+}
+
 static const struct outcome *outcome_of(const struct view *view) {
     return &view->frame->plan->outcomes[view->outcome];
 }
@@ -299,7 +313,7 @@ static void make_notes(struct view *view, const struct effect_result *result) {
             (unsigned long long)view->frame->plan->seed,
             interval_words(view, contrast->permutation.monte_carlo.low, contrast->permutation.monte_carlo.high, 4));
     }
-    if (contrast->shift.estimate.status == STATUS_OK) {
+    if (contrast->estimates[RANK_SHIFT].status == STATUS_OK) {
         view_note(view, "The interval of the Hodges-Lehmann shift holds at %s%% (%s).", decimal_words(view, 100 * contrast->shift.achieved, 2),
             contrast->shift.exact ? "exact" : "normal, ties corrected");
     }
@@ -391,7 +405,7 @@ static void contrast_json(const struct view *view, const struct effect_result *r
         const struct estimate *estimate = &contrast->estimates[method];
         json_object(json);
         json_field_string(json, "method", methods[method].name);
-        json_field_string(json, "label", label_of(method, view->scale, result->first == ANCOVA_HC3));
+        json_field_string(json, "label", label_of(result, method, view->scale));
         json_field_string(json, "role", role_names[role_of(result, method)]);
         counts_of(result, view, contrast, method, n);
         counts_json(json, n);
@@ -486,7 +500,7 @@ static void tables(const struct view *view, struct table **tables, size_t *count
             size_t n[2];
             counts_of(result, view, contrast, method, n);
             table_row(table);
-            table_put_header(table, label_of(method, view->scale, result->first == ANCOVA_HC3));
+            table_put_header(table, label_of(result, method, view->scale));
             table_put_text(table, role_words[role_of(result, method)]);
             table_put_count(table, (int64_t)n[0]);
             table_put_count(table, (int64_t)n[1]);
@@ -527,8 +541,10 @@ static void lead(const struct view *view, struct html *html) {
     const char *arm = view->arms.arm[contrast->arm].label, *reference = view->arms.arm[view->arms.reference].label;
     bool log10_scale = view->scale == SCALE_LOG10;
     int decimals = log10_scale ? 2 : shown_decimals(view);
-    html_text(html, result->post_hoc ? "Post hoc, adjusted " : "Adjusted ");
-    html_text(html, log10_scale ? "ratio of geometric means " : "mean difference ");
+    bool adjusted = result->model.design.baseline_column != NOWHERE || result->adjust_count;
+    const char *what = log10_scale ? "ratio of geometric means " : "mean difference ";
+    html_text(html, result->post_hoc ? (adjusted ? "Post hoc, adjusted " : "Post hoc, ") : adjusted ? "Adjusted " : "");
+    html_text(html, result->post_hoc || adjusted ? what : log10_scale ? "Ratio of geometric means " : "Mean difference ");
     if (estimate->status != STATUS_OK) {
         html_element(html, "strong", "large", status_sentence(estimate->status));
         return;
@@ -583,16 +599,18 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     const struct outcome *outcome = outcome_of(view);
     bool log10_scale = view->scale == SCALE_LOG10;
     int decimals = log10_scale ? 2 : shown_decimals(view);
+    const char *apart = result->model.design.baseline_column != NOWHERE ? "Not adjusted for baseline as a covariate" :
+                        result->adjust_count                             ? "Not adjusted for covariates" : "Other ways";
     struct estimates_row rows[METHODS];
     for (int place = 0; place < METHODS; place++) {
         enum method method = in_order(result, place);
         const struct estimate *estimate = &contrast->estimates[method];
         bool ok = estimate->status == STATUS_OK, planned = role_of(result, method) == ROLE_PRIMARY;
-        rows[place] = (struct estimates_row){.label = label_of(method, view->scale, result->first == ANCOVA_HC3), .role = role_words[role_of(result, method)],
+        rows[place] = (struct estimates_row){.label = label_of(result, method, view->scale), .role = role_words[role_of(result, method)],
             .estimate = shown_value(view, estimate->estimate), .low = shown_value(view, estimate->low),
             .high = shown_value(view, estimate->high), .figures = ok ? figures_words(view, estimate, decimals) : NULL,
             .sentence = ok ? NULL : status_sentence(estimate->status), .emphasised = planned,
-            .group = method == CHANGE_WELCH ? "Not adjusted for baseline as a covariate" : NULL};
+            .group = method == CHANGE_WELCH ? apart : NULL};
     }
     const char *arm = lower_first(view, view->arms.arm[contrast->arm].label);
     const char *reference = lower_first(view, view->arms.arm[view->arms.reference].label);

@@ -130,7 +130,8 @@ static bool compute(struct view *view, struct fault *fault) {
     const struct outcome *outcome = &plan->outcomes[plan->primary];
     struct events_result *result = ARENA_NEW(view->arena, 1, struct events_result);
     result->rows = ARENA_NEW(view->arena, plan->event_count, struct event_row);
-    result->outcome = arena_format(view->arena, "%s at %s", outcome->label, lower_first(view, outcome->visits[outcome->primary_visit].label));
+    result->outcome = arena_format(view->arena, "%s at %s", lower_first(view, outcome->label),
+        lower_first(view, outcome->visits[outcome->primary_visit].label));
     members_take(&result->members, view, MEMBERS_WITH_ARM);
     for (size_t e = 0; e < plan->event_count; e++) {
         const struct event *event = &plan->events[e];

@@ -101,7 +101,7 @@ static void test_refusals(void **state) {
         const char *sentence;
     } cases[] = {
         {{"visit", "Baseline"}, "before-after: visit=Baseline is the baseline itself; say a later visit"},
-        {{"outcome", "z"}, "before-after: z has one visit, so there is nothing before it to pair it with"},
+        {{"outcome", "z"}, "before-after: Score has one visit, so there is nothing before it to pair it with"},
         {{"visit", "9 weeks"}, "before-after: visit=9 weeks is not known; it takes Baseline, 4 weeks, 8 weeks"},
     };
     struct exhibit_case c;
