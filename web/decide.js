@@ -157,6 +157,7 @@ export function valueDecision(kind, participant, value, more) {
   const { column, current } = value;
   const name = value.label ?? column;
   const unit = value.unit ? ` ${value.unit}` : "";
+  const typed = (text) => (text?.trim() ? worded(text.trim()) : null);
   const worded = (text) => (text === null || text === undefined ? "missing" : text === "" ? "blank" : text.trim() === text ? `${text}${unit}` : `“${text}”${unit}`);
   const base = { column, participant, ...(more.discrepancy ? { discrepancy: more.discrepancy } : {}) };
   const options = (value.levels ?? []).map((level) => ({ value: level.code, label: `${level.code} · ${level.label}` }));
@@ -165,7 +166,7 @@ export function valueDecision(kind, participant, value, more) {
       title: `Correct ${name} of ${participant}`,
       fields: [{ name: "to", label: "Value at its source", options: options.length ? options : null, value: "" }],
       before: () => worded(current),
-      after: (values) => worded(values.to || null),
+      after: (values) => typed(values.to),
       decisions: (values) => [{ kind: "correct", ...base, from: current, to: values.to.trim() }],
     },
     "set-missing": {
@@ -193,7 +194,7 @@ export function valueDecision(kind, participant, value, more) {
       title: `Read ${worded(current)} as another value of ${name}`,
       fields: [{ name: "to", label: "Read it as", options: options.length ? options : null, value: "" }],
       before: () => worded(current),
-      after: (values) => worded(values.to || null),
+      after: (values) => typed(values.to),
       says: () => `Holds for every ${worded(current)} in this column, not for ${participant} alone.`,
       decisions: (values) => [{ kind: "read-as", column, from: current, to: values.to.trim(),
         ...(more.discrepancy ? { discrepancy: more.discrepancy } : {}) }],

@@ -6,7 +6,7 @@ import { button, fill, make, restoreFocus, say } from "./page.js";
 import { answerForm, keepRecord, openParticipant } from "./participant.js";
 import * as server from "./server.js";
 import { study } from "./study.js";
-import { columns, count, decisionWords } from "./words.js";
+import { columns, count, decisionWords, spaced } from "./words.js";
 
 const state = { article: null, list: [], counts: null, later: new Set(), at: "", show: "open", form: null };
 
@@ -114,7 +114,7 @@ function settlePart(discrepancy) {
     make("div", { class: "actions" },
       open && discrepancy.proposal ? act("a", discrepancy.proposal_words ?? decisionWords(discrepancy.proposal), { class: "strong" }) : null,
       open && discrepancy.rows ? discrepancy.rows.map((row) => button(`Keep record ${row}`, () => offer(keepRecord(list[0], row, discrepancy)), { "data-key": `keep-${row}` })) : null,
-      valued ? act("c", "Confirm") : open && notable.has(discrepancy.check) ? act("c", "Note that it is right as it is") : null,
+      valued ? (discrepancy.proposal?.kind !== "confirm" ? act("c", "Confirm") : null) : open && notable.has(discrepancy.check) ? act("c", "Note that it is right as it is") : null,
       valued ? act("s", "Set missing") : null,
       valued ? act("e", "Correct") : null,
       discrepancy.state === "queried" ? act("r", "Enter the answer") : null,
@@ -224,8 +224,8 @@ function accept() {
   const whole = proposal.participant === undefined;
   offer({
     title: discrepancy.proposal_words ?? decisionWords(proposal),
-    before: () => (discrepancy.value === null ? null : discrepancy.value === "" ? "blank" : discrepancy.value),
-    after: () => (notable.has(discrepancy.check) ? discrepancy.proposal_words : null) ?? proposal.to ?? (proposal.kind === "number-format" ? (discrepancy.value ?? "").replace(",", ".") || null : proposal.kind === "confirm" ? proposal.value
+    before: () => (discrepancy.value === null ? null : discrepancy.value === "" ? "blank" : spaced(discrepancy.value)),
+    after: () => (notable.has(discrepancy.check) ? discrepancy.proposal_words : null) ?? spaced(proposal.to) ?? (proposal.kind === "number-format" ? (discrepancy.value ?? "").replace(",", ".") || null : proposal.kind === "confirm" ? proposal.value
       : proposal.kind === "date-order" ? `read as ${proposal.order}` : proposal.kind === "keep-record" ? `record ${proposal.row} in force` : "missing"),
     says: notable.has(discrepancy.check) ? () => discrepancy.message : whole ? () => `Holds for ${proposal.site ? `all dates of site ${proposal.site} in this column` : "the whole column"}, so it settles every one like it.` : null,
     ...(whole ? { decisions: () => [{ ...proposal, discrepancy: discrepancy.id }] } : forEach(discrepancy, "proposal")),

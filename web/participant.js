@@ -6,7 +6,7 @@ import { $, button, fill, focusKey, make, restoreFocus } from "./page.js";
 import { reverse } from "./record.js";
 import * as server from "./server.js";
 import { study } from "./study.js";
-import { count, decisionWords, moment } from "./words.js";
+import { count, decisionWords, moment, spaced } from "./words.js";
 
 let shown = "";
 let opener = null;
@@ -72,7 +72,7 @@ function facts() {
     .join(", ");
 }
 
-const currentWords = (value) => value.converted ?? (value.state === "observed" || !value.words ? value.current ?? "missing" : value.words);
+const currentWords = (value) => value.converted ?? (value.state === "observed" || !value.words ? spaced(value.current) ?? "missing" : value.words);
 
 function offerForm(host, spec, cell) {
   busy = true;
@@ -177,7 +177,7 @@ function valueRow(value, chosen) {
       type: "button", class: "name", "data-key": `value-${value.column}`, "aria-expanded": String(open),
       on: { click: () => address.go(address.changed({ cell: open ? "" : value.column })) },
     }, value.label, value.unit ? make("small", {}, ` ${value.unit}`) : null), value.doubtful ? make("small", { class: "doubtful" }, " doubtful") : null),
-    make("td", { class: changed ? "replaced" : null }, value.derived ? make("small", {}, "computed") : value.received === "" ? make("em", {}, "blank") : value.received ?? "–"),
+    make("td", { class: changed ? "replaced" : null }, value.derived ? make("small", {}, "computed") : value.received === "" ? make("em", {}, "blank") : spaced(value.received) ?? "–"),
     make("td", {}, value.state === "observed" ? currentWords(value) : make("em", {}, currentWords(value)),
       value.origin ? make("small", {}, ` by decision ${value.origin}`) : null)),
   open ? make("tr", { class: "chosen" }, make("td", { colspan: "3" }, above ? make("small", {}, "What can be done stands with its discrepancy above.") : actionsFor(value, null))) : null];

@@ -260,7 +260,11 @@ function outcomeCard(outcome, at) {
       rangeFields("Plausible", outcome, "plausible", `${path}.plausible`)),
     visitRows(outcome, path),
     make("p", { class: "hint" }, outcome.visits.map((visit) => seen(visit.column)).filter(Boolean).join(" · "), outcome.visits.length === 1 ? " · With one visit there is no baseline to adjust for." : ""),
-    add("Add a visit", `${path}.add`, () => outcome.visits.push({ label: `Visit ${outcome.visits.length + 1}`, column: "" })));
+    add("Add a visit", `${path}.add`, () => {
+      // What stood alone was called a follow-up; with a later visit behind it, it is the baseline.
+      if (outcome.visits.length === 1 && outcome.visits[0].label === alone) outcome.visits[0].label = "Baseline";
+      outcome.visits.push({ label: `Visit ${outcome.visits.length + 1}`, column: "" });
+    }));
 }
 
 function covariateCard(covariate, at) {
@@ -294,11 +298,13 @@ function eventCard(event, at) {
     make("p", { class: "hint" }, seen(event.column)));
 }
 
+const alone = "Follow-up"; // the label of an outcome's only visit, which is no baseline
+
 const newOf = {
   outcome: (name) => {
     const found = series(name);
     form.plan.outcomes.push({ id: unique(idOf(found?.id ?? name)), label: found?.label ?? column(name).label ?? name, unit: column(name).unit ?? "", role: form.plan.outcomes.length ? "secondary" : "primary",
-      better: "lower", scale: "linear", visits: [{ label: "Baseline", column: name }] });
+      better: "lower", scale: "linear", visits: [{ label: alone, column: name }] });
   },
   number: (name) => form.plan.covariates.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: name, kind: "number" }),
   category: (name) => form.plan.covariates.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: name, kind: "category", levels: levelsOf(name) }),

@@ -20,6 +20,8 @@ export function moment(iso) {
 export const fingerprint = (hash) => (hash ? [0, 4, 8].map((at) => hash.slice(at, at + 4)).join("·") : "");
 export const count = (number, one, many = `${one}s`) => `${number.toLocaleString("en-GB")} ${number === 1 ? one : many}`;
 export const quoted = (text) => (text === null || text === undefined ? "missing" : text === "" ? "blank" : `“${text}”`);
+// A space at either end would not be seen without quotation marks.
+export const spaced = (text) => (text && text.trim() !== text ? quoted(text) : text);
 
 // What the plan calls the columns, once it is known: {label, unit} by name of column.
 export const columns = new Map();

@@ -281,18 +281,19 @@ static void tell_account(struct text *account, const char *const *names, const s
     for (size_t f = 0; f < plan->file_count; f++) {
         tell_file(account, names[f], &frame->cells[f]);
     }
-    text_format(account, "%zu participants; %zu repeated, %zu records held aside until a decision says which stands.\n",
-        frame->participant_count, repeated, frame->held_aside);
+    text_format(account, "%zu participant%s; %zu repeated, %zu records held aside until a decision says which stands.\n",
+        frame->participant_count, frame->participant_count == 1 ? "" : "s", repeated, frame->held_aside);
     for (size_t f = plan->files[0].by_visit ? 0 : 1; f < plan->file_count; f++) {
         tell_join(account, frame, f);
     }
-    text_format(account, "%zu columns have a meaning in the plan; %zu codes for missing entered from it.\n",
-        plan->variable_count + 1 + (plan->arm_column != NULL), planned);
+    size_t meant = plan->variable_count + 1 + (plan->arm_column != NULL);
+    text_format(account, "%zu column%s a meaning in the plan; %zu code%s for missing entered from it.\n", meant,
+        meant == 1 ? " has" : "s have", planned, planned == 1 ? "" : "s");
     struct arena arena;
     arena_init(&arena);
     struct discrepancies found;
     checks_run(frame, frame, &arena, &found);
-    text_format(account, "%zu discrepancies to settle, blinding %s.\n", found.open, blinding_name(frame->blinding));
+    text_format(account, "%zu discrepanc%s to settle, blinding %s.\n", found.open, found.open == 1 ? "y" : "ies", blinding_name(frame->blinding));
     arena_release(&arena);
 }
 
