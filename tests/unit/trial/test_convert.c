@@ -9,6 +9,7 @@
 
 #include <cmocka.h>
 
+#include "base/text.h"
 #include "near.h"
 #include "trial/convert.h"
 #include "trial_case.h"
@@ -138,10 +139,49 @@ static void test_refusals(void **state) {
     case_close(&c);
 }
 
+/* In a file with one row per visit a site is asked about once for all visits of the column, and converted at all of them. */
+static void test_every_visit_at_once(void **state) {
+    (void)state;
+    static const char by_visit[] =
+        "{'title': 'T', 'participant': 'pid', 'site': {'column': 'v.site@V0'},"
+        " 'files': [{'id': 'v', 'layout': 'visit', 'participant': 'pid', 'visit': 'visit', 'codes': ['V0', 'V1']}],"
+        " 'outcomes': [{'id': 'g', 'label': 'Glucose', 'unit': 'mg/dL', 'role': 'primary', 'better': 'lower', 'plausible': [40, 600],"
+        "   'visits': [{'label': 'Start', 'column': 'glu', 'file': 'v', 'visit': 'V0'}, {'label': 'End', 'column': 'glu', 'file': 'v', 'visit': 'V1'}]}]}";
+    struct text made;
+    text_init(&made);
+    text_literal(&made, "pid,visit,site,glu\n");
+    for (int p = 0; p < 24; p++) { /* 85 to 131 mg/dL, eight participants at each of three sites; the third in mmol/L */
+        for (int v = 0; v < 2; v++) {
+            double glucose = 85 + 2 * p + v;
+            text_format(&made, "P%02d,V%d,0%d,%.3f\n", p, v, p % 3 + 1, p % 3 == 2 ? glucose * 0.0555 : glucose);
+        }
+    }
+    struct trial_case c;
+    struct arena arena;
+    struct discrepancies found;
+    arena_init(&arena);
+    case_open(&c, made.data, by_visit);
+    checks_run(c.frame, c.received, &arena, &found);
+    assert_int_equal(found.count, 1);
+    assert_string_equal(found.list[0].id, "site-unit/v.glu/03");
+    assert_int_equal(found.list[0].participant_count, 8);
+    char batch[600];
+    snprintf(batch, sizeof batch, "[%.*s,'reason':'r'}]", (int)strlen(found.list[0].proposal) - 1, found.list[0].proposal);
+    case_must(&c, batch);
+    assert_int_equal(convert_cells(c.frame, &c.decisions[c.count - 1]), 16);
+    near(value_of(&c, "v.glu@V0", "P02"), 89, 0.01, 0, "written with three decimals");
+    near(value_of(&c, "v.glu@V1", "P02"), 90, 0.01, 0, "written with three decimals");
+    checks_run(c.frame, c.received, &arena, &found);
+    assert_int_equal(found.open, 0);
+    case_close(&c);
+    text_release(&made);
+    arena_release(&arena);
+}
+
 int main(void) {
     const struct CMUnitTest tests[] = {
         cmocka_unit_test(test_factors), cmocka_unit_test(test_converts_and_comes_back), cmocka_unit_test(test_codes_and_limits),
-        cmocka_unit_test(test_refusals),
+        cmocka_unit_test(test_refusals), cmocka_unit_test(test_every_visit_at_once),
     };
     return cmocka_run_group_tests_name("trial/convert", tests, NULL, NULL);
 }
