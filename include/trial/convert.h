@@ -10,7 +10,7 @@
 struct unit_factor {
     const char *from, *to; /* NULL: powers of ten of whatever the unit is */
     double factor;
-    const char *analyte;   /* word of a label that tells it, NULL: any */
+    const char *analyte; /* word of a label that tells it, NULL: any */
     const char *source;
 };
 extern const struct unit_factor unit_factors[]; /* ends with a factor of 0; each stands for its inverse too */
@@ -20,7 +20,8 @@ const char *site_of(const struct frame *frame, size_t participant);
 
 /* Whether the decision converts numbers of the column of that name. */
 bool convert_covers(const struct decision *decision, const char *column);
-/* While the frame is being built: converts numbers and limits of the column at the decision's site; how many are there. */
+/* While the frame is being built: converts numbers and limits of the column at the decision's site; how many are there.
+ */
 size_t convert_apply(const struct frame *frame, struct column *column, const struct decision *decision);
 /* How many cells now hold a number that the decision converts. */
 size_t convert_cells(const struct frame *frame, const struct decision *decision);

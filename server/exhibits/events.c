@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Events after randomisation: who had which, why, and whose outcome is observed all the same. They are no missing values. */
+/* Events after randomisation: who had which, why, and whose outcome is observed all the same. They are no missing
+ * values. */
 #include "base/map.h"
 #include "exhibits/ledger.h"
 #include "exhibits/list.h"
@@ -35,8 +36,10 @@ struct events_result {
 
 /* ---- computing ---- */
 
-/* What a column beside the event's reads of a participant: current where the plan gives it a meaning, else as received. */
-static const char *text_beside(const struct frame *frame, const char *name, const struct place *place, size_t participant) {
+/* What a column beside the event's reads of a participant: current where the plan gives it a meaning, else as received.
+ */
+static const char *text_beside(
+    const struct frame *frame, const char *name, const struct place *place, size_t participant) {
     const struct column *column = frame_column(frame, name);
     if (column) {
         return frame_text(frame, column, participant);
@@ -108,14 +111,15 @@ static void count_reasons(struct view *view, const struct events_result *result,
         text = is_blank(text) ? NULL : text;
         level[p] = map_put(&seen, text ? text : "", (int32_t)row->reason_count);
         if ((size_t)level[p] == row->reason_count) {
-            row->reasons[row->reason_count++] = (struct event_reason){text, ARENA_NEW(view->arena, view->arms.count, size_t)};
+            row->reasons[row->reason_count++] =
+                (struct event_reason){text, ARENA_NEW(view->arena, view->arms.count, size_t)};
         }
         row->reasons[level[p]].arms[result->members.arm[i]]++;
     }
     map_release(&seen);
     if (reasons_tell(view, row, level)) {
-        view_note(view, "The reasons of %s are not shown while the study is %s: they would tell the arms apart.", row->event->label,
-            blinding_name(frame->blinding));
+        view_note(view, "The reasons of %s are not shown while the study is %s: they would tell the arms apart.",
+            row->event->label, blinding_name(frame->blinding));
         row->reason_count = 0;
     }
     if (row->reason_count) {
@@ -142,7 +146,8 @@ static bool compute(struct view *view, struct fault *fault) {
             continue;
         }
         struct event_row *row = &result->rows[result->count++];
-        *row = (struct event_row){.event = event, .column = column, .arms = ARENA_NEW(view->arena, view->arms.count, struct event_arm)};
+        *row = (struct event_row){
+            .event = event, .column = column, .arms = ARENA_NEW(view->arena, view->arms.count, struct event_arm)};
         count_arms(view, result, row);
         if (event->reason) {
             count_reasons(view, result, row);
@@ -152,8 +157,10 @@ static bool compute(struct view *view, struct fault *fault) {
         view_note(view, "The plan lists no events.");
     }
     members_note(view, &result->members);
-    view->caption = arena_format(view->arena, "%s of the %s. An event stands apart from missing values: it blanks no outcome, and %s is used "
-        "wherever it is observed.", count_words(view, result->members.count, "participant"), set_words(view->set), result->outcome);
+    view->caption = arena_format(view->arena,
+        "%s of the %s. An event stands apart from missing values: it blanks no outcome, and %s is used "
+        "wherever it is observed.",
+        count_words(view, result->members.count, "participant"), set_words(view->set), result->outcome);
     view->result = result;
     return true;
 }
@@ -228,11 +235,12 @@ static void arm_columns(const struct view *view, const struct events_result *res
 }
 
 static const char *heading(const struct view *view, const struct event *event) {
-    return arena_format(view->arena, "%s%s%s · strategy: %s", event->label, event->kind ? " · " : "", event->kind ? event->kind : "",
-        event->strategy ? event->strategy : "not said in the plan");
+    return arena_format(view->arena, "%s%s%s · strategy: %s", event->label, event->kind ? " · " : "",
+        event->kind ? event->kind : "", event->strategy ? event->strategy : "not said in the plan");
 }
 
-static void event_table_rows(const struct view *view, const struct events_result *result, const struct event_row *row, struct table *table) {
+static void event_table_rows(
+    const struct view *view, const struct events_result *result, const struct event_row *row, struct table *table) {
     const struct {
         const char *words;
         size_t place, whole; /* of a count in struct event_arm, and of what it is a part of */
@@ -241,9 +249,10 @@ static void event_table_rows(const struct view *view, const struct events_result
         {"with it", offsetof(struct event_arm, with), offsetof(struct event_arm, n), true},
         {"without it", offsetof(struct event_arm, without), offsetof(struct event_arm, n), true},
         {"not recorded", offsetof(struct event_arm, not_recorded), offsetof(struct event_arm, n), true},
-        {"with it and dated", offsetof(struct event_arm, dated), offsetof(struct event_arm, with), row->event->date != NULL},
-        {arena_format(view->arena, "with it and %s observed", lower_first(view, result->outcome)), offsetof(struct event_arm, observed),
-            offsetof(struct event_arm, with), true},
+        {"with it and dated", offsetof(struct event_arm, dated), offsetof(struct event_arm, with),
+            row->event->date != NULL},
+        {arena_format(view->arena, "with it and %s observed", lower_first(view, result->outcome)),
+            offsetof(struct event_arm, observed), offsetof(struct event_arm, with), true},
     };
     table_group(table, heading(view, row->event));
     for (size_t l = 0; l < sizeof lines / sizeof *lines; l++) {
@@ -302,14 +311,19 @@ const struct exhibit exhibit_events = {
     .item = 3,
     .title = "Who stopped, withdrew, died or took rescue treatment?",
     .tab = "Events",
-    .says = "Events of the plan by arm as blinding allows, with reasons, strategy and how many of those with one have the primary outcome observed",
+    .says = "Events of the plan by arm as blinding allows, with reasons, strategy and how many of those with one have "
+            "the primary outcome observed",
     .pooled = SHOWN_AS_ONE_ARM,
     .by_arm_look = true,
     .table_first = true,
-    .method = "An event is counted where its column reads one of the plan's codes for yes; a cell with none of the codes is not recorded. Events that rest "
-              "on one column are read from it each by itself. An event never blanks an outcome: a value observed after it stays observed and is used "
-              "as the analysis uses any other, and a missing one keeps its own reason under missing values. What an event means for the effect is the "
-              "plan's strategy for it (ICH E9(R1), 2019: treatment policy, hypothetical, composite variable, while on treatment, principal stratum); "
+    .method = "An event is counted where its column reads one of the plan's codes for yes; a cell with none of the "
+              "codes is not recorded. Events that rest "
+              "on one column are read from it each by itself. An event never blanks an outcome: a value observed after "
+              "it stays observed and is used "
+              "as the analysis uses any other, and a missing one keeps its own reason under missing values. What an "
+              "event means for the effect is the "
+              "plan's strategy for it (ICH E9(R1), 2019: treatment policy, hypothetical, composite variable, while on "
+              "treatment, principal stratum); "
               "it is stated here and applied by no exhibit. Counts only: nothing here compares the arms.",
     .arguments = arguments,
     .compute = compute,

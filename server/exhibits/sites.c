@@ -17,7 +17,7 @@ struct visit_column {
 struct site {
     const char *code; /* "" where it is blank */
     size_t participants, in_force, held_aside;
-    size_t *observed; /* [visits] of those in force */
+    size_t *observed;        /* [visits] of those in force */
     size_t discrepancies[3]; /* by state */
     size_t queries, unanswered;
 };
@@ -196,7 +196,8 @@ static size_t count_discrepancies(struct view *view, struct sites_result *result
 
 static bool answered(const struct frame *frame, uint32_t number) {
     for (size_t i = number; i < frame->version; i++) {
-        if (frame->stands[i] && frame->decisions[i].kind == DECISION_RESPONSE && frame->decisions[i].reverses == number) {
+        if (frame->stands[i] && frame->decisions[i].kind == DECISION_RESPONSE &&
+            frame->decisions[i].reverses == number) {
             return true;
         }
     }
@@ -228,7 +229,8 @@ static void list_visits(struct view *view, struct sites_result *result) {
     result->visits = ARENA_NEW(view->arena, plan->variable_count, struct visit_column);
     for (size_t o = 0; o < plan->outcome_count; o++) {
         for (size_t v = 0; v < plan->outcomes[o].visit_count; v++) {
-            result->visits[result->visit_count++] = (struct visit_column){&plan->outcomes[o], &plan->outcomes[o].visits[v]};
+            result->visits[result->visit_count++] =
+                (struct visit_column){&plan->outcomes[o], &plan->outcomes[o].visits[v]};
         }
     }
 }
@@ -243,7 +245,8 @@ static bool compute(struct view *view, struct fault *fault) {
         return true;
     }
     if (arms_hide_column(frame, frame->plan->site_column)) {
-        view_note(view, "Sites are not shown while the study is %s: they would tell the arms apart.", blinding_name(frame->blinding));
+        view_note(view, "Sites are not shown while the study is %s: they would tell the arms apart.",
+            blinding_name(frame->blinding));
         return true;
     }
     struct map places;
@@ -255,15 +258,17 @@ static bool compute(struct view *view, struct fault *fault) {
     size_t elsewhere = count_discrepancies(view, result, &places), asked = count_queries(view, result, &places);
     map_release(&places);
     if (elsewhere) {
-        view_note(view, "%s about no participant, and at no site here.", elsewhere == 1 ? "1 discrepancy is" :
-            arena_format(view->arena, "%zu discrepancies are", elsewhere));
+        view_note(view, "%s about no participant, and at no site here.",
+            elsewhere == 1 ? "1 discrepancy is" : arena_format(view->arena, "%zu discrepancies are", elsewhere));
     }
     if (asked) {
-        view_note(view, "%s no participant, and at no site here.", asked == 1 ? "1 query names" : arena_format(view->arena, "%zu queries name", asked));
+        view_note(view, "%s no participant, and at no site here.",
+            asked == 1 ? "1 query names" : arena_format(view->arena, "%zu queries name", asked));
     }
-    view->caption = arena_format(view->arena, "%s at %s. Observed is of participants with a record in force. A discrepancy counts once at each site it "
-        "concerns. Small sites are shown as they are; no arm is shown.", count_words(view, frame->participant_count, "participant"),
-        count_words(view, result->count, "site"));
+    view->caption = arena_format(view->arena,
+        "%s at %s. Observed is of participants with a record in force. A discrepancy counts once at each site it "
+        "concerns. Small sites are shown as they are; no arm is shown.",
+        count_words(view, frame->participant_count, "participant"), count_words(view, result->count, "site"));
     return true;
 }
 
@@ -290,7 +295,8 @@ static void json(const struct view *view, struct json *json) {
         json_close(json);
         json_key_object(json, "discrepancies");
         for (int state = 0; state < 3; state++) {
-            json_field_integer(json, discrepancy_state_name((enum discrepancy_state)state), (int64_t)site->discrepancies[state]);
+            json_field_integer(
+                json, discrepancy_state_name((enum discrepancy_state)state), (int64_t)site->discrepancies[state]);
         }
         json_close(json);
         json_field_integer(json, "queries", (int64_t)site->queries);
@@ -315,7 +321,8 @@ static void tables(const struct view *view, struct table **tables, size_t *count
         const struct visit_column *visit = &result->visits[v];
         bool one = visit->outcome->visit_count == 1;
         table_column(table, arena_format(view->arena, "observed:%s:%s", visit->outcome->id, visit->visit->label),
-            one ? visit->outcome->label : arena_format(view->arena, "%s, %s", visit->outcome->label, lower_first(view, visit->visit->label)),
+            one ? visit->outcome->label
+                : arena_format(view->arena, "%s, %s", visit->outcome->label, lower_first(view, visit->visit->label)),
             "% observed (n)", TABLE_NUMBERS);
     }
     table_column(table, "open", "Discrepancies open", NULL, TABLE_NUMBERS);
@@ -352,12 +359,16 @@ const struct exhibit exhibit_sites = {
     .item = 1,
     .title = "How complete is each site, and what is open there?",
     .tab = "Sites",
-    .says = "Participants, records held aside, values observed, discrepancies, queries and unit conversions of each site",
+    .says =
+        "Participants, records held aside, values observed, discrepancies, queries and unit conversions of each site",
     .pooled = SHOWN,
     .table_first = true,
-    .method = "Counts by the current text of the plan's column of sites, in byte order; a blank site has a row of its own. A participant whose records "
-              "are held aside stands at the site of the first of them and has no observed value yet. Nothing here is split by arm. A conversion "
-              "reads a column at one site in another unit: the text stays as received, the number is multiplied by a published factor.",
+    .method = "Counts by the current text of the plan's column of sites, in byte order; a blank site has a row of its "
+              "own. A participant whose records "
+              "are held aside stands at the site of the first of them and has no observed value yet. Nothing here is "
+              "split by arm. A conversion "
+              "reads a column at one site in another unit: the text stays as received, the number is multiplied by a "
+              "published factor.",
     .arguments = arguments,
     .compute = compute,
     .json = json,

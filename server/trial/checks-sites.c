@@ -15,10 +15,11 @@
 
 static const char check_name[] = "site-unit";
 
-enum { FEWEST = 5, FAR = 5 }; /* values of a site; standard errors of a difference of medians */
+enum { FEWEST = 5, FAR = 5 };          /* values of a site; standard errors of a difference of medians */
 static const double near_enough = 2.5; /* standard errors, after the factor */
-static const double least_between = 0.05; /* sites differ by as much on the natural logarithm without anything being wrong */
-static const double least_shift = 0.4;    /* well below the smallest factor of the table, ln 2.2 */
+static const double least_between =
+    0.05; /* sites differ by as much on the natural logarithm without anything being wrong */
+static const double least_shift = 0.4; /* well below the smallest factor of the table, ln 2.2 */
 
 struct site_value {
     double log;
@@ -35,10 +36,10 @@ struct site_run { /* the values of one site, ascending */
 struct sites { /* one variable, or one column of a file with one row per visit */
     const struct variable *variable;
     const char *column;
-    const int32_t *of;     /* [participants] place among the runs, NOWHERE where the site is not known */
-    struct site_run *runs; /* a site without values has n = 0 */
+    const int32_t *of;       /* [participants] place among the runs, NOWHERE where the site is not known */
+    struct site_run *runs;   /* a site without values has n = 0 */
     size_t n, count, filled; /* values; sites; sites with values */
-    double median;         /* of the sites' medians, weighted by their values */
+    double median;           /* of the sites' medians, weighted by their values */
 };
 
 static int by_log(const void *a, const void *b) {
@@ -82,7 +83,8 @@ static void each_value(const struct finding *finding, struct sites *sites, bool 
     const struct plan *plan = frame->plan;
     for (size_t v = 0; v < plan->variable_count; v++) {
         const struct column *column = frame->columns[v];
-        bool taken = plan->variables[v].kind == VARIABLE_NUMBER && plan_covers(sites->column, plan->variables[v].column);
+        bool taken =
+            plan->variables[v].kind == VARIABLE_NUMBER && plan_covers(sites->column, plan->variables[v].column);
         for (size_t p = 0; taken && p < frame->participant_count; p++) {
             if (!(column->number[p] > 0) || sites->of[p] == NOWHERE) {
                 continue;
@@ -145,8 +147,10 @@ struct others {
     double error;          /* standard error of the site's median minus theirs, sites' own differences included */
 };
 
-static void take_others(const struct finding *finding, const struct sites *sites, const struct site_run *run, struct others *others) {
-    double *logs = ARENA_NEW(finding->arena, sites->n, double), *medians = ARENA_NEW(finding->arena, sites->count, double);
+static void take_others(
+    const struct finding *finding, const struct sites *sites, const struct site_run *run, struct others *others) {
+    double *logs = ARENA_NEW(finding->arena, sites->n, double),
+           *medians = ARENA_NEW(finding->arena, sites->count, double);
     size_t judged = 0;
     *others = (struct others){0};
     for (size_t s = 0; s < sites->count; s++) {
@@ -174,13 +178,16 @@ static void take_others(const struct finding *finding, const struct sites *sites
     others->error = sqrt(sampling + between * between);
 }
 
-/* The share of the values, shifted, that lie in the plausible range or, without one, within four spreads of the others. */
-static double share_inside(const struct sites *sites, const struct site_value *values, size_t n, const struct others *others, double shift) {
+/* The share of the values, shifted, that lie in the plausible range or, without one, within four spreads of the others.
+ */
+static double share_inside(
+    const struct sites *sites, const struct site_value *values, size_t n, const struct others *others, double shift) {
     const struct range *range = &sites->variable->plausible;
     size_t inside = 0;
     for (size_t i = 0; i < n; i++) {
         double at = values[i].log + shift;
-        inside += range->given ? exp(at) >= range->low && exp(at) <= range->high : fabs(at - others->median) <= 4 * others->spread;
+        inside += range->given ? exp(at) >= range->low && exp(at) <= range->high
+                               : fabs(at - others->median) <= 4 * others->spread;
     }
     return n ? (double)inside / (double)n : 0;
 }
@@ -232,8 +239,8 @@ static bool same_unit(const char *a, const char *b) {
     return strcmp(folded[0], folded[1]) == 0;
 }
 
-static void try_factor(const struct finding *finding, const struct sites *sites, const struct site_run *run, const struct others *others,
-    const struct unit_factor *entry, bool inverse, struct guess_of_unit *best) {
+static void try_factor(const struct finding *finding, const struct sites *sites, const struct site_run *run,
+    const struct others *others, const struct unit_factor *entry, bool inverse, struct guess_of_unit *best) {
     const char *unit = sites->variable->unit && *sites->variable->unit ? sites->variable->unit : NULL;
     double factor = inverse ? 1 / entry->factor : entry->factor;
     const char *from = inverse ? entry->to : entry->from, *to = inverse ? entry->from : entry->to;
@@ -254,7 +261,8 @@ static void try_factor(const struct finding *finding, const struct sites *sites,
     *best = (struct guess_of_unit){entry, factor, from, to, rank, apart};
 }
 
-static const char *convert_proposal(struct finding *finding, const struct sites *sites, const char *site, const struct guess_of_unit *guess) {
+static const char *convert_proposal(
+    struct finding *finding, const struct sites *sites, const char *site, const struct guess_of_unit *guess) {
     struct text text;
     text_init(&text);
     struct json json;
@@ -277,7 +285,8 @@ static const char *convert_proposal(struct finding *finding, const struct sites 
 static bool noted(const struct frame *frame, const char *id) {
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
-        if (frame->stands[i] && decision->kind == DECISION_NOTE && decision->discrepancy && strcmp(decision->discrepancy, id) == 0) {
+        if (frame->stands[i] && decision->kind == DECISION_NOTE && decision->discrepancy &&
+            strcmp(decision->discrepancy, id) == 0) {
             return true;
         }
     }
@@ -290,7 +299,8 @@ static int by_index(const void *a, const void *b) {
 }
 
 /* Everyone of the site with a value, once. While the question is open their values are not asked about one by one. */
-static void concerns_site(struct finding *finding, struct discrepancy *what, const struct sites *sites, const struct site_run *run) {
+static void concerns_site(
+    struct finding *finding, struct discrepancy *what, const struct sites *sites, const struct site_run *run) {
     const struct frame *frame = finding->frame;
     const char **list = ARENA_NEW(finding->arena, run->n, const char *);
     size_t *who = ARENA_NEW(finding->arena, run->n, size_t);
@@ -317,17 +327,20 @@ static void concerns_site(struct finding *finding, struct discrepancy *what, con
     }
 }
 
-static void ask(struct finding *finding, const struct sites *sites, const struct site_run *run, const struct others *others,
-    const struct guess_of_unit *guess) {
+static void ask(struct finding *finding, const struct sites *sites, const struct site_run *run,
+    const struct others *others, const struct guess_of_unit *guess) {
     struct arena *arena = finding->arena;
     const char *site = run->site, *analyte = guess->entry->analyte;
     struct discrepancy *new = finding_add(finding, check_name, sites->column, site);
     concerns_site(finding, new, sites, run);
-    new->message = arena_format(arena, "%s at site %s: the median of %zu values is %.3g, that of the other sites %.3g. Together they fit only after "
-        "times %.6g: recorded in %s instead of %s? (Factor%s%s: %s.)", sites->variable->label, site, run->n, exp(run->median),
-        exp(others->median), guess->factor, guess->from, guess->to, analyte ? " of " : "", analyte ? analyte : "", guess->entry->source);
+    new->message = arena_format(arena,
+        "%s at site %s: the median of %zu values is %.3g, that of the other sites %.3g. Together they fit only after "
+        "times %.6g: recorded in %s instead of %s? (Factor%s%s: %s.)",
+        sites->variable->label, site, run->n, exp(run->median), exp(others->median), guess->factor, guess->from,
+        guess->to, analyte ? " of " : "", analyte ? analyte : "", guess->entry->source);
     new->proposal = convert_proposal(finding, sites, site, guess);
-    new->proposal_words = arena_format(arena, "Convert site %s: times %.6g (%s to %s)", site, guess->factor, guess->from, guess->to);
+    new->proposal_words =
+        arena_format(arena, "Convert site %s: times %.6g (%s to %s)", site, guess->factor, guess->from, guess->to);
 }
 
 static void look_at(struct finding *finding, const struct sites *sites, const struct site_run *run) {
@@ -380,7 +393,8 @@ void check_site_units(struct finding *finding) {
     const char **codes = list_sites(finding, of, &count);
     for (size_t v = 0; v < plan->variable_count; v++) {
         const struct variable *variable = &plan->variables[v];
-        struct sites sites = {.variable = variable, .column = column_at_all_visits(finding, variable), .of = of, .count = count};
+        struct sites sites = {
+            .variable = variable, .column = column_at_all_visits(finding, variable), .of = of, .count = count};
         bool before = false; /* the same column at an earlier visit has been looked at with this one */
         for (size_t w = 0; w < v && !before; w++) {
             before = plan_covers(sites.column, plan->variables[w].column);

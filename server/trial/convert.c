@@ -73,7 +73,10 @@ const struct decision *convert_of(const struct frame *frame, size_t variable, si
 }
 
 const char *convert_words(struct arena *arena, const struct decision *decision) {
-    const char *offset = decision->offset > 0 || decision->offset < 0 ?
-        arena_format(arena, " %s %.15g", decision->offset > 0 ? "plus" : "minus", fabs(decision->offset)) : "";
-    return arena_format(arena, "times %.15g%s (%s to %s)", decision->factor, offset, decision->unit_from, decision->unit_to);
+    const char *offset =
+        decision->offset > 0 || decision->offset < 0
+            ? arena_format(arena, " %s %.15g", decision->offset > 0 ? "plus" : "minus", fabs(decision->offset))
+            : "";
+    return arena_format(
+        arena, "times %.15g%s (%s to %s)", decision->factor, offset, decision->unit_from, decision->unit_to);
 }

@@ -19,7 +19,8 @@ static bool read_count(struct reader *reader, const cJSON *object, const char *p
 static bool read_screening_reason(struct reader *reader, const cJSON *item, const char *path) {
     struct screening *screening = &reader->plan->screening;
     struct screening_reason *reason = &screening->reasons[screening->reason_count];
-    if (!keys_known(reader, item, path, "reason n") || !read_text(reader, item, path, "reason", true, &reason->reason) ||
+    if (!keys_known(reader, item, path, "reason n") ||
+        !read_text(reader, item, path, "reason", true, &reason->reason) ||
         !read_count(reader, item, path, "n", &reason->n)) {
         return false;
     }

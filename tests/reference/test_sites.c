@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* One site's wrong unit, on open measurements (R's package MASS; see data/sites.csv): shared out over nine sites nothing
- * is asked; one site rewritten in another unit gives one question, with the factor of the published table, and accepting
- * its proposal brings the measurements back as far as the digits written go. */
+/* One site's wrong unit, on open measurements (R's package MASS; see data/sites.csv): shared out over nine sites
+ * nothing is asked; one site rewritten in another unit gives one question, with the factor of the published table, and
+ * accepting its proposal brings the measurements back as far as the digits written go. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -114,7 +114,8 @@ static void expect_question(const struct table *data, int shift, int at) {
     snprintf(id, sizeof id, "site-unit/%s/%02d", shifts[shift].column, at + 1);
     snprintf(wanted, sizeof wanted, "\"unit_from\":\"%s\"", shifts[shift].from);
     if (count != 1 || strcmp(one->id, id) != 0 || !strstr(one->proposal, wanted)) {
-        fail_msg("%s in %s: %zu questions, %s %s", id, shifts[shift].from, count, one ? one->id : "", one ? one->proposal : "");
+        fail_msg("%s in %s: %zu questions, %s %s", id, shifts[shift].from, count, one ? one->id : "",
+            one ? one->proposal : "");
     }
     snprintf(batch, sizeof batch, "[%.*s,'reason':'r'}]", (int)strlen(one->proposal) - 1, one->proposal);
     case_must(&c, batch);
@@ -143,7 +144,8 @@ static void test_each_unit_at_each_site(void **state) {
     table_release(&data);
 }
 
-/* With two sites only a plausible range can say which is wrong; and who is asked about as a site is not asked about one by one. */
+/* With two sites only a plausible range can say which is wrong; and who is asked about as a site is not asked about one
+ * by one. */
 static void test_two_sites(void **state) {
     (void)state;
     struct table data = table_read("tests/reference/data/sites.csv");
@@ -162,7 +164,8 @@ static void test_two_sites(void **state) {
         assert_int_equal(found.open, i);
         if (i) {
             assert_string_equal(one->id, "site-unit/glucose/02");
-            case_must(&c, "[{'kind': 'note', 'exhibit': 'sites', 'text': 'It is so.', 'discrepancy': 'site-unit/glucose/02'}]");
+            case_must(&c,
+                "[{'kind': 'note', 'exhibit': 'sites', 'text': 'It is so.', 'discrepancy': 'site-unit/glucose/02'}]");
             checks_run(c.frame, c.received, &arena, &found);
             assert_int_equal(questions(&found, &one), 1);
             assert_int_equal(one->state, DISCREPANCY_SETTLED);
@@ -176,7 +179,9 @@ static void test_two_sites(void **state) {
 
 int main(void) {
     const struct CMUnitTest tests[] = {
-        cmocka_unit_test(test_nothing_is_asked), cmocka_unit_test(test_each_unit_at_each_site), cmocka_unit_test(test_two_sites),
+        cmocka_unit_test(test_nothing_is_asked),
+        cmocka_unit_test(test_each_unit_at_each_site),
+        cmocka_unit_test(test_two_sites),
     };
     return cmocka_run_group_tests_name("reference/sites", tests, NULL, NULL);
 }

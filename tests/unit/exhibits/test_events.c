@@ -17,7 +17,8 @@ static const char plan[] =
     "\"outcomes\": [{\"id\": \"y\", \"label\": \"Pressure\", \"role\": \"primary\", \"better\": \"lower\","
     "\"visits\": [{\"label\": \"Baseline\", \"column\": \"y0\"}, {\"label\": \"Week 4\", \"column\": \"y1\"}]}],"
     "\"events\": ["
-    "{\"id\": \"stopped\", \"label\": \"Stopped treatment\", \"column\": \"end\", \"yes\": [\"S\", \"D\"], \"no\": [\"C\"],"
+    "{\"id\": \"stopped\", \"label\": \"Stopped treatment\", \"column\": \"end\", \"yes\": [\"S\", \"D\"], \"no\": "
+    "[\"C\"],"
     " \"kind\": \"stopped-treatment\", \"strategy\": \"treatment-policy\", \"reason\": \"why\", \"date\": \"on\"},"
     "{\"id\": \"died\", \"label\": \"Died\", \"column\": \"end\", \"yes\": [\"D\"], \"no\": [\"C\", \"S\"],"
     " \"kind\": \"died\", \"strategy\": \"composite\"}],"
@@ -121,7 +122,8 @@ static void test_blinded(void **state) {
     struct renderings r;
     open_small(&c, "pooled", "4");
     render(&c, "events", NULL, 0, &r, NULL);
-    expect_counts(member_with(field(r.parsed, "events"), "event", "stopped"), "all", (const double[]){8, 4, 3, 1, 2, 3});
+    expect_counts(
+        member_with(field(r.parsed, "events"), "event", "stopped"), "all", (const double[]){8, 4, 3, 1, 2, 3});
     renderings_release(&r);
     case_close(&c);
     char *named = replaced(csv, "tired", "no walking for her"); /* a reason that names an arm */
@@ -192,8 +194,9 @@ static void test_screening_is_settled_by_a_note(void **state) {
     open_small(&c, "pooled", "6");
     assert_int_equal(screening_state(&c, now), 1);
     assert_string_equal(now, "open");
-    static const char note[] = "[{\"kind\": \"note\", \"exhibit\": \"flow\", \"text\": \"The log was closed early.\","
-                               "\"reason\": \"Asked the coordinator.\", \"discrepancy\": \"screening-sum/randomised\"}]";
+    static const char note[] =
+        "[{\"kind\": \"note\", \"exhibit\": \"flow\", \"text\": \"The log was closed early.\","
+        "\"reason\": \"Asked the coordinator.\", \"discrepancy\": \"screening-sum/randomised\"}]";
     struct fault fault;
     fault_init(&fault);
     assert_true(study_decide(c.study, "M. Tide, statistician", note, strlen(note), "note", ANY_VERSION, NULL, &fault));
@@ -204,8 +207,11 @@ static void test_screening_is_settled_by_a_note(void **state) {
 
 int main(void) {
     const struct CMUnitTest tests[] = {
-        cmocka_unit_test(test_counted_by_hand), cmocka_unit_test(test_no_outcome_is_blanked),
-        cmocka_unit_test(test_one_question_for_both), cmocka_unit_test(test_blinded), cmocka_unit_test(test_screening),
+        cmocka_unit_test(test_counted_by_hand),
+        cmocka_unit_test(test_no_outcome_is_blanked),
+        cmocka_unit_test(test_one_question_for_both),
+        cmocka_unit_test(test_blinded),
+        cmocka_unit_test(test_screening),
         cmocka_unit_test(test_screening_is_settled_by_a_note),
     };
     return cmocka_run_group_tests_name("exhibits/events", tests, NULL, NULL);

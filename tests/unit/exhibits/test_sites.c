@@ -13,8 +13,10 @@ static const char plan[] =
     "{\"title\": \"Small trial\", \"participant\": \"id\", \"missing_codes\": [], SITE"
     "\"arm\": {\"column\": \"grp\", \"levels\": ["
     "{\"code\": \"Lx\", \"label\": \"Advice\", \"reference\": true}, {\"code\": \"Wx\", \"label\": \"Walking\"}]},"
-    "\"outcomes\": [{\"id\": \"y\", \"label\": \"Pressure\", \"unit\": \"mmHg\", \"role\": \"primary\", \"better\": \"lower\","
-    "\"plausible\": [50, 260], \"visits\": [{\"label\": \"Baseline\", \"column\": \"y0\"}, {\"label\": \"Week 4\", \"column\": \"y1\"}]}],"
+    "\"outcomes\": [{\"id\": \"y\", \"label\": \"Pressure\", \"unit\": \"mmHg\", \"role\": \"primary\", \"better\": "
+    "\"lower\","
+    "\"plausible\": [50, 260], \"visits\": [{\"label\": \"Baseline\", \"column\": \"y0\"}, {\"label\": \"Week 4\", "
+    "\"column\": \"y1\"}]}],"
     "\"blinding\": \"coded\"}";
 
 /* p4 stands on two records of site 10; p6 has no site; a record of site 9 names nobody. */
@@ -68,12 +70,15 @@ static void test_counted_by_hand(void **state) {
     expect_site(sites, 3, "9", (const double[]){0, 1, 0, 0, 0, 0, 0});
     assert_non_null(strstr(r.text.data, "1 discrepancy is about no participant"));
     renderings_release(&r);
-    decide(&c, "[{\"kind\": \"query\", \"participant\": \"p2\", \"column\": \"y1\", \"question\": \"14 or 140?\", \"reason\": \"r\"},"
+    decide(&c, "[{\"kind\": \"query\", \"participant\": \"p2\", \"column\": \"y1\", \"question\": \"14 or 140?\", "
+               "\"reason\": \"r\"},"
                "{\"kind\": \"keep-record\", \"participant\": \"p4\", \"row\": 5, \"reason\": \"r\"}]");
     render(&c, "sites", NULL, 0, &r, NULL);
     expect_site(field(r.parsed, "sites"), 1, "10", (const double[]){3, 1, 3, 3, 2, 0, 1});
-    near(number_at(field(cJSON_GetArrayItem(field(r.parsed, "sites"), 1), "discrepancies"), "queried"), 1, 0, 0, "queried");
-    near(number_at(field(cJSON_GetArrayItem(field(r.parsed, "sites"), 1), "discrepancies"), "settled"), 1, 0, 0, "settled");
+    near(number_at(field(cJSON_GetArrayItem(field(r.parsed, "sites"), 1), "discrepancies"), "queried"), 1, 0, 0,
+        "queried");
+    near(number_at(field(cJSON_GetArrayItem(field(r.parsed, "sites"), 1), "discrepancies"), "settled"), 1, 0, 0,
+        "settled");
     renderings_release(&r);
     case_close(&c);
 }
@@ -84,7 +89,8 @@ static void test_conversions_are_shown(void **state) {
     struct exhibit_case c;
     struct renderings r;
     open_small(&c, true);
-    decide(&c, "[{\"kind\": \"convert\", \"column\": \"y1\", \"site\": \"10\", \"factor\": 7.5, \"unit_from\": \"kPa\", \"unit_to\": \"mmHg\","
+    decide(&c, "[{\"kind\": \"convert\", \"column\": \"y1\", \"site\": \"10\", \"factor\": 7.5, \"unit_from\": "
+               "\"kPa\", \"unit_to\": \"mmHg\","
                "\"source\": \"NIST SP 811\", \"reason\": \"r\"}]");
     for (size_t i = 0; i < 2; i++) {
         render(&c, where[i], NULL, 0, &r, NULL);
@@ -128,7 +134,9 @@ static void test_without_sites(void **state) {
 
 int main(void) {
     const struct CMUnitTest tests[] = {
-        cmocka_unit_test(test_counted_by_hand), cmocka_unit_test(test_conversions_are_shown), cmocka_unit_test(test_without_sites),
+        cmocka_unit_test(test_counted_by_hand),
+        cmocka_unit_test(test_conversions_are_shown),
+        cmocka_unit_test(test_without_sites),
     };
     return cmocka_run_group_tests_name("exhibits/sites", tests, NULL, NULL);
 }

@@ -1,7 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Units of one site. Factors against the AMA Manual of Style's table of SI conversions (glucose 100 mg/dL = 5.55 mmol/L,
- * cholesterol 200 mg/dL = 5.18 mmol/L, creatinine 1.0 mg/dL = 88.4 µmol/L), 1 lb = 0.45359237 kg and 1 inch = 2.54 cm
- * exactly, 760 mmHg = 101.325 kPa (the standard atmosphere). */
+/* Units of one site. Factors against the AMA Manual of Style's table of SI conversions (glucose 100 mg/dL = 5.55
+ * mmol/L, cholesterol 200 mg/dL = 5.18 mmol/L, creatinine 1.0 mg/dL = 88.4 µmol/L), 1 lb = 0.45359237 kg and 1 inch
+ * = 2.54 cm exactly, 760 mmHg = 101.325 kPa (the standard atmosphere). */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -67,12 +67,14 @@ static void test_converts_and_comes_back(void **state) {
     assert_int_equal(frame_column(c.frame, "g0")->state[case_who(&c, "P2")], CELL_OBSERVED);
     assert_int_equal(convert_cells(c.frame, &c.decisions[c.count - 1]), 1);
     /* a comma read later, a site read as another, a correction in the site's unit: all are converted */
-    case_must(&c, "[{'kind': 'number-format', 'column': 'g0', 'decimal': ',', 'reason': 'r'},"
-                  "{'kind': 'read-as', 'column': 'site', 'from': '2', 'to': '02', 'reason': 'r'},"
-                  "{'kind': 'correct', 'column': 'g0', 'participant': 'P2', 'from': '5.0', 'to': '5,5', 'reason': 'r'}]");
+    case_must(&c,
+        "[{'kind': 'number-format', 'column': 'g0', 'decimal': ',', 'reason': 'r'},"
+        "{'kind': 'read-as', 'column': 'site', 'from': '2', 'to': '02', 'reason': 'r'},"
+        "{'kind': 'correct', 'column': 'g0', 'participant': 'P2', 'from': '5.0', 'to': '5,5', 'reason': 'r'}]");
     near(value_of(&c, "g0", "P2"), 99, 0, 0, "5.5 times 18");
     near(value_of(&c, "g0", "P3"), 108, 0, 0, "6,0 times 18");
-    case_must(&c, "[{'kind': 'correct', 'column': 'g0', 'participant': 'P4', 'from': '7.0', 'to': '7', 'reason': 'r'}]");
+    case_must(
+        &c, "[{'kind': 'correct', 'column': 'g0', 'participant': 'P4', 'from': '7.0', 'to': '7', 'reason': 'r'}]");
     near(value_of(&c, "g0", "P4"), 126, 0, 0, "7 times 18, its site now 02");
     assert_int_equal(convert_cells(c.frame, &c.decisions[c.planned]), 3);
     assert_int_equal(convert_of(c.frame, 0, case_who(&c, "P4"))->number, c.planned + 1);
@@ -109,14 +111,18 @@ static void test_refusals(void **state) {
     static const struct {
         const char *batch, *sentence;
     } cases[] = {
-        {CONVERT("g0", "03", "18"),
-            "decision 1 of the batch (convert) is about the site \"03\", where the file has no participant; nothing was recorded"},
-        {CONVERT("site", "02", "18"),
-            "decision 1 of the batch (convert) is about the column \"site\", which holds no numbers; nothing was recorded"},
-        {CONVERT("g0", "02", "0"), "batch.json: decision 1 of the batch (convert) has a \"factor\" that is not above 0; nothing was recorded"},
-        {CONVERT("g0", "02", "'18'"), "batch.json: decision 1 of the batch (convert) has a \"factor\" that is not a number; nothing was recorded"},
-        {"[{'kind': 'convert', 'column': 'g0', 'site': '02', 'factor': 18, 'unit_from': 'a', 'unit_to': 'b', 'source': ' ', 'reason': 'r'}]",
-            "batch.json: decision 1 of the batch (convert) has a blank \"source\"; say where the factor is published; nothing was recorded"},
+        {CONVERT("g0", "03", "18"), "decision 1 of the batch (convert) is about the site \"03\", where the file has no "
+                                    "participant; nothing was recorded"},
+        {CONVERT("site", "02", "18"), "decision 1 of the batch (convert) is about the column \"site\", which holds no "
+                                      "numbers; nothing was recorded"},
+        {CONVERT("g0", "02", "0"),
+            "batch.json: decision 1 of the batch (convert) has a \"factor\" that is not above 0; nothing was recorded"},
+        {CONVERT("g0", "02", "'18'"), "batch.json: decision 1 of the batch (convert) has a \"factor\" that is not a "
+                                      "number; nothing was recorded"},
+        {"[{'kind': 'convert', 'column': 'g0', 'site': '02', 'factor': 18, 'unit_from': 'a', 'unit_to': 'b', 'source': "
+         "' ', 'reason': 'r'}]",
+            "batch.json: decision 1 of the batch (convert) has a blank \"source\"; say where the factor is published; "
+            "nothing was recorded"},
     };
     struct trial_case c;
     case_open(&c, csv, plan);
@@ -125,28 +131,35 @@ static void test_refusals(void **state) {
     }
     case_must(&c, CONVERT("g0", "02", "18"));
     char sentence[200];
-    snprintf(sentence, sizeof sentence, "decision 1 of the batch (convert) is about what decision %zu has converted already; reverse that one first; "
-        "nothing was recorded", c.count);
+    snprintf(sentence, sizeof sentence,
+        "decision 1 of the batch (convert) is about what decision %zu has converted already; reverse that one first; "
+        "nothing was recorded",
+        c.count);
     case_refused(&c, CONVERT("g0", "02", "18"), sentence);
     case_must(&c, "[{'kind': 'lock', 'reason': 'r'}]");
     assert_false(case_decide(&c, CONVERT("g1", "02", "18")));
     case_close(&c);
-    static const char no_site[] = "{'title': 'T', 'participant': 'pid', 'outcomes': [{'id': 'g', 'role': 'primary', 'better': 'lower',"
-                                  " 'visits': [{'label': 'End', 'column': 'g1'}]}]}";
+    static const char no_site[] =
+        "{'title': 'T', 'participant': 'pid', 'outcomes': [{'id': 'g', 'role': 'primary', 'better': 'lower',"
+        " 'visits': [{'label': 'End', 'column': 'g1'}]}]}";
     case_open(&c, csv, no_site);
     case_refused(&c, CONVERT("g1", "02", "18"),
-        "decision 1 of the batch (convert) is about a site, and the plan names no column of sites; nothing was recorded");
+        "decision 1 of the batch (convert) is about a site, and the plan names no column of sites; nothing was "
+        "recorded");
     case_close(&c);
 }
 
-/* In a file with one row per visit a site is asked about once for all visits of the column, and converted at all of them. */
+/* In a file with one row per visit a site is asked about once for all visits of the column, and converted at all of
+ * them. */
 static void test_every_visit_at_once(void **state) {
     (void)state;
     static const char by_visit[] =
         "{'title': 'T', 'participant': 'pid', 'site': {'column': 'v.site@V0'},"
         " 'files': [{'id': 'v', 'layout': 'visit', 'participant': 'pid', 'visit': 'visit', 'codes': ['V0', 'V1']}],"
-        " 'outcomes': [{'id': 'g', 'label': 'Glucose', 'unit': 'mg/dL', 'role': 'primary', 'better': 'lower', 'plausible': [40, 600],"
-        "   'visits': [{'label': 'Start', 'column': 'glu', 'file': 'v', 'visit': 'V0'}, {'label': 'End', 'column': 'glu', 'file': 'v', 'visit': 'V1'}]}]}";
+        " 'outcomes': [{'id': 'g', 'label': 'Glucose', 'unit': 'mg/dL', 'role': 'primary', 'better': 'lower', "
+        "'plausible': [40, 600],"
+        "   'visits': [{'label': 'Start', 'column': 'glu', 'file': 'v', 'visit': 'V0'}, {'label': 'End', 'column': "
+        "'glu', 'file': 'v', 'visit': 'V1'}]}]}";
     struct text made;
     text_init(&made);
     text_literal(&made, "pid,visit,site,glu\n");
@@ -166,7 +179,8 @@ static void test_every_visit_at_once(void **state) {
     assert_string_equal(found.list[0].id, "site-unit/v.glu/03");
     assert_int_equal(found.list[0].participant_count, 8);
     char batch[600];
-    snprintf(batch, sizeof batch, "[%.*s,'reason':'r'}]", (int)strlen(found.list[0].proposal) - 1, found.list[0].proposal);
+    snprintf(
+        batch, sizeof batch, "[%.*s,'reason':'r'}]", (int)strlen(found.list[0].proposal) - 1, found.list[0].proposal);
     case_must(&c, batch);
     assert_int_equal(convert_cells(c.frame, &c.decisions[c.count - 1]), 16);
     near(value_of(&c, "v.glu@V0", "P02"), 89, 0.01, 0, "written with three decimals");
@@ -180,8 +194,11 @@ static void test_every_visit_at_once(void **state) {
 
 int main(void) {
     const struct CMUnitTest tests[] = {
-        cmocka_unit_test(test_factors), cmocka_unit_test(test_converts_and_comes_back), cmocka_unit_test(test_codes_and_limits),
-        cmocka_unit_test(test_refusals), cmocka_unit_test(test_every_visit_at_once),
+        cmocka_unit_test(test_factors),
+        cmocka_unit_test(test_converts_and_comes_back),
+        cmocka_unit_test(test_codes_and_limits),
+        cmocka_unit_test(test_refusals),
+        cmocka_unit_test(test_every_visit_at_once),
     };
     return cmocka_run_group_tests_name("trial/convert", tests, NULL, NULL);
 }
