@@ -44,11 +44,11 @@ void grouping_take(struct grouping *grouping, const struct frame *frame, int cov
 /* The design of the one linear model over the members with a follow-up (and, where the plan drops a missing baseline, a
  * baseline): intercept, arm indicators (all but the reference, in shown order), baseline, adjust_for. With a grouping its levels
  * stand in the model (once, also where adjust_for names it), members without a level are out, and with `interaction` each
- * arm has an indicator within each level instead of one over all. */
+ * arm has an indicator within each level instead of one over all, so that the model fits every cell. */
 struct design_request {
     const int *adjust; /* indices of covariates */
     size_t adjust_count;
-    const bool *without; /* [participants] true leaves one out; may be NULL */
+    const bool *without; /* [participants] true: out as if excluded, also of the means that fill; may be NULL */
     const struct grouping *by; /* may be NULL */
     bool interaction;
 };

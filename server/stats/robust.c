@@ -54,6 +54,8 @@ static bool step(const struct huber_fit *fit, const double *basis, const double 
     return true;
 }
 
+/* On the residuals of least squares in place of y: the residuals sought are the same, and an offset of y by millions
+ * leaves no rounding that would keep the steps from settling. */
 static enum status iterate(
     struct huber_fit *fit, const struct linear_fit *start, const double *y, struct arena *scratch) {
     size_t n = fit->n;
@@ -68,7 +70,7 @@ static enum status iterate(
             fit->weights[i] = weight_of(before[i] / fit->scale);
         struct arena arena;
         arena_init(&arena);
-        bool done = step(fit, start->basis, y, &arena);
+        bool done = step(fit, start->basis, start->residuals, &arena);
         arena_release(&arena);
         if (!done)
             return STATUS_SINGULAR;
@@ -84,9 +86,10 @@ static enum status iterate(
     return STATUS_NOT_CONVERGED;
 }
 
-/* Coefficients from the fitted values, and their covariance: (X'X)^-1 S (kappa / m)^2, with S the sum of squares of
- * the weighted residuals over n - p, m the share of rows with full weight, kappa = 1 + p var(psi') / (n m^2). */
-static void finish(struct huber_fit *fit, const struct linear_fit *start, const double *y) {
+/* Coefficients from what the residuals moved since least squares, and their covariance: (X'X)^-1 S (kappa / m)^2, with
+ * S the sum of squares of the weighted residuals over n - p, m the share of rows with full weight,
+ * kappa = 1 + p var(psi') / (n m^2). */
+static void finish(struct huber_fit *fit, const struct linear_fit *start) {
     size_t n = fit->n, p = fit->p;
     long double squares = 0.0L, full = 0.0L, count = (long double)n;
     for (size_t i = 0; i < n; i++) {
@@ -101,8 +104,9 @@ static void finish(struct huber_fit *fit, const struct linear_fit *start, const 
     for (size_t j = 0; j < p; j++) {
         long double sum = 0.0L;
         for (size_t i = 0; i < n; i++)
-            sum += (long double)start->gain[j * n + i] * ((long double)y[i] - (long double)fit->residuals[i]);
-        fit->coefficients[j] = (double)sum;
+            sum += (long double)start->gain[j * n + i] *
+                ((long double)start->residuals[i] - (long double)fit->residuals[i]);
+        fit->coefficients[j] = (double)((long double)start->coefficients[j] + sum);
     }
     for (size_t k = 0; k < p * p; k++)
         fit->covariance[k] = (double)((long double)start->unscaled[k] * factor);
@@ -129,7 +133,7 @@ void huber_fit(
         fit->status = start.exact ? STATUS_NO_VARIANCE : iterate(fit, &start, y, &scratch);
     }
     if (fit->status == STATUS_OK)
-        finish(fit, &start, y);
+        finish(fit, &start);
     else
         fit->coefficients = fit->residuals = fit->weights = fit->covariance = NULL;
     arena_release(&scratch);

@@ -8,9 +8,11 @@
 #include <math.h>
 #include <stdint.h>
 
-/* Two groups, each with a location, the squared error of it and that error's degrees of freedom: Welch's way. */
+/* Two groups, each with a location, the squared error of it and that error's degrees of freedom: Welch's way. The
+ * location is in extended precision, so that of two means near a million their difference keeps its digits. */
 struct group {
-    double location, squared_error, df;
+    long double location;
+    double squared_error, df;
 };
 
 static struct estimate compare(struct group x, struct group y, double confidence) {
@@ -19,12 +21,20 @@ static struct estimate compare(struct group x, struct group y, double confidence
         return estimate_none(STATUS_NO_VARIANCE);
     double share_x = x.squared_error / total, share_y = y.squared_error / total;
     double df = 1.0 / (share_x * share_x / x.df + share_y * share_y / y.df);
-    return estimate_by_t(x.location - y.location, sqrt(total), df, confidence);
+    return estimate_by_t((double)(x.location - y.location), sqrt(total), df, confidence);
+}
+
+static long double mean_of(const double *values, size_t n) {
+    long double sum = 0.0L;
+    for (size_t i = 0; i < n; i++)
+        sum += (long double)values[i] - (long double)values[0];
+    return (long double)values[0] + sum / (long double)n;
 }
 
 static struct group by_mean(struct arena *arena, const double *values, size_t n) {
-    struct description d = describe(sorted_copy(arena, values, n), n);
-    return (struct group){d.mean, d.sd * d.sd / (double)n, (double)(n - 1)};
+    const double *sorted = sorted_copy(arena, values, n); /* the order of rows changes no digit */
+    struct description d = describe(sorted, n);
+    return (struct group){mean_of(sorted, n), d.sd * d.sd / (double)n, (double)(n - 1)};
 }
 
 struct estimate welch(const double *x, size_t nx, const double *y, size_t ny, double confidence) {
@@ -43,7 +53,8 @@ static size_t cut_of(size_t n, double trim) {
 
 static struct group by_trimmed_mean(struct arena *arena, const double *values, size_t n, double trim) {
     size_t cut = cut_of(n, trim), left = n - 2 * cut;
-    double *sorted = sorted_copy(arena, values, n), mean = describe(sorted + cut, left).mean;
+    double *sorted = sorted_copy(arena, values, n);
+    long double mean = mean_of(sorted + cut, left);
     for (size_t i = 0; i < cut; i++) { /* winsorise: the order stays */
         sorted[i] = sorted[cut];
         sorted[n - 1 - i] = sorted[n - 1 - cut];

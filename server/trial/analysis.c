@@ -83,18 +83,6 @@ void grouping_take(struct grouping *grouping, const struct frame *frame, int cov
 
 /* ---- design ---- */
 
-static double mean_of(const double *values, size_t count) {
-    double sum = 0;
-    size_t n = 0;
-    for (size_t i = 0; i < count; i++) {
-        if (!isnan(values[i])) {
-            sum += values[i];
-            n++;
-        }
-    }
-    return n ? sum / (double)n : MISSING;
-}
-
 struct filling { /* a design on the way: columns are appended */
     struct design *design;
     const struct analysis *analysis;
@@ -119,6 +107,21 @@ static double *add_column(struct filling *filling, const char *name) {
     }
     design->name[design->columns] = name;
     return design->column[design->columns++] = ARENA_NEW(filling->arena, design->rows, double);
+}
+
+/* The mean that stands for a missing value: of the set without those left out, who are as if excluded. */
+static double mean_of(const struct filling *filling, const double *of_member) {
+    const struct analysis *analysis = filling->analysis;
+    const bool *without = filling->request->without;
+    long double sum = 0;
+    size_t n = 0;
+    for (size_t i = 0; i < analysis->count; i++) {
+        if (!isnan(of_member[i]) && !(without && without[analysis->participant[i]])) {
+            sum += (long double)of_member[i];
+            n++;
+        }
+    }
+    return n ? (double)(sum / (long double)n) : MISSING;
 }
 
 static int group_of_row(const struct filling *filling, size_t row) {
@@ -149,11 +152,29 @@ static void add_arms(struct filling *filling) {
     }
 }
 
+/* Within a level every arm present but one has an indicator, of its difference from the reference; where the reference
+ * has nobody in the level it is from the first arm there, so that the model still fits each cell; no effect to report. */
+static void add_cells(struct filling *filling, size_t group) {
+    struct design *design = filling->design;
+    size_t arms = filling->analysis->arms->count, reference = filling->analysis->arms->reference;
+    const size_t *n = &design->n_of_cell[group * arms];
+    size_t against = reference;
+    for (size_t a = arms; a > 0 && !n[reference]; a--) {
+        against = n[a - 1] ? a - 1 : against;
+    }
+    for (size_t a = 0; a < arms; a++) {
+        if (a != against && n[a]) {
+            int column = add_arm(filling, a, (int)group);
+            design->cell_column[group * arms + a] = against == reference ? column : NOWHERE;
+        }
+    }
+}
+
 /* Levels of the grouping (all present but the first), and each arm within each level where asked. */
 static void add_groups(struct filling *filling) {
     struct design *design = filling->design;
     const struct grouping *by = filling->request->by;
-    size_t arms = filling->analysis->arms->count, reference = filling->analysis->arms->reference;
+    size_t arms = filling->analysis->arms->count;
     bool first = true;
     for (size_t g = 0; by && g < by->count; g++) {
         size_t here = 0;
@@ -168,10 +189,8 @@ static void add_groups(struct filling *filling) {
             }
         }
         first = first && !here;
-        for (size_t a = 0; a < arms && filling->request->interaction; a++) {
-            if (a != reference && design->n_of_cell[g * arms + a] && design->n_of_cell[g * arms + reference]) {
-                design->cell_column[g * arms + a] = add_arm(filling, a, (int)g);
-            }
+        if (filling->request->interaction) {
+            add_cells(filling, g);
         }
     }
 }
@@ -179,7 +198,7 @@ static void add_groups(struct filling *filling) {
 static void add_baseline(struct filling *filling) {
     struct design *design = filling->design;
     const struct analysis *analysis = filling->analysis;
-    double mean = mean_of(analysis->baseline, analysis->count);
+    double mean = mean_of(filling, analysis->baseline);
     design->baseline_column = NOWHERE;
     if (!analysis->has_baseline || isnan(mean)) {
         return;
@@ -201,7 +220,7 @@ static void add_number(struct filling *filling, const struct covariate *covariat
     for (size_t i = 0; i < analysis->count; i++) {
         of_member[i] = values[analysis->participant[i]];
     }
-    double mean = mean_of(of_member, analysis->count);
+    double mean = mean_of(filling, of_member);
     double *x = add_column(filling, covariate->label);
     for (size_t r = 0; r < design->rows; r++) {
         double value = of_member[design->member[r]];

@@ -93,7 +93,7 @@ rank_shift <- function(x, y, level) {
     c <- max(1, qwilcox((1 - level) / 2, length(x), length(y)))
     achieved <- 1 - 2 * pwilcox(c - 1, length(x), length(y))
   } else {
-    t <- table(both); m <- length(both)
+    t <- table(match(both, both)); m <- length(both)
     v <- n / 12 * (m + 1 - sum(t^3 - t) / (m * (m - 1)))
     c <- max(1, floor(n / 2 - qnorm(0.5 + level / 2) * sqrt(v)))
     achieved <- 1 - 2 * pnorm((c - 0.5 - n / 2) / sqrt(v))
