@@ -471,6 +471,22 @@ static void p_cell(struct table *table, double p) {
     text_release(&text);
 }
 
+/* An arm's mean without a number says why. */
+static void note_missing_means(const struct view *view, const struct effect_result *result, struct table *means) {
+    const struct design *design = &result->model.design;
+    for (size_t a = 0; a < view->arms.count; a++) {
+        enum status status = result->adjusted_means[a].status;
+        if (status == STATUS_TOO_FEW && result->model.fit.status == STATUS_OK && design->n_of_arm[a]) {
+            table_note(means, "Not estimable with the robust standard error: one participant alone decides a term of the "
+                "model, such as a level that nobody else has.");
+            return;
+        }
+        if (status != STATUS_OK) {
+            table_note(means, arena_format(view->arena, "%s: %s", view->arms.arm[a].label, status_sentence(status)));
+        }
+    }
+}
+
 static void tables(const struct view *view, struct table **tables, size_t *count) {
     const struct effect_result *result = view->result;
     bool log10_scale = view->scale == SCALE_LOG10;
@@ -531,6 +547,7 @@ static void tables(const struct view *view, struct table **tables, size_t *count
         put_interval(means, view, &result->adjusted_means[a], log10_scale ? 2 : decimals);
     }
     table_note(means, "Average prediction over all analysed participants with the arm set for all.");
+    note_missing_means(view, result, means);
     tables[(*count)++] = means;
 }
 

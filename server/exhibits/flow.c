@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* Participants: from records to those analysed. Every stage adds up, for each arm. */
 #include "draw/flow.h"
+#include "exhibits/ledger.h"
 #include "exhibits/list.h"
 #include "exhibits/model.h"
 #include "exhibits/words.h"
@@ -18,6 +19,7 @@ struct flow_result {
     struct stage *stages;
     size_t count;
     size_t records, randomised, excluded, analysed; /* indices of stages */
+    size_t unusable; /* members with a value at the visit who are not analysed all the same */
 };
 
 static struct stage *add(struct view *view, struct flow_result *result, const char *stage, const char *label, bool by_arm) {
@@ -40,6 +42,25 @@ static void count_visit(struct view *view, struct stage *stage, size_t visit) {
             count_one(stage, view->arms.of[p]);
         }
     }
+}
+
+/* Who has a value at the visit and yet is not analysed, so that observed and analysed can be told apart. */
+static size_t note_not_analysed(struct view *view, const struct model *model) {
+    const struct analysis *analysis = &model->analysis;
+    const double *raw = view->frame->columns[analysis->outcome->visits[analysis->visit].variable]->number;
+    size_t off = 0;
+    for (size_t i = 0; i < analysis->count; i++) {
+        off += !isnan(raw[analysis->participant[i]]) && isnan(analysis->follow_up[i]);
+    }
+    const char *visit = lower_first(view, analysis->outcome->visits[analysis->visit].label);
+    if (off) {
+        view_note(view, "%s at %s not analysed: log10 cannot take %s.", count_words(view, off, "value"), visit, off == 1 ? "it" : "them");
+    }
+    if (model->design.baseline_dropped) {
+        view_note(view, "%s with a value at %s not analysed: no baseline, and the plan drops those.",
+            count_words(view, model->design.baseline_dropped, "participant"), visit);
+    }
+    return off + model->design.baseline_dropped;
 }
 
 /* What the screening log says, as typed into the plan, above what is in the file. */
@@ -109,9 +130,10 @@ static bool compute(struct view *view, struct fault *fault) {
         arena_format(view->arena, "analysed for %s", lower_first(view, outcome->label)), true);
     analysed->total = model.design.rows;
     memcpy(analysed->arms, model.design.n_of_arm, view->arms.count * sizeof *analysed->arms);
+    result->unusable = note_not_analysed(view, &model);
     view->result = result;
     view->caption = arena_format(view->arena, "%s at %s, %s. Every record of the file is counted once: records = held aside + no arm + randomised, and "
-        "randomised = left out + without a value + analysed.", outcome->label, lower_first(view, outcome->visits[outcome->primary_visit].label),
+        "randomised = left out + without a value for this analysis + analysed.", outcome->label, lower_first(view, outcome->visits[outcome->primary_visit].label),
         set_words(view->set));
     return true;
 }
@@ -198,7 +220,7 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     all[0].total = not_randomised(view, result);
     stages[0].total = leaving(view, records->total, records[1].total == 1 ? "record held aside" : "records held aside", records[1].total,
         "without an arm that the plan lists", records[2].total);
-    const char *no_value = arena_format(view->arena, "no value at %s", lower_first(view, outcome->visits[outcome->primary_visit].label));
+    const char *no_value = arena_format(view->arena, "%s at %s", result->unusable ? "no value to analyse" : "no value", lower_first(view, outcome->visits[outcome->primary_visit].label));
     stages[1].total = leaving(view, randomised->total, excluded->label, excluded->total, no_value,
         randomised->total - excluded->total - analysed->total);
     stages[2].total = (struct flow_box){.count = analysed->total};
