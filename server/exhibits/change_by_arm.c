@@ -52,6 +52,13 @@ static const char *what_words(const struct view *view) {
     return lower_first(view, outcome->label);
 }
 
+/* An interval says its level and its error, here as beside every other. */
+static const char *differences_words(const struct view *view, const struct change_result *result) {
+    return arena_format(view->arena, " Differences at the right are %sfrom one model, with %s CI (%s standard error).",
+        result->has_change ? "baseline-adjusted, " : "", percent_words(view, view->frame->plan->confidence),
+        view->frame->plan->robust ? "robust" : "classical");
+}
+
 static void make_caption(struct view *view, const struct change_result *result) {
     const struct outcome *outcome = &view->frame->plan->outcomes[view->outcome];
     const char *visit = outcome->visits[view->visit].label;
@@ -63,8 +70,7 @@ static void make_caption(struct view *view, const struct change_result *result) 
     view->caption = arena_format(view->arena, "%s, %s%s%s, %s. Box: quartiles (type 7); heavy bar: median; cross: mean; line: furthest value "
         "within 1.5 box lengths; every participant is drawn, those beyond the lines are named.%s", what, scale,
         view->scale == SCALE_LINEAR && *outcome->unit ? ", " : "", view->scale == SCALE_LINEAR ? outcome->unit : "",
-        set_words(view->set), !result->fitted ? "" : result->has_change ?
-            " Differences at the right are baseline-adjusted, from one model." : " Differences at the right are from one model.");
+        set_words(view->set), result->fitted ? differences_words(view, result) : "");
 }
 
 static bool compute(struct view *view, struct fault *fault) {
