@@ -54,7 +54,8 @@ static size_t note_not_analysed(struct view *view, const struct model *model) {
     }
     const char *visit = lower_first(view, analysis->outcome->visits[analysis->visit].label);
     if (off) {
-        view_note(view, "%s at %s not analysed: log10 cannot take %s.", count_words(view, off, "value"), visit, off == 1 ? "it" : "them");
+        view_note(view, "%s at %s not analysed: log10 cannot take %s.", count_words(view, off, "value"), visit,
+            off == 1 ? "it" : "them");
     }
     if (model->design.baseline_dropped) {
         view_note(view, "%s with a value at %s not analysed: no baseline, and the plan drops those.",
@@ -133,8 +134,8 @@ static bool compute(struct view *view, struct fault *fault) {
     result->unusable = note_not_analysed(view, &model);
     view->result = result;
     view->caption = arena_format(view->arena, "%s at %s, %s. Every record of the file is counted once: records = held aside + no arm + randomised, and "
-        "randomised = left out + without a value for this analysis + analysed.", outcome->label, lower_first(view, outcome->visits[outcome->primary_visit].label),
-        set_words(view->set));
+        "randomised = left out + without a value for this analysis + analysed.", outcome->label,
+        lower_first(view, outcome->visits[outcome->primary_visit].label), set_words(view->set));
     return true;
 }
 
@@ -220,7 +221,8 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     all[0].total = not_randomised(view, result);
     stages[0].total = leaving(view, records->total, records[1].total == 1 ? "record held aside" : "records held aside", records[1].total,
         "without an arm that the plan lists", records[2].total);
-    const char *no_value = arena_format(view->arena, "%s at %s", result->unusable ? "no value to analyse" : "no value", lower_first(view, outcome->visits[outcome->primary_visit].label));
+    const char *no_value = arena_format(view->arena, "%s at %s", result->unusable ? "no value to analyse" : "no value",
+        lower_first(view, outcome->visits[outcome->primary_visit].label));
     stages[1].total = leaving(view, randomised->total, excluded->label, excluded->total, no_value,
         randomised->total - excluded->total - analysed->total);
     stages[2].total = (struct flow_box){.count = analysed->total};

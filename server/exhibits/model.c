@@ -130,7 +130,8 @@ void model_notes(const struct model *model, struct view *view) {
         "participants have no arm that the plan lists and are out of every exhibit by arm.");
     count_note(view, analysis->excluded, "participant is left out of this set by a decision.",
         "participants are left out of this set by decisions.");
-    count_note(view, analysis->not_on_scale, "participant has a value that log10 cannot take; such a value is out of this analysis.",
+    count_note(view, analysis->not_on_scale,
+        "participant has a value that log10 cannot take; such a value is out of this analysis.",
         "participants have a value that log10 cannot take; such values are out of this analysis.");
     count_note(view, design->baseline_filled,
         "missing baseline takes the mean of the observed baselines of the set (White & Thompson 2005).",
