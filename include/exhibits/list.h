@@ -19,5 +19,6 @@ extern const struct exhibit exhibit_before_after;
 extern const struct exhibit exhibit_change_by_arm;
 extern const struct exhibit exhibit_effect;
 extern const struct exhibit exhibit_decisions;
+extern const struct exhibit exhibit_deviations;
 extern const struct exhibit exhibit_participant;
 #endif

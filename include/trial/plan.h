@@ -201,6 +201,7 @@ struct plan {
     double confidence;
     enum blinding blinding;
     uint64_t seed;
+    const char *amended;     /* fingerprint of its text where amendments stand, NULL: as loaded */
     struct derived *derived; /* none rests on one after it */
     size_t derived_count;
     struct dates *dates;     /* NULL where the plan has none; see trial/dates.h */

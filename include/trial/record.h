@@ -24,6 +24,7 @@ enum decision_kind {
     DECISION_FLAG,
     DECISION_SCALE,
     DECISION_PLAUSIBLE_SHIFTS,
+    DECISION_AMEND_PLAN,
     DECISION_ATTENDING,
     DECISION_NOTE,
     DECISION_READING,
@@ -55,6 +56,7 @@ struct decision {
     const char *body;         /* canonical JSON of the fields that have no column of their own, "{}" where none */
     /* taken out of the body for use: */
     const char *value, *meaning, *decimal, *outcome, *scale, *set, *text, *exhibit;
+    const char *path;   /* amend-plan: where; from and to are JSON texts, NULL: absent */
     const char *file;   /* keep-record: id of the file, NULL for the first */
     const char *order, *site; /* date-order: site NULL for every site */
     const char *unit_from, *unit_to, *source; /* convert, beside its site */

@@ -24,7 +24,10 @@ struct study *study_open(const char *path, struct fault *fault);
 void study_close(struct study *study); /* no frame of it may be in use */
 
 const char *study_path(const struct study *study);
-const struct plan *study_plan(const struct study *study);
+const struct plan *study_plan(const struct study *study); /* as loaded */
+/* The plan in force after decision `version`: as loaded, with the amendments that stood then. Lives as long as the study. NULL and a
+ * fault where it cannot be put together. */
+const struct plan *study_plan_at(struct study *study, uint32_t version, struct fault *fault);
 /* The current frame, rebuilt first if another process has decided; release it with frame_release. NULL and a fault on failure. */
 struct frame *study_frame(struct study *study, struct fault *fault);
 /* The frame after the decisions entered at load; release it. */

@@ -22,6 +22,7 @@ const struct exhibit *const exhibits[] = {
     &exhibit_change_by_arm,
     &exhibit_effect,
     &exhibit_decisions,
+    &exhibit_deviations,
     &exhibit_participant,
     NULL,
 };
@@ -228,6 +229,27 @@ static bool showable(const struct view *view, struct fault *fault) {
     return true;
 }
 
+/* Nothing changes silently: whatever shows data or results under an amended plan says so. */
+static void note_amendments(struct view *view) {
+    enum { RECORD = 9 };
+    const struct frame *frame = view->frame;
+    struct text numbers;
+    text_init(&numbers);
+    size_t count = 0, late = 0;
+    for (size_t i = 0; i < frame->version; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        if (frame->stands[i] && decision->kind == DECISION_AMEND_PLAN) {
+            text_format(&numbers, "%s%u", count++ ? ", " : "", decision->number);
+            late += decision->blinding && strcmp(decision->blinding, blinding_name(BLINDING_UNBLINDED)) == 0;
+        }
+    }
+    if (count && view->exhibit->item && view->exhibit->item != RECORD && view->note_count < VIEW_NOTES) {
+        view_note(view, "The plan was amended (decision%s %.200s)%s.", count == 1 ? "" : "s", numbers.data,
+            late ? count == 1 ? ", after unblinding" : ", partly or wholly after unblinding" : "");
+    }
+    text_release(&numbers);
+}
+
 static const char *asked_text(const struct view *view) {
     struct text text;
     text_init(&text);
@@ -256,6 +278,9 @@ bool view_make(struct view *view, struct study *study, const char *name, const s
     bool done = showable(view, fault) && understand_all(view, fault) && view->exhibit->compute(view, fault);
     if (done && view->exhibit->by_arm_look && view->arms.coded) {
         done = study_look(study, view->frame, name, asked_text(view), by && *by ? by : "not said", fault);
+    }
+    if (done) {
+        note_amendments(view);
     }
     if (done && !view->title) {
         view->title = view->exhibit->title;

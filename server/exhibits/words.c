@@ -3,6 +3,7 @@
 #include "draw/number.h"
 #include "trial/convert.h"
 #include "stats/describe.h"
+#include "trial/amend.h"
 #include <ctype.h>
 #include <math.h>
 #include <stdio.h>
@@ -14,9 +15,24 @@ const char *head_of(const struct view *view) {
     return view->head;
 }
 
+/* An amendment may quote the arms, or the levels of a category that gives them away. */
+static bool amendment_hidden(const struct view *view, const char *path) {
+    const struct frame *frame = view->frame;
+    bool quotes = strncmp(path, "covariates", strlen("covariates")) == 0 || strncmp(path, "events", strlen("events")) == 0;
+    bool hide = frame->blinding != BLINDING_UNBLINDED && amend_about_arms(path);
+    for (size_t v = 0; v < frame->plan->variable_count && quotes && !hide; v++) {
+        hide = arms_hide_column(frame, frame->plan->variables[v].column);
+    }
+    return hide;
+}
+
 static bool hidden(const struct view *view, const struct decision *decision) {
+    if (decision->kind == DECISION_AMEND_PLAN) {
+        return amendment_hidden(view, decision->path);
+    }
+    const char *site = view->frame->plan->site_column; /* an amendment can have taken it out of the plan */
     return (decision->column && arms_hide_column(view->frame, decision->column)) ||
-           (decision->kind == DECISION_CONVERT && arms_hide_column(view->frame, view->frame->plan->site_column));
+           (decision->kind == DECISION_CONVERT && site && arms_hide_column(view->frame, site));
 }
 
 bool decision_hidden(const struct view *view, const struct decision *decision) {
@@ -78,6 +94,9 @@ const char *decision_words(const struct view *view, const struct decision *decis
         return arena_format(arena, "%s is shown with and without in %s", who, decision->outcome);
     case DECISION_SCALE:
         return arena_format(arena, "%s is analysed on the %s scale", decision->outcome, decision->scale);
+    case DECISION_AMEND_PLAN:
+        return decision_hidden(view, decision) ? arena_format(arena, "%s of the plan is changed; not shown while blinded", decision->path) :
+            arena_format(arena, "%s of the plan: %s becomes %s", decision->path, or_nothing(decision->from), or_nothing(decision->to));
     case DECISION_NOTE:
         return arena_format(arena, "%s: %s", decision->exhibit, decision->text);
     case DECISION_UNBLIND:
@@ -105,6 +124,7 @@ void decision_json(const struct view *view, const struct decision *decision, boo
     json_field_string(json, "kind", decision_rules[decision->kind].name);
     json_field_string(json, "column", hide ? NULL : decision->column);
     json_field_string(json, "participant", decision->participant);
+    json_field_string(json, "path", decision->path);
     json_field_string(json, "from", hide ? NULL : decision->from);
     json_field_string(json, "to", hide ? NULL : decision->to);
     json_field_string(json, "value", hide ? NULL : decision->value);

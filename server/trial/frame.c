@@ -35,6 +35,7 @@ const char *cell_state_words(enum cell_state state) {
 struct build {
     struct frame *frame;
     const struct frame *previous; /* NULL: nothing is shared */
+    const struct frame *lender;   /* previous where it is of the same plan: its columns mean the same; else NULL */
     bool check;                   /* hold decisions beyond previous->version against the data */
     size_t count;                 /* decisions */
     bool *stands;
@@ -742,7 +743,7 @@ static bool build_identifiers(struct build *build) {
     for (size_t f = 0; f < plan->file_count; f++) {
         const struct plan_file *file = &plan->files[f];
         struct place identifier = {f, file->first_slot, file->participant}, visit = {f, file->first_slot, file->visit};
-        const struct frame *previous = build->previous;
+        const struct frame *previous = build->lender;
         if (!build_texts(build, file->identifier_name, &identifier, VARIABLE_PARTICIPANT,
                 previous ? previous->identifiers[f] : NULL, &frame->identifiers[f]) ||
             (file->visit_name && !build_texts(build, file->visit_name, &visit, VARIABLE_VISIT, previous ? previous->visits[f] : NULL,
@@ -882,7 +883,7 @@ static bool build_column(struct build *build, const char *name, const struct pla
 
 /* Whether columns that nothing has touched can be those of the previous frame: their records are the same. */
 static bool places_shared(const struct build *build) {
-    const struct frame *frame = build->frame, *previous = build->previous;
+    const struct frame *frame = build->frame, *previous = build->lender;
     const struct dates *dates = frame->plan->dates;
     bool share = previous && !roster_touched(build);
     for (size_t f = 0; share && f < frame->plan->file_count; f++) {
@@ -901,7 +902,7 @@ static bool build_variable(struct build *build, size_t v, bool share) {
     struct frame *frame = build->frame;
     const struct variable *variable = &frame->plan->variables[v];
     return frame->columns[v] || build_column(build, variable->column, &variable->place, variable->kind, variable->covariate,
-                                    variable->event, build->previous ? build->previous->columns[v] : NULL, share, &frame->columns[v]);
+                                    variable->event, build->lender ? build->lender->columns[v] : NULL, share, &frame->columns[v]);
 }
 
 /* The site's column comes before those that hang on it. Where a variable is the site they share the column. */
@@ -914,7 +915,7 @@ static bool build_site(struct build *build, bool share) {
     int v = plan_variable(plan, plan->site_column);
     if (v == NOWHERE) {
         return build_column(build, plan->site_column, &plan->site_place, VARIABLE_CATEGORY, NOWHERE, NOWHERE,
-            build->previous ? build->previous->site : NULL, share, &frame->site);
+            build->lender ? build->lender->site : NULL, share, &frame->site);
     }
     bool built = build_variable(build, (size_t)v, share);
     frame->site = built ? column_retain(frame->columns[v]) : NULL;
@@ -1011,9 +1012,9 @@ static void place_by_window(struct windowing *windowing) {
 /* What days are counted from: the date of randomisation and, where its decisions speak of sites, the site. */
 static bool build_early(struct build *build) {
     const struct plan *plan = build->frame->plan;
-    bool share = build->previous && !roster_touched(build);
+    bool share = build->lender && !roster_touched(build);
     for (size_t f = 0; share && f < plan->file_count; f++) {
-        share = build->previous->identifiers[f] == build->frame->identifiers[f] && build->previous->visits[f] == build->frame->visits[f];
+        share = build->lender->identifiers[f] == build->frame->identifiers[f] && build->lender->visits[f] == build->frame->visits[f];
     }
     bool early = plan->site_column && !plan->files[plan->site_place.file].window;
     int randomised = plan->dates->moments[plan->dates->randomised].variable;
@@ -1029,7 +1030,7 @@ static bool build_windows(struct build *build) {
         if (!file->window) {
             continue;
         }
-        if (!build_texts(build, file->window_name, &place, VARIABLE_DATE, build->previous ? build->previous->windows[f] : NULL,
+        if (!build_texts(build, file->window_name, &place, VARIABLE_DATE, build->lender ? build->lender->windows[f] : NULL,
                 &frame->windows[f]) || !build_early(build)) {
             return false;
         }
@@ -1145,10 +1146,10 @@ static bool build_derived(struct build *build, size_t d, bool share) {
     const struct derived *derived = &frame->plan->derived[d];
     struct column **column = &frame->columns[derived->variable];
     for (size_t k = 0; k < derived->of_count && share; k++) {
-        share = build->previous->columns[derived->of[k].variable] == frame->columns[derived->of[k].variable];
+        share = build->lender->columns[derived->of[k].variable] == frame->columns[derived->of[k].variable];
     }
     if (share) {
-        *column = column_retain(build->previous->columns[derived->variable]);
+        *column = column_retain(build->lender->columns[derived->variable]);
     } else {
         *column = memory_new(1, sizeof **column);
         atomic_init(&(*column)->references, 1);
@@ -1167,7 +1168,7 @@ static bool build_columns(struct build *build) {
     if (!build_site(build, share)) {
         return false;
     }
-    bool same_site = build->previous && build->previous->site == frame->site;
+    bool same_site = build->lender && build->lender->site == frame->site;
     for (size_t v = 0; v < plan->variable_count; v++) {
         bool as_before = share && (same_site || !ever_converted(build, plan->variables[v].column));
         if (plan->variables[v].derived == NOWHERE && !build_variable(build, v, as_before)) {
@@ -1180,7 +1181,7 @@ static bool build_columns(struct build *build) {
         }
     }
     return !plan->arm_column || build_column(build, plan->arm_column, &plan->arm_place, VARIABLE_ARM, NOWHERE, NOWHERE,
-                                    build->previous ? build->previous->arm : NULL, share, &frame->arm);
+                                    build->lender ? build->lender->arm : NULL, share, &frame->arm);
 }
 
 /* ---- what is not a cell: sets, scales, flags, blinding, lock ---- */
@@ -1483,6 +1484,9 @@ static void hash_state(struct frame *frame) {
         hash_field(&hash, frame->plan->outcomes[i].id);
         hash_field(&hash, scale_name(frame->scales[i]));
     }
+    if (frame->plan->amended) {
+        hash_field(&hash, frame->plan->amended);
+    }
     hash_finish(&hash, frame->state_sha256);
 }
 
@@ -1506,7 +1510,7 @@ struct frame *frame_build(const struct plan *plan, const struct cells *cells, co
     record_standing(copy, count, stands);
     frame->decisions = copy;
     frame->stands = stands;
-    struct build build = {frame, previous, check && previous, count, stands, fault};
+    struct build build = {frame, previous, previous && previous->plan == plan ? previous : NULL, check && previous, count, stands, fault};
     if (!new_ones_fit(&build) || !build_identifiers(&build) || !build_participants(&build) || !build_columns(&build) ||
         !build_settings(&build)) {
         frame_release(frame);

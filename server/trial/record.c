@@ -34,6 +34,8 @@ const struct decision_rule decision_rules[DECISION_KIND_COUNT] = {
     [DECISION_SCALE] = {"scale", "An outcome is analysed on this scale", "outcome scale", "", true, true, true},
     [DECISION_PLAUSIBLE_SHIFTS] = {"plausible-shifts", "Shifts of the missing values the team finds believable",
         "outcome active reference", "", false, true, true},
+    [DECISION_AMEND_PLAN] = {"amend-plan", "The plan is changed at a path from here on; a deviation, shown as one", "path from to", "",
+        true, true, true},
     [DECISION_ATTENDING] = {"attending", "Who is at the meeting", "people", "", false, true, false},
     [DECISION_NOTE] = {"note", "What the team concluded at an exhibit", "exhibit text", "", false, true, false},
     [DECISION_READING] = {"reading", "What will be concluded under either reading of the letters", "if_a if_b", "", false,
@@ -62,6 +64,7 @@ static const struct field {
     {"reason", FIELD_TEXT, true, offsetof(struct decision, reason)},
     {"evidence", FIELD_TEXT, true, offsetof(struct decision, evidence)},
     {"discrepancy", FIELD_TEXT, true, offsetof(struct decision, discrepancy)},
+    {"path", FIELD_TEXT, false, offsetof(struct decision, path)},
     {"value", FIELD_TEXT, false, offsetof(struct decision, value)},
     {"meaning", FIELD_TEXT, false, offsetof(struct decision, meaning)},
     {"decimal", FIELD_TEXT, false, offsetof(struct decision, decimal)},
@@ -181,6 +184,13 @@ static void write_item(struct json *json, const cJSON *item) {
             write_item(json, child);
         }
         json_close(json);
+    } else if (cJSON_IsObject(item)) {
+        json_object(json);
+        for (const cJSON *child = item->child; child; child = child->next) {
+            json_key(json, child->string);
+            write_item(json, child);
+        }
+        json_close(json);
     } else {
         json_null(json);
     }
@@ -242,6 +252,22 @@ static bool is_empty(const char *text) {
     return text[strspn(text, " \t\r\n\f\v")] == '\0';
 }
 
+/* amend-plan takes any JSON for from and to; what nests deeper than any plan is no plan's. */
+static bool is_shallow(const cJSON *item, int depth) {
+    enum { DEPTH = 12 };
+    bool shallow = depth < DEPTH;
+    for (const cJSON *child = item->child; child && shallow; child = child->next) {
+        shallow = is_shallow(child, depth + 1);
+    }
+    return shallow;
+}
+
+static void take_amendment(struct arena *arena, const cJSON *entry, struct decision *decision) {
+    const cJSON *from = cJSON_GetObjectItemCaseSensitive(entry, "from"), *to = cJSON_GetObjectItemCaseSensitive(entry, "to");
+    decision->from = cJSON_IsNull(from) ? NULL : list_text(arena, from);
+    decision->to = cJSON_IsNull(to) ? NULL : list_text(arena, to);
+}
+
 /* What only one kind asks of its values: words for what is wrong, or NULL. */
 static const char *value_wrong(const struct decision *decision) {
     enum scale scale;
@@ -259,6 +285,11 @@ static const char *value_wrong(const struct decision *decision) {
             is_empty(decision->source) ? "has a blank \"source\"; say where the factor is published" : NULL;
     case DECISION_MISSING_CODE:
         return is_empty(decision->value) ? "has a blank \"value\"; a blank cell is missing without a code" : NULL;
+    case DECISION_AMEND_PLAN:
+        return is_empty(decision->path)           ? "has an empty \"path\"" :
+            !decision->from && !decision->to      ? "says null for both \"from\" and \"to\"" :
+            decision->from && decision->to && strcmp(decision->from, decision->to) == 0 ? "changes nothing: \"from\" and \"to\" are the same" :
+                                                                                           NULL;
     case DECISION_SCALE:
         return scale_read(decision->scale, &scale) ? NULL : "has a \"scale\" that is neither linear nor log10";
     case DECISION_EXCLUDE:
@@ -335,7 +366,11 @@ static bool read_field(struct batch *batch, const cJSON *item, const struct deci
         return refuse(batch, arena_format(batch->arena, "(%s) has the field \"%.60s\", which this kind does not take", rule->name,
             item->string));
     }
-    if (field && !type_fits(item, field->type)) {
+    bool any = rule == &decision_rules[DECISION_AMEND_PLAN] && field && field->type == FIELD_TEXT_OR_NULL;
+    if (any && !is_shallow(item, 0)) {
+        return refuse(batch, arena_format(batch->arena, "(%s) has a \"%s\" that nests deeper than a plan does", rule->name, field->name));
+    }
+    if (field && !any && !type_fits(item, field->type)) {
         return refuse(batch, arena_format(batch->arena, "(%s) has a \"%s\" that is not %s", rule->name, field->name,
             type_words(field->type)));
     }
@@ -378,6 +413,9 @@ static bool read_entry(struct batch *batch, const cJSON *entry, struct decision 
     }
     decision->kind = (enum decision_kind)found;
     take_fields(batch->arena, entry, decision);
+    if (decision->kind == DECISION_AMEND_PLAN) {
+        take_amendment(batch->arena, entry, decision);
+    }
     decision->body = body_of(batch->arena, entry);
     const char *wrong = value_wrong(decision);
     return !wrong || refuse(batch, arena_format(batch->arena, "(%s) %s", rule->name, wrong));

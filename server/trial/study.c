@@ -5,6 +5,7 @@
 #include "draw/json.h"
 #include "intake/read.h"
 #include "store/store.h"
+#include "trial/amend.h"
 #include <pthread.h>
 #include <pwd.h>
 #include <stdio.h>
@@ -19,12 +20,22 @@ struct look {
     uint32_t version;
 };
 
+struct amended { /* a plan that amendments have made; lives as long as the study, for frames point into it */
+    struct amended *next;
+    const char *text;
+    struct plan plan;
+    char fingerprint[HASH_SIZE];
+};
+
 struct study {
     pthread_mutex_t mutex;
     struct arena arena; /* what lives as long as the study: plan text, facts, decisions' texts */
     struct store *store;
     struct cells *cells; /* [plan.file_count] */
-    struct plan plan;
+    struct plan plan; /* as loaded */
+    const char *plan_text;
+    const char **names;      /* of the files received */
+    struct amended *amended; /* newest first */
     struct record record;
     unsigned char letters[32];
     struct study_facts facts;
@@ -475,8 +486,52 @@ static size_t planned_count(const struct record *record) {
     return count;
 }
 
+/* With the mutex held: the plan that a text makes, read once. */
+static const struct plan *plan_of_text(struct study *study, const char *text, struct fault *fault) {
+    for (const struct amended *known = study->amended; known; known = known->next) {
+        if (strcmp(known->text, text) == 0) {
+            return &known->plan;
+        }
+    }
+    struct amended *made = memory_new(1, sizeof *made);
+    if (!plan_read(&made->plan, text, strlen(text), "the amended plan", fault)) {
+        memory_free(made);
+        return NULL;
+    }
+    note_received(&made->plan, study->facts.received_at);
+    if (!plan_fits(&made->plan, study->cells, study->names, "the amended plan", fault)) {
+        plan_release(&made->plan);
+        memory_free(made);
+        return NULL;
+    }
+    made->text = arena_text(&study->arena, text);
+    hash_of(text, strlen(text), made->fingerprint);
+    made->plan.amended = made->fingerprint;
+    made->next = study->amended;
+    study->amended = made;
+    return &made->plan;
+}
+
+/* With the mutex held: the plan in force after `count` decisions, of which those from new_from on are new. */
+static const struct plan *plan_at(struct study *study, size_t count, size_t new_from, struct fault *fault) {
+    struct arena scratch;
+    arena_init(&scratch);
+    bool *stands = ARENA_NEW(&scratch, count ? count : 1, bool);
+    record_standing(study->record.decisions, count, stands);
+    const struct plan *plan = &study->plan;
+    if (amend_any(study->record.decisions, stands, count)) {
+        const char *text = NULL;
+        bool blinded = study->frame && study->frame->blinding != BLINDING_UNBLINDED;
+        bool fits = amend_plan(study->plan_text, study->record.decisions, stands, count, new_from, blinded, &study->record.arena, &text, fault);
+        plan = fits ? plan_of_text(study, text, fault) : NULL;
+    }
+    arena_release(&scratch);
+    return plan;
+}
+
 static struct frame *build(struct study *study, size_t count, struct frame *previous, struct fault *fault) {
-    return frame_build(&study->plan, study->cells, study->facts.data_sha256, study->letters, study->record.decisions, count,
+    const struct plan *plan = plan_at(study, count, count, fault);
+    return !plan ? NULL : frame_build(plan, study->cells, study->facts.data_sha256, study->letters, study->record.decisions, count,
         previous, false, fault);
 }
 
@@ -535,17 +590,16 @@ static void take_facts(struct study *study, const struct store_file *files, size
 static bool take_files(struct study *study, struct fault *fault) {
     struct arena scratch;
     arena_init(&scratch);
-    const char *plan = NULL;
     struct store_file *files = NULL;
     size_t count = 0;
-    bool done = store_plan(study->store, &study->arena, &plan, fault) &&
-                plan_read(&study->plan, plan, strlen(plan), "the study's plan", fault) &&
+    bool done = store_plan(study->store, &study->arena, &study->plan_text, fault) &&
+                plan_read(&study->plan, study->plan_text, strlen(study->plan_text), "the study's plan", fault) &&
                 store_files(study->store, &scratch, &files, &count, fault);
     if (done && count != study->plan.file_count) {
         done = fault_set(fault, FAULT_INPUT, "%s: it holds %zu files where its plan has %zu; ask for an earlier copy of the file",
             store_path(study->store), count, study->plan.file_count);
     }
-    const char **names = ARENA_NEW(&study->arena, count ? count : 1, const char *);
+    const char **names = study->names = ARENA_NEW(&study->arena, count ? count : 1, const char *);
     study->cells = ARENA_NEW(&study->arena, count ? count : 1, struct cells);
     for (size_t f = 0; done && f < count; f++) {
         struct arena bytes;
@@ -596,6 +650,12 @@ void study_close(struct study *study) {
         cells_release(&study->cells[f]);
     }
     plan_release(&study->plan);
+    while (study->amended) {
+        struct amended *next = study->amended->next;
+        plan_release(&study->amended->plan);
+        memory_free(study->amended);
+        study->amended = next;
+    }
     memory_free(study->record.decisions);
     arena_release(&study->record.arena);
     arena_release(&study->arena);
@@ -643,24 +703,81 @@ struct frame *study_received_frame(struct study *study) {
 
 /* ---- deciding ---- */
 
+static void push(struct study *study, const struct decision *from, const char *by, const char *at, const char *account) {
+    struct arena *arena = &study->record.arena;
+    struct decision *decision = record_push(&study->record);
+    *decision = *from;
+    decision->number = (uint32_t)study->record.count;
+    decision->at = arena_text(arena, at);
+    decision->by = arena_text(arena, by);
+    decision->account = account;
+    decision->blinding = blinding_name(study->frame->blinding);
+}
+
+/* Columns that an amendment gives a meaning for the first time get their codes for missing entered, as at load. */
+static void push_codes(struct study *study, const struct plan *plan, const char *by, const char *at, const char *account) {
+    struct decision *planned = NULL;
+    size_t count = planned_decisions(plan, study->cells, &study->record.arena, &planned);
+    for (size_t i = 0; i < count; i++) {
+        bool known = false;
+        for (size_t v = 0; v < study->frame->plan->variable_count && !known; v++) {
+            known = plan_covers(planned[i].column, study->frame->plan->variables[v].column);
+        }
+        for (size_t d = 0; d < study->record.count && !known; d++) {
+            const struct decision *decision = &study->record.decisions[d];
+            known = decision->kind == DECISION_MISSING_CODE && strcmp(decision->column, planned[i].column) == 0 &&
+                    strcmp(decision->value, planned[i].value) == 0;
+        }
+        if (!known) {
+            push(study, &planned[i], by, at, account);
+        }
+    }
+}
+
+/* A plan that amendments, or a reversal, have made unreadable: the first that is new is named. */
+static bool refuse_plan(const struct study *study, size_t before, struct fault *why, struct fault *fault) {
+    size_t i = before;
+    while (i + 1 < study->record.count && study->record.decisions[i].kind != DECISION_AMEND_PLAN &&
+           study->record.decisions[i].kind != DECISION_REVERSE) {
+        i++;
+    }
+    if (why->row) { /* refused for itself */
+        *fault = *why;
+        return false;
+    }
+    return fault_at(fault, why->code, i + 1 - before, 0, "decision %zu of the batch (%s) cannot be: %s; nothing was recorded", i + 1 - before,
+        decision_rules[study->record.decisions[i].kind].name, why->message);
+}
+
+/* The next frame of a batch that stands at the end of the record. */
+static struct frame *frame_of_batch(struct study *study, size_t before, const char *by, const char *at, const char *account,
+    struct fault *fault) {
+    struct fault why;
+    fault_init(&why);
+    const struct plan *plan = plan_at(study, study->record.count, before, &why);
+    if (!plan) {
+        refuse_plan(study, before, &why, fault);
+        return NULL;
+    }
+    if (plan != study->frame->plan) {
+        push_codes(study, plan, by, at, account);
+    }
+    return frame_build(plan, study->cells, study->facts.data_sha256, study->letters, study->record.decisions, study->record.count,
+        study->frame, true, fault);
+}
+
 /* With the mutex held: one try at recording a batch that has been read. */
 static bool append(struct study *study, const char *by, struct decision *batch, size_t count, struct fault *fault) {
     struct arena *arena = &study->record.arena;
     size_t before = study->record.count;
-    const char *account = account_name(arena), *blinding = blinding_name(study->frame->blinding);
+    const char *account = account_name(arena);
     char at[CLOCK_SIZE];
     clock_utc(at);
     for (size_t i = 0; i < count; i++) {
-        struct decision *decision = record_push(&study->record);
-        *decision = batch[i];
-        decision->number = (uint32_t)(before + i + 1);
-        decision->at = arena_text(arena, at);
-        decision->by = arena_text(arena, by);
-        decision->account = account;
-        decision->blinding = blinding;
+        push(study, &batch[i], by, at, account);
     }
-    struct frame *next = frame_build(&study->plan, study->cells, study->facts.data_sha256, study->letters,
-        study->record.decisions, study->record.count, study->frame, true, fault);
+    struct frame *next = frame_of_batch(study, before, by, at, account, fault);
+    count = study->record.count - before;
     bool done = next != NULL;
     if (done) {
         struct stored_decision *stored = ARENA_NEW(arena, count, struct stored_decision);
@@ -759,6 +876,14 @@ bool study_look(struct study *study, const struct frame *frame, const char *exhi
 
 void study_facts(struct study *study, struct study_facts *facts) {
     *facts = study->facts;
+}
+
+const struct plan *study_plan_at(struct study *study, uint32_t version, struct fault *fault) {
+    pthread_mutex_lock(&study->mutex);
+    size_t count = version < study->record.count ? version : study->record.count;
+    const struct plan *plan = plan_at(study, count, count, fault);
+    pthread_mutex_unlock(&study->mutex);
+    return plan;
 }
 
 void study_head(struct study *study, uint32_t version, char head[HASH_SIZE]) {

@@ -59,14 +59,15 @@ static bool ends_batch(const struct frame *frame, size_t i) {
     return state && (!next || strcmp(state, next) != 0);
 }
 
-static bool check_replay(struct verifying *verifying, const struct frame *frame, struct fault *fault) {
+static bool check_replay(struct verifying *verifying, struct study *study, const struct frame *frame, struct fault *fault) {
     struct frame *before = NULL;
     bool read = true;
     for (size_t i = 0; i < frame->version && verifying->sound && read; i++) {
         if (!ends_batch(frame, i)) {
             continue;
         }
-        struct frame *after = frame_build(frame->plan, frame->cells, frame->data_sha256, frame->letters, frame->decisions, i + 1, before,
+        const struct plan *plan = study_plan_at(study, (uint32_t)i + 1, fault);
+        struct frame *after = !plan ? NULL : frame_build(plan, frame->cells, frame->data_sha256, frame->letters, frame->decisions, i + 1, before,
             false, fault);
         read = after != NULL;
         if (read && strcmp(after->state_sha256, frame->decisions[i].state) != 0) {
@@ -96,7 +97,7 @@ static bool check_study(struct verifying *verifying, const char *expect, struct 
         char head[HASH_SIZE];
         study_facts(study, &facts);
         study_head(study, frame->version, head);
-        read = check_cells(verifying, frame, &facts, fault) && check_replay(verifying, frame, fault);
+        read = check_cells(verifying, frame, &facts, fault) && check_replay(verifying, study, frame, fault);
         check_head(verifying, head, expect);
         text_format(verifying->account, "%s: %u decisions, %zu file%s kept, head %s.\n", verifying->path, frame->version, facts.file_count,
             facts.file_count == 1 ? "" : "s", head);

@@ -50,6 +50,7 @@ static const struct {
     {"scale", "'outcome': 'sbp', 'scale': 'log10', 'reason': 'r'", "{'outcome':'sbp','scale':'log10'}"},
     {"plausible-shifts", "'outcome': 'sbp', 'active': [-5, 0.5], 'reference': [0, 0], 'reason': 'r'",
         "{'outcome':'sbp','active':[-5,0.5],'reference':[0,0]}"},
+    {"amend-plan", "'path': 'adjust_for', 'from': ['sex'], 'to': null, 'reason': 'r'", "{'path':'adjust_for'}"},
     {"attending", "'people': ['A. Reader']", "{'people':['A. Reader']}"},
     {"note", "'exhibit': 'effect', 'text': 'As planned.'", "{'text':'As planned.','exhibit':'effect'}"},
     {"reading", "'if_a': 'x', 'if_b': 'y', 'reason': 'r'", "{'if_a':'x','if_b':'y'}"},
