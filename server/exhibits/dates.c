@@ -9,7 +9,8 @@
 #include <string.h>
 
 struct dates_cell { /* one arm at one visit */
-    size_t n, dated, in_window, early, late; /* n: members of the arm; dated: with both dates; the last three of those */
+    size_t n, dated, in_window, early,
+        late; /* n: members of the arm; dated: with both dates; the last three of those */
     struct description summary;
     struct interval whiskers;
     struct figure_point *points; /* [dated] in identifier order */
@@ -34,10 +35,11 @@ static void place_in_window(struct dates_cell *cell, const struct moment *moment
     cell->in_window += off >= moment->window.low && off <= moment->window.high;
 }
 
-static void fill_cell(struct dates_cell *cell, const struct view *view, const struct dates_result *result, const struct moment *moment,
-    size_t arm) {
+static void fill_cell(struct dates_cell *cell, const struct view *view, const struct dates_result *result,
+    const struct moment *moment, size_t arm) {
     const struct members *members = &result->members;
-    const double *randomised = days_of(view, &result->dates->moments[result->dates->randomised]), *visit = days_of(view, moment);
+    const double *randomised = days_of(view, &result->dates->moments[result->dates->randomised]),
+                 *visit = days_of(view, moment);
     double *values = ARENA_NEW(view->arena, members->count, double);
     cell->points = ARENA_NEW(view->arena, members->count, struct figure_point);
     for (size_t i = 0; i < members->count; i++) {
@@ -57,8 +59,8 @@ static void fill_cell(struct dates_cell *cell, const struct view *view, const st
     cell->whiskers = whiskers(sorted, cell->dated);
     for (size_t i = 0; i < cell->dated; i++) {
         double days = cell->points[i].value, off = days - moment->target;
-        cell->points[i].outlier = moment->window.given ? off < moment->window.low || off > moment->window.high :
-                                                         days < cell->whiskers.low || days > cell->whiskers.high;
+        cell->points[i].outlier = moment->window.given ? off < moment->window.low || off > moment->window.high
+                                                       : days < cell->whiskers.low || days > cell->whiskers.high;
     }
 }
 
@@ -69,10 +71,14 @@ static void note_windows(struct view *view) {
         if (!frame->plan->files[f].window) {
             continue;
         }
-        view_note(view, "Visits of %s are found by date: a record is of the visit whose planned day is nearest, within its window; of several records "
-            "the nearest stands, the later on a tie. %zu records lie in a window, %zu of them farther than another; %zu ties; %zu outside every "
-            "window; %zu without a date to count from; %zu visits have several records of one day, held aside.", frame->plan->files[f].id,
-            join->matched, join->farther, join->ties, join->unplanned, join->undated, join->doubled);
+        view_note(view,
+            "Visits of %s are found by date: a record is of the visit whose planned day is nearest, within its window; "
+            "of several records "
+            "the nearest stands, the later on a tie. %zu records lie in a window, %zu of them farther than another; "
+            "%zu ties; %zu outside every "
+            "window; %zu without a date to count from; %zu visits have several records of one day, held aside.",
+            frame->plan->files[f].id, join->matched, join->farther, join->ties, join->unplanned, join->undated,
+            join->doubled);
     }
 }
 
@@ -84,7 +90,8 @@ static bool compute(struct view *view, struct fault *fault) {
     result->dates = dates;
     members_take(&result->members, view, MEMBERS_WITH_ARM);
     if (!dates || dates->randomised == NOWHERE) {
-        view->caption = dates ? "The plan gives no date of randomisation to count days from." : "The plan gives no dates.";
+        view->caption =
+            dates ? "The plan gives no date of randomisation to count days from." : "The plan gives no dates.";
         return true;
     }
     result->visits = ARENA_NEW(view->arena, dates->moment_count, const struct moment *);
@@ -99,13 +106,17 @@ static bool compute(struct view *view, struct fault *fault) {
     }
     members_note(view, &result->members);
     note_windows(view);
-    view->caption = arena_format(view->arena, "Days from randomisation to each visit, %s. Shaded: the planned window; those outside it are filled and named. "
-        "Box: quartiles (type 7); heavy bar: median; cross: mean. A date that is missing or cannot be read, of the visit or of randomisation, "
-        "is counted as missing.", set_words(view->set));
+    view->caption = arena_format(view->arena,
+        "Days from randomisation to each visit, %s. Shaded: the planned window; those outside it are filled and named. "
+        "Box: quartiles (type 7); heavy bar: median; cross: mean. A date that is missing or cannot be read, of the "
+        "visit or of randomisation, "
+        "is counted as missing.",
+        set_words(view->set));
     return true;
 }
 
-static void cell_json(const struct view *view, const struct dates_cell *cell, const struct moment *moment, size_t arm, struct json *json) {
+static void cell_json(const struct view *view, const struct dates_cell *cell, const struct moment *moment, size_t arm,
+    struct json *json) {
     json_object(json);
     arm_json(view, arm, json);
     json_field_integer(json, "n", (int64_t)cell->dated);
@@ -198,9 +209,10 @@ static void tables(const struct view *view, struct table **tables, size_t *count
     struct table *table = table_new(view->arena, "Days from randomisation to each visit");
     table_column(table, "visit", "Visit", NULL, TABLE_WORDS);
     table_column(table, "arm", "Arm", NULL, TABLE_WORDS);
-    static const char *const numbers[][2] = {{"target", "Planned day"}, {"n", "Dated"}, {"missing", "Missing"}, {"minimum", "Minimum"},
-        {"lower_quartile", "Lower quartile"}, {"median", "Median"}, {"upper_quartile", "Upper quartile"}, {"maximum", "Maximum"},
-        {"in_window", "In window"}, {"early", "Early"}, {"late", "Late"}};
+    static const char *const numbers[][2] = {{"target", "Planned day"}, {"n", "Dated"}, {"missing", "Missing"},
+        {"minimum", "Minimum"}, {"lower_quartile", "Lower quartile"}, {"median", "Median"},
+        {"upper_quartile", "Upper quartile"}, {"maximum", "Maximum"}, {"in_window", "In window"}, {"early", "Early"},
+        {"late", "Late"}};
     for (size_t i = 0; i < sizeof numbers / sizeof *numbers; i++) {
         table_column(table, numbers[i][0], numbers[i][1], NULL, TABLE_NUMBERS);
     }
@@ -231,18 +243,33 @@ static void figure(const struct view *view, const struct figure *figure, struct 
     for (size_t i = 0; i < result->visit_count * arms; i++) {
         const struct dates_cell *cell = &result->cells[i];
         const struct description *s = &cell->summary;
-        rows[i] = (struct boxes_row){.arm = view->arms.pooled ? NULL : view->arms.arm[i % arms].label, .mark = mark_of(view, i % arms),
-            .counts = arena_format(view->arena, "%zu dated of %zu", cell->dated, cell->n), .sentence = cell->dated == 0 ? "No dates." : NULL,
-            .low_whisker = cell->whiskers.low, .low_quartile = s->lower_quartile, .median = s->median, .mean = s->mean,
-            .high_quartile = s->upper_quartile, .high_whisker = cell->whiskers.high, .points = cell->points, .point_count = cell->dated};
+        rows[i] = (struct boxes_row){.arm = view->arms.pooled ? NULL : view->arms.arm[i % arms].label,
+            .mark = mark_of(view, i % arms),
+            .counts = arena_format(view->arena, "%zu dated of %zu", cell->dated, cell->n),
+            .sentence = cell->dated == 0 ? "No dates." : NULL,
+            .low_whisker = cell->whiskers.low,
+            .low_quartile = s->lower_quartile,
+            .median = s->median,
+            .mean = s->mean,
+            .high_quartile = s->upper_quartile,
+            .high_whisker = cell->whiskers.high,
+            .points = cell->points,
+            .point_count = cell->dated};
     }
     for (size_t v = 0; v < result->visit_count; v++) {
         const struct moment *moment = result->visits[v];
-        groups[v] = (struct boxes_group){.level = moment->label, .rows = &rows[v * arms], .row_count = arms, .banded = moment->window.given,
-            .band_low = moment->target + moment->window.low, .band_high = moment->target + moment->window.high};
+        groups[v] = (struct boxes_group){.level = moment->label,
+            .rows = &rows[v * arms],
+            .row_count = arms,
+            .banded = moment->window.given,
+            .band_low = moment->target + moment->window.low,
+            .band_high = moment->target + moment->window.high};
     }
     struct boxes boxes = {.decimals = 0, .groups = groups, .group_count = result->visit_count};
-    boxes.axis = (struct axis_plan){.scale = AXIS_LINEAR, .low = (double)NAN, .high = (double)NAN, .null_line = 0,
+    boxes.axis = (struct axis_plan){.scale = AXIS_LINEAR,
+        .low = (double)NAN,
+        .high = (double)NAN,
+        .null_line = 0,
         .title = "Days from randomisation"};
     boxes_svg(&boxes, figure, html);
 }
@@ -264,9 +291,12 @@ const struct exhibit exhibit_dates = {
     .says = "Days from randomisation to each visit by arm as blinding allows, with the planned windows",
     .pooled = SHOWN_AS_ONE_ARM,
     .applies = applies,
-    .method = "Dates are days of the proleptic Gregorian calendar (ISO 8601), read in the order the plan or a decision declares for the file and site; a "
-              "visit's day is its date minus the date of randomisation. A visit is early or late where its day lies outside the planned day with its "
-              "window, bounds included. Quartiles by Hyndman & Fan 1996 (Am Stat 50:361), type 7; whiskers reach the furthest value within 1.5 times "
+    .method = "Dates are days of the proleptic Gregorian calendar (ISO 8601), read in the order the plan or a decision "
+              "declares for the file and site; a "
+              "visit's day is its date minus the date of randomisation. A visit is early or late where its day lies "
+              "outside the planned day with its "
+              "window, bounds included. Quartiles by Hyndman & Fan 1996 (Am Stat 50:361), type 7; whiskers reach the "
+              "furthest value within 1.5 times "
               "the interquartile range of the box (Tukey 1977).",
     .arguments = arguments,
     .compute = compute,

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* The checks of dates. Cells that do not read in their order are looked at together by column and site first: where all of them
- * are written in one other order, that is one discrepancy and one decision. Then each cell, then each participant's dates. */
+/* The checks of dates. Cells that do not read in their order are looked at together by column and site first: where all
+ * of them are written in one other order, that is one discrepancy and one decision. Then each cell, then each
+ * participant's dates. */
 #include "base/map.h"
 #include "base/text.h"
 #include "server/trial/checks-parts.h"
@@ -18,8 +19,8 @@ struct cell {
     const char *shared; /* the same without a visit */
     const char *text, *site, *id;
     const char *label;
-    size_t record;      /* 0-based */
-    bool by_window;     /* a date by which its record finds its visit: decisions need the row */
+    size_t record;             /* 0-based */
+    bool by_window;            /* a date by which its record finds its visit: decisions need the row */
     int variable, participant; /* NOWHERE: a window's, or an identifier that the first file has not */
     enum date_order order;
     enum date_reading reading;
@@ -56,8 +57,9 @@ static const char *day_words(struct dating *dating, double day) {
 /* Column and site as one text, in `room` unless it is too long for it. */
 static const char *key_of(struct dating *dating, const char *column, const char *site, char *room, size_t size) {
     int length = snprintf(room, size, "%s\x1f%s", column, site ? site : "");
-    return length >= 0 && (size_t)length < size ? room :
-                                                  arena_format(dating->finding->arena, "%s\x1f%s", column, site ? site : "");
+    return length >= 0 && (size_t)length < size
+               ? room
+               : arena_format(dating->finding->arena, "%s\x1f%s", column, site ? site : "");
 }
 
 static bool is_missing_code(const struct frame *frame, const char *name, const char *text) {
@@ -82,7 +84,8 @@ static void note_group(struct dating *dating, const struct cell *cell, const cha
         dating->groups = memory_grow(dating->groups, dating->group_room, sizeof *dating->groups);
     }
     map_put(&dating->keys, arena_text(dating->finding->arena, key), (int32_t)dating->group_count);
-    dating->groups[dating->group_count++] = (struct group){.shared = cell->shared, .site = cell->site, .order = cell->order};
+    dating->groups[dating->group_count++] =
+        (struct group){.shared = cell->shared, .site = cell->site, .order = cell->order};
 }
 
 /* One cell with a text: read, looked at by itself where it reads, else noted for its group. */
@@ -115,9 +118,10 @@ static enum date_order order_of(struct dating *dating, const struct cell *cell, 
     char room[256];
     const char *key = key_of(dating, cell->name, cell->site, room, sizeof room);
     int32_t known = map_get(&dating->order, key);
-    return (enum date_order)(known != NOWHERE ? known :
-            map_put(&dating->order, arena_text(dating->finding->arena, key),
-                (int32_t)frame_date_order(dating->frame, cell->name, file, cell->site)));
+    return (enum date_order)(known != NOWHERE
+                                 ? known
+                                 : map_put(&dating->order, arena_text(dating->finding->arena, key),
+                                       (int32_t)frame_date_order(dating->frame, cell->name, file, cell->site)));
 }
 
 static bool is_window(const struct frame *frame, const struct place *place) {
@@ -129,14 +133,22 @@ static void each_of_variable(struct dating *dating, size_t v) {
     const struct frame *frame = dating->frame;
     const struct variable *variable = &frame->plan->variables[v];
     const struct column *column = frame->columns[v];
-    const char *shared = plan_column_name(dating->finding->arena, frame->plan, variable->place.file, variable->place.column);
+    const char *shared =
+        plan_column_name(dating->finding->arena, frame->plan, variable->place.file, variable->place.column);
     for (size_t p = 0; p < frame->participant_count; p++) {
         const char *text = frame_text(frame, column, p);
         if (!text || is_blank(text)) {
             continue;
         }
-        struct cell cell = {.column = column, .name = variable->column, .shared = shared, .text = text, .site = frame_site(frame, p),
-            .id = frame->participants[p].id, .label = variable->label, .record = frame_place(frame, column, p), .variable = (int)v,
+        struct cell cell = {.column = column,
+            .name = variable->column,
+            .shared = shared,
+            .text = text,
+            .site = frame_site(frame, p),
+            .id = frame->participants[p].id,
+            .label = variable->label,
+            .record = frame_place(frame, column, p),
+            .variable = (int)v,
             .participant = (int)p};
         cell.order = order_of(dating, &cell, variable->place.file);
         take_cell(dating, &cell);
@@ -152,9 +164,17 @@ static void each_of_window(struct dating *dating, size_t f) {
             continue;
         }
         int who = frame->owner[f][r];
-        struct cell cell = {.column = frame->windows[f], .name = file->window_name, .shared = file->window_name, .text = text, .id = id,
-            .site = who == NOWHERE ? NULL : frame_site(frame, (size_t)who), .label = "The date", .record = r, .by_window = true,
-            .variable = NOWHERE, .participant = who};
+        struct cell cell = {.column = frame->windows[f],
+            .name = file->window_name,
+            .shared = file->window_name,
+            .text = text,
+            .id = id,
+            .site = who == NOWHERE ? NULL : frame_site(frame, (size_t)who),
+            .label = "The date",
+            .record = r,
+            .by_window = true,
+            .variable = NOWHERE,
+            .participant = who};
         cell.order = order_of(dating, &cell, f);
         take_cell(dating, &cell);
     }
@@ -178,7 +198,8 @@ static void each_cell(struct dating *dating) {
 
 static struct discrepancy *of_cell(struct dating *dating, const char *check, const struct cell *cell) {
     struct finding *finding = dating->finding;
-    const char *what = cell->by_window ? arena_format(finding->arena, "%s/record %zu", cell->id, cell->record + 1) : cell->id;
+    const char *what =
+        cell->by_window ? arena_format(finding->arena, "%s/record %zu", cell->id, cell->record + 1) : cell->id;
     struct discrepancy *new = finding_add(finding, check, cell->name, what);
     finding_concerns(finding, new, cell->id);
     new->value = cell->text;
@@ -196,14 +217,16 @@ static struct discrepancy *of_cell(struct dating *dating, const char *check, con
 static const char *whose(struct dating *dating, const struct cell *cell) {
     struct arena *arena = dating->finding->arena;
     return cell->by_window ? arena_format(arena, "%s of %s (%s, record %zu)", cell->label, cell->id,
-                                 dating->frame->plan->files[cell->column->file].id, cell->record + 1) :
-                             arena_format(arena, "%s of %s", cell->label, cell->id);
+                                 dating->frame->plan->files[cell->column->file].id, cell->record + 1)
+                           : arena_format(arena, "%s of %s", cell->label, cell->id);
 }
 
 static void propose_day(struct dating *dating, struct discrepancy *what, const struct cell *cell, double day) {
     const char *to = day_words(dating, day);
-    const char *const fields[][2] = {{"column", cell->name}, {"participant", cell->id}, {"from", cell->text}, {"to", to}};
-    what->proposal = finding_proposal(dating->finding, "correct", fields, 4, cell->by_window ? (uint32_t)cell->record + 1 : 0);
+    const char *const fields[][2] = {
+        {"column", cell->name}, {"participant", cell->id}, {"from", cell->text}, {"to", to}};
+    what->proposal =
+        finding_proposal(dating->finding, "correct", fields, 4, cell->by_window ? (uint32_t)cell->record + 1 : 0);
     what->proposal_words = arena_format(dating->finding->arena, "Correct it to %s", to);
 }
 
@@ -215,8 +238,8 @@ static void future_or_early(struct dating *dating, const struct cell *cell) {
             day_words(dating, cell->day), day_words(dating, dating->dates->received));
     } else if (cell->day < dating->dates->earliest) {
         struct discrepancy *new = of_cell(dating, "date-too-early", cell);
-        new->message = arena_format(arena, "%s is %s, before the earliest day the plan allows (%s).", whose(dating, cell),
-            day_words(dating, cell->day), day_words(dating, dating->dates->earliest));
+        new->message = arena_format(arena, "%s is %s, before the earliest day the plan allows (%s).",
+            whose(dating, cell), day_words(dating, cell->day), day_words(dating, dating->dates->earliest));
     } else {
         return;
     }
@@ -263,26 +286,31 @@ static void bad_cell(struct dating *dating, const struct cell *cell) {
         date_read(cell->text, DATE_SERIAL_1904, &number);
         date_read(cell->text, DATE_SERIAL_1900, &day);
         struct discrepancy *new = of_cell(dating, "serial-number-date", cell);
-        new->message = arena_format(arena, "%s reads %s, no date but the number that a spreadsheet counts days by: %s in the system from 1900, "
-            "%s in that from 1904.", who, cell->text, day_words(dating, day), day_words(dating, number));
+        new->message = arena_format(arena,
+            "%s reads %s, no date but the number that a spreadsheet counts days by: %s in the system from 1900, "
+            "%s in that from 1904.",
+            who, cell->text, day_words(dating, day), day_words(dating, number));
         propose_day(dating, new, cell, day);
         return;
     }
     if (cell->reading == DATE_SHORT_YEAR) {
         date_read(cell->text, short_of(cell->order), &day);
         struct discrepancy *new = of_cell(dating, "two-digit-year", cell);
-        new->message = arena_format(arena, "%s reads \"%s\", with a year of two digits; as %s it would be %s.", who, cell->text, name,
-            day_words(dating, day));
+        new->message = arena_format(arena, "%s reads \"%s\", with a year of two digits; as %s it would be %s.", who,
+            cell->text, name, day_words(dating, day));
         propose_day(dating, new, cell, day);
         return;
     }
     day = other_day(cell, &by);
-    struct discrepancy *new = of_cell(dating, cell->reading == DATE_IMPOSSIBLE ? "impossible-date" : "unreadable-date", cell);
-    new->message = !isnan(day) ? arena_format(arena, "%s reads \"%s\", which %s as %s; as %s it is %s.", who, cell->text,
-                                     cell->reading == DATE_IMPOSSIBLE ? "is no day" : "cannot be read", name, date_order_name(by),
-                                     day_words(dating, day)) :
-        cell->reading == DATE_IMPOSSIBLE ? arena_format(arena, "%s reads \"%s\", and there is no such day.", who, cell->text) :
-                                           arena_format(arena, "%s reads \"%s\", which is no date in the order %s.", who, cell->text, name);
+    struct discrepancy *new =
+        of_cell(dating, cell->reading == DATE_IMPOSSIBLE ? "impossible-date" : "unreadable-date", cell);
+    new->message =
+        !isnan(day) ? arena_format(arena, "%s reads \"%s\", which %s as %s; as %s it is %s.", who, cell->text,
+                          cell->reading == DATE_IMPOSSIBLE ? "is no day" : "cannot be read", name, date_order_name(by),
+                          day_words(dating, day))
+        : cell->reading == DATE_IMPOSSIBLE
+            ? arena_format(arena, "%s reads \"%s\", and there is no such day.", who, cell->text)
+            : arena_format(arena, "%s reads \"%s\", which is no date in the order %s.", who, cell->text, name);
     if (!isnan(day)) {
         propose_day(dating, new, cell, day);
     }
@@ -303,8 +331,8 @@ static bool reads_in(const struct cell *cell, enum date_order order) {
     return date_read(cell->text, order, NULL) == DATE_READ;
 }
 
-/* The order in which all texts of a group but those no order reads are dates; the present one where there is none; `other`: another
- * one that does as well and gives other days. */
+/* The order in which all texts of a group but those no order reads are dates; the present one where there is none;
+ * `other`: another one that does as well and gives other days. */
 static enum date_order common_order(const struct group *group, enum date_order *other) {
     bool fits[DATE_ORDER_COUNT];
     size_t texts = 0, bad = 0;
@@ -346,10 +374,11 @@ static int by_index(const void *a, const void *b) {
 }
 
 /* A discrepancy about every cell of the group that `holds` picks, its participants once each in identifier order. */
-static struct discrepancy *of_group(struct dating *dating, const char *check, const struct group *group, const bool *holds) {
+static struct discrepancy *of_group(
+    struct dating *dating, const char *check, const struct group *group, const bool *holds) {
     struct finding *finding = dating->finding;
-    struct discrepancy *new = finding_add(finding, check, group->shared,
-        group->site ? arena_format(finding->arena, "site %s", group->site) : "all");
+    struct discrepancy *new = finding_add(
+        finding, check, group->shared, group->site ? arena_format(finding->arena, "site %s", group->site) : "all");
     const char **list = ARENA_NEW(finding->arena, group->count, const char *);
     size_t count = 0, kept = 0;
     for (size_t i = 0; i < group->count; i++) {
@@ -370,23 +399,26 @@ static struct discrepancy *of_group(struct dating *dating, const char *check, co
     return new;
 }
 
-static void propose_order(struct dating *dating, struct discrepancy *what, const struct group *group, enum date_order order) {
+static void propose_order(
+    struct dating *dating, struct discrepancy *what, const struct group *group, enum date_order order) {
     struct arena *arena = dating->finding->arena;
     if (!group->site && dating->frame->plan->site_column) {
         return; /* of nobody in the first file: an order without a site would be that of all */
     }
-    const char *const fields[][2] = {{"column", group->shared}, {"order", date_order_name(order)}, {"site", group->site}};
+    const char *const fields[][2] = {
+        {"column", group->shared}, {"order", date_order_name(order)}, {"site", group->site}};
     what->proposal = finding_proposal(dating->finding, "date-order", fields, group->site ? 3 : 2, 0);
-    what->proposal_words = group->site ?
-        arena_format(arena, "Read the dates of site %s in %s as %s", group->site, group->shared, date_order_name(order)) :
-        arena_format(arena, "Read the dates in %s as %s", group->shared, date_order_name(order));
+    what->proposal_words =
+        group->site ? arena_format(arena, "Read the dates of site %s in %s as %s", group->site, group->shared,
+                          date_order_name(order))
+                    : arena_format(arena, "Read the dates in %s as %s", group->shared, date_order_name(order));
 }
 
 static const char *where_words(struct dating *dating, const struct group *group) {
     struct arena *arena = dating->finding->arena;
-    return !group->site ? group->shared :
-        *group->site    ? arena_format(arena, "Site %s, %s", group->site, group->shared) :
-                          arena_format(arena, "Without a site, %s", group->shared);
+    return !group->site   ? group->shared
+           : *group->site ? arena_format(arena, "Site %s, %s", group->site, group->shared)
+                          : arena_format(arena, "Without a site, %s", group->shared);
 }
 
 /* One discrepancy for all of them; false where there is no one order. */
@@ -406,17 +438,26 @@ static bool one_order(struct dating *dating, const struct group *group) {
     }
     bool short_year = order == short_of(group->order);
     struct discrepancy *new = of_group(dating,
-        is_serial(order) ? "serial-number-date" : short_year ? "two-digit-year" : "date-order", group, holds);
-    const char *how_many = bad == texts ? arena_format(arena, "%zu", texts) : arena_format(arena, "%zu of %zu", bad, texts);
-    const char *doubt = other == group->order || is_serial(order) ? "" :
-        arena_format(arena, ", and so do they as %s: ask the site", date_order_name(other));
-    new->message = is_serial(order) ?
-        arena_format(arena, "%s: %zu dates are numbers that a spreadsheet counts days by, from 1900 (or from 1904: then 1,462 days later).",
-            where_words(dating, group), texts) :
-        short_year ? arena_format(arena, "%s: %s dates have a year of two digits; 69 to 99 would be the 1900s, 00 to 68 the 2000s.",
-                         where_words(dating, group), how_many) :
-                     arena_format(arena, "%s: %s dates cannot be read as %s; all of them read as %s (%s)%s.", where_words(dating, group),
-                         how_many, date_order_name(group->order), date_order_name(order), date_order_words(order), doubt);
+        is_serial(order) ? "serial-number-date"
+        : short_year     ? "two-digit-year"
+                         : "date-order",
+        group, holds);
+    const char *how_many =
+        bad == texts ? arena_format(arena, "%zu", texts) : arena_format(arena, "%zu of %zu", bad, texts);
+    const char *doubt = other == group->order || is_serial(order)
+                            ? ""
+                            : arena_format(arena, ", and so do they as %s: ask the site", date_order_name(other));
+    new->message = is_serial(order) ? arena_format(arena,
+                                          "%s: %zu dates are numbers that a spreadsheet counts days by, from 1900 (or "
+                                          "from 1904: then 1,462 days later).",
+                                          where_words(dating, group), texts)
+                   : short_year
+                       ? arena_format(arena,
+                             "%s: %s dates have a year of two digits; 69 to 99 would be the 1900s, 00 to 68 the 2000s.",
+                             where_words(dating, group), how_many)
+                       : arena_format(arena, "%s: %s dates cannot be read as %s; all of them read as %s (%s)%s.",
+                             where_words(dating, group), how_many, date_order_name(group->order),
+                             date_order_name(order), date_order_words(order), doubt);
     if (!*doubt) {
         propose_order(dating, new, group, order);
     }
@@ -456,7 +497,8 @@ struct course { /* one participant's dates */
 static size_t conflicts(const struct dates *dates, const struct course *course, size_t m, double day, size_t *with) {
     size_t count = 0;
     for (size_t i = 0; i < dates->moment_count; i++) {
-        bool wrong = (must_precede(dates, i, m) && course->day[i] > day) || (must_precede(dates, m, i) && day > course->day[i]);
+        bool wrong =
+            (must_precede(dates, i, m) && course->day[i] > day) || (must_precede(dates, m, i) && day > course->day[i]);
         if (wrong) {
             count++;
             *with = i;
@@ -468,7 +510,8 @@ static size_t conflicts(const struct dates *dates, const struct course *course, 
 static bool outside(const struct dates *dates, const struct course *course, size_t m, double day) {
     const struct moment *moment = &dates->moments[m];
     double off = dates->randomised == NOWHERE ? (double)NAN : day - course->day[dates->randomised] - moment->target;
-    return moment->kind == MOMENT_VISIT && moment->window.given && (off < moment->window.low || off > moment->window.high);
+    return moment->kind == MOMENT_VISIT && moment->window.given &&
+           (off < moment->window.low || off > moment->window.high);
 }
 
 /* Whether a date, were it `day`, would be in order and leave no visit that hangs on it outside its window. */
@@ -489,10 +532,17 @@ static struct cell cell_of_moment(struct dating *dating, size_t p, size_t m) {
     const struct frame *frame = dating->frame;
     int v = dating->dates->moments[m].variable;
     const struct variable *variable = &frame->plan->variables[v];
-    struct cell cell = {.column = frame->columns[v], .name = variable->column, .text = frame_text(frame, frame->columns[v], p),
-        .site = frame_site(frame, p), .id = frame->participants[p].id, .label = variable->label,
-        .record = frame_place(frame, frame->columns[v], p), .variable = v, .participant = (int)p};
-    cell.shared = is_window(frame, &variable->place) ? frame->plan->files[variable->place.file].window_name : variable->column;
+    struct cell cell = {.column = frame->columns[v],
+        .name = variable->column,
+        .text = frame_text(frame, frame->columns[v], p),
+        .site = frame_site(frame, p),
+        .id = frame->participants[p].id,
+        .label = variable->label,
+        .record = frame_place(frame, frame->columns[v], p),
+        .variable = v,
+        .participant = (int)p};
+    cell.shared =
+        is_window(frame, &variable->place) ? frame->plan->files[variable->place.file].window_name : variable->column;
     cell.day = frame->columns[v]->number[p];
     return cell;
 }
@@ -519,24 +569,32 @@ static void take_course(struct dating *dating, struct course *course, size_t p) 
     }
 }
 
-/* A date out of order, or outside its window, whose exchanged reading would be in order and inside: read wrongly, it seems. */
+/* A date out of order, or outside its window, whose exchanged reading would be in order and inside: read wrongly, it
+ * seems. */
 static void exchange(struct dating *dating, struct course *course) {
     const struct dates *dates = dating->dates;
     for (size_t m = 0; m < dates->moment_count; m++) {
         size_t with = m, now = conflicts(dates, course, m, course->day[m], &with);
         if (isnan(course->other[m]) || isnan(course->day[m]) || sits(dates, course, m, course->day[m]) ||
-            !sits(dates, course, m, course->other[m]) || course->other[m] > dates->received || course->other[m] < dates->earliest) {
+            !sits(dates, course, m, course->other[m]) || course->other[m] > dates->received ||
+            course->other[m] < dates->earliest) {
             continue;
         }
         struct cell cell = cell_of_moment(dating, course->participant, m);
         struct discrepancy *new = of_cell(dating, "ambiguous-date", &cell);
         const char *read = day_words(dating, course->day[m]), *other = day_words(dating, course->other[m]);
-        new->message = now ?
-            arena_format(dating->finding->arena, "%s reads \"%s\", taken as %s, which is out of order with %s (%s); with day and month exchanged "
-                "it is %s, which is in order.", whose(dating, &cell), cell.text, read, dates->moments[with].label,
-                day_words(dating, course->day[with]), other) :
-            arena_format(dating->finding->arena, "%s reads \"%s\", taken as %s, which is outside %s window; with day and month exchanged it is %s, "
-                "inside.", whose(dating, &cell), cell.text, read, (int)m == dates->randomised ? "a visit's" : "the visit's", other);
+        new->message =
+            now ? arena_format(dating->finding->arena,
+                      "%s reads \"%s\", taken as %s, which is out of order with %s (%s); with day and month exchanged "
+                      "it is %s, which is in order.",
+                      whose(dating, &cell), cell.text, read, dates->moments[with].label,
+                      day_words(dating, course->day[with]), other)
+                : arena_format(dating->finding->arena,
+                      "%s reads \"%s\", taken as %s, which is outside %s window; with day and month exchanged it is "
+                      "%s, "
+                      "inside.",
+                      whose(dating, &cell), cell.text, read, (int)m == dates->randomised ? "a visit's" : "the visit's",
+                      other);
         propose_for_moment(dating, new, cell, course->other[m]);
         course->day[m] = course->other[m];
     }
@@ -544,11 +602,13 @@ static void exchange(struct dating *dating, struct course *course) {
 
 static void out_of_order(struct dating *dating, struct course *course) {
     const struct dates *dates = dating->dates;
-    for (;;) { /* whichever is on the wrong side of most others is asked about, then left out: one slip is one question */
+    for (;;) { /* whichever is on the wrong side of most others is asked about, then left out: one slip is one question
+                */
         size_t worst = 0, most = 0, with = 0;
         for (size_t m = 0; m < dates->moment_count; m++) {
             size_t other = m, count = conflicts(dates, course, m, course->day[m], &other);
-            bool visit = dates->moments[m].kind == MOMENT_VISIT, worst_visit = dates->moments[worst].kind == MOMENT_VISIT;
+            bool visit = dates->moments[m].kind == MOMENT_VISIT,
+                 worst_visit = dates->moments[worst].kind == MOMENT_VISIT;
             if (count > most || (count && count == most && (visit || !worst_visit))) {
                 worst = m;
                 most = count;
@@ -560,8 +620,9 @@ static void out_of_order(struct dating *dating, struct course *course) {
         }
         struct cell cell = cell_of_moment(dating, course->participant, worst);
         struct discrepancy *new = of_cell(dating, "dates-out-of-order", &cell);
-        new->message = arena_format(dating->finding->arena, "%s is %s, %s \"%s\" (%s), which must come %s.", whose(dating, &cell),
-            day_words(dating, course->day[worst]), must_precede(dates, with, worst) ? "before" : "after", dates->moments[with].label,
+        new->message = arena_format(dating->finding->arena, "%s is %s, %s \"%s\" (%s), which must come %s.",
+            whose(dating, &cell), day_words(dating, course->day[worst]),
+            must_precede(dates, with, worst) ? "before" : "after", dates->moments[with].label,
             day_words(dating, course->day[with]), must_precede(dates, with, worst) ? "first" : "later");
         course->day[worst] = (double)NAN;
     }
@@ -577,8 +638,10 @@ static void out_of_window(struct dating *dating, const struct course *course) {
         double days = course->day[m] - course->day[dates->randomised], off = days - moment->target;
         struct cell cell = cell_of_moment(dating, course->participant, m);
         struct discrepancy *new = of_cell(dating, "outside-window", &cell);
-        new->message = arena_format(dating->finding->arena, "%s is %s, day %.0f after randomisation, %.0f days %s the planned day %.0f; the window is "
-            "%.0f to %.0f.", whose(dating, &cell), day_words(dating, course->day[m]), days, fabs(off), off < 0 ? "before" : "after",
+        new->message = arena_format(dating->finding->arena,
+            "%s is %s, day %.0f after randomisation, %.0f days %s the planned day %.0f; the window is "
+            "%.0f to %.0f.",
+            whose(dating, &cell), day_words(dating, course->day[m]), days, fabs(off), off < 0 ? "before" : "after",
             moment->target, moment->target + moment->window.low, moment->target + moment->window.high);
     }
 }
@@ -605,10 +668,18 @@ static void check_windows(struct dating *dating) {
         }
         const double *randomised = frame->columns[dates->moments[dates->randomised].variable]->number;
         for (size_t r = 0; r < frame->cells[f].records; r++) {
-            const char *id = column_text(frame, frame->identifiers[f], r), *text = column_text(frame, frame->windows[f], r);
+            const char *id = column_text(frame, frame->identifiers[f], r),
+                       *text = column_text(frame, frame->windows[f], r);
             int who = frame->owner[f][r];
-            struct cell cell = {.column = frame->windows[f], .name = frame->plan->files[f].window_name, .text = text, .id = id,
-                .label = "The date", .record = r, .by_window = true, .variable = NOWHERE, .participant = who};
+            struct cell cell = {.column = frame->windows[f],
+                .name = frame->plan->files[f].window_name,
+                .text = text,
+                .id = id,
+                .label = "The date",
+                .record = r,
+                .by_window = true,
+                .variable = NOWHERE,
+                .participant = who};
             cell.site = who == NOWHERE ? NULL : frame_site(frame, (size_t)who);
             double days = (double)NAN;
             if (who != NOWHERE && text && date_read(text, order_of(dating, &cell, f), &cell.day) == DATE_READ) {
@@ -616,8 +687,10 @@ static void check_windows(struct dating *dating) {
             }
             if (!isnan(days) && dates_visit_by_window(frame->plan, f, days, NULL) == NOWHERE) {
                 struct discrepancy *new = of_cell(dating, "outside-window", &cell);
-                new->message = arena_format(dating->finding->arena, "%s is %s, day %.0f after randomisation, in no visit's window; what the record "
-                    "says is in no analysis, and counted.", whose(dating, &cell), day_words(dating, cell.day), days);
+                new->message = arena_format(dating->finding->arena,
+                    "%s is %s, day %.0f after randomisation, in no visit's window; what the record "
+                    "says is in no analysis, and counted.",
+                    whose(dating, &cell), day_words(dating, cell.day), days);
             }
         }
     }
@@ -628,7 +701,8 @@ static void check_windows(struct dating *dating) {
 static bool decided(const struct frame *frame, const struct group *group) {
     for (size_t i = 0; i < frame->version; i++) {
         const struct decision *decision = &frame->decisions[i];
-        bool about = frame->stands[i] && decision->kind == DECISION_DATE_ORDER && plan_covers(decision->column, group->shared);
+        bool about =
+            frame->stands[i] && decision->kind == DECISION_DATE_ORDER && plan_covers(decision->column, group->shared);
         if (about && (!decision->site || (group->site && strcmp(decision->site, group->site) == 0))) {
             return true;
         }
@@ -640,8 +714,8 @@ static bool decided(const struct frame *frame, const struct group *group) {
 static bool reads_two_ways(struct dating *dating, const struct cell *cell) {
     const struct dates *dates = dating->dates;
     double other;
-    if (cell->reading != DATE_READ || !date_read_exchanged(cell->text, cell->order, &other) || other > dates->received ||
-        other < dates->earliest) {
+    if (cell->reading != DATE_READ || !date_read_exchanged(cell->text, cell->order, &other) ||
+        other > dates->received || other < dates->earliest) {
         return false;
     }
     int m = cell->variable == NOWHERE ? NOWHERE : dating->frame->plan->variables[cell->variable].moment;
@@ -672,9 +746,11 @@ static void mixed_orders(struct dating *dating, const struct group *group) {
         return;
     }
     struct discrepancy *new = of_group(dating, "ambiguous-date", group, holds);
-    new->message = arena_format(dating->finding->arena, "%s: %zu date%s read%s only as %s where the order is %s, so %zu other%s, with day and month up to "
-        "12, can be read two ways; %s read as %s.", where_words(dating, group), bad, bad == 1 ? "" : "s", bad == 1 ? "s" : "",
-        date_order_name(exchanged), date_order_name(group->order), doubtful, doubtful == 1 ? "" : "s", doubtful == 1 ? "it is" : "they are",
+    new->message = arena_format(dating->finding->arena,
+        "%s: %zu date%s read%s only as %s where the order is %s, so %zu other%s, with day and month up to "
+        "12, can be read two ways; %s read as %s.",
+        where_words(dating, group), bad, bad == 1 ? "" : "s", bad == 1 ? "s" : "", date_order_name(exchanged),
+        date_order_name(group->order), doubtful, doubtful == 1 ? "" : "s", doubtful == 1 ? "it is" : "they are",
         date_order_name(group->order));
     propose_order(dating, new, group, group->order);
 }

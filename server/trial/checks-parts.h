@@ -10,11 +10,12 @@ struct finding { /* a run of the checks over one frame */
     struct discrepancy *list;
     size_t count, room;
     const bool *hidden; /* [variables] whose text may not be shown now */
-    bool **site_asked;  /* [variables][participants] a discrepancy about their site's unit is not settled by a note; NULL: none */
+    bool **site_asked;  /* [variables][participants] a discrepancy about their site's unit is not settled by a note;
+                           NULL: none */
 };
 
-/* A new discrepancy of the check of that name, with the id check/column/what (column NULL: check/what). It may move when the
- * next one is added. */
+/* A new discrepancy of the check of that name, with the id check/column/what (column NULL: check/what). It may move
+ * when the next one is added. */
 struct discrepancy *finding_add(struct finding *finding, const char *check, const char *column, const char *what);
 void finding_concerns(struct finding *finding, struct discrepancy *what, const char *participant); /* that one alone */
 /* A decision's JSON of `count` text fields after its kind, and its row where that is not 0. */

@@ -91,7 +91,8 @@ static const struct order {
     [DATE_DMYY] = {"D/M/YY", "day, month, year of two digits", {PART_DAY, PART_MONTH, PART_YEAR}, true, false, false},
     [DATE_MDYY] = {"M/D/YY", "month, day, year of two digits", {PART_MONTH, PART_DAY, PART_YEAR}, true, false, false},
     [DATE_YYMD] = {"YY/M/D", "year of two digits, month, day", {PART_YEAR, PART_MONTH, PART_DAY}, true, false, false},
-    [DATE_DMONYY] = {"D-MON-YY", "day, month's name, year of two digits", {PART_DAY, PART_MONTH_NAME, PART_YEAR}, true, false, false},
+    [DATE_DMONYY] = {"D-MON-YY", "day, month's name, year of two digits", {PART_DAY, PART_MONTH_NAME, PART_YEAR}, true,
+        false, false},
     [DATE_SERIAL_1900] = {"serial-1900", "a spreadsheet's serial numbers from 1900", {0}, false, true, false},
     [DATE_SERIAL_1904] = {"serial-1904", "a spreadsheet's serial numbers from 1904", {0}, false, true, true},
 };
@@ -143,7 +144,8 @@ struct span {
 };
 
 static bool two_digits(const char **at, const char *end, int most) {
-    bool there = end - *at >= 2 && is_digit((*at)[0]) && is_digit((*at)[1]) && ((*at)[0] - '0') * 10 + ((*at)[1] - '0') <= most;
+    bool there =
+        end - *at >= 2 && is_digit((*at)[0]) && is_digit((*at)[1]) && ((*at)[0] - '0') * 10 + ((*at)[1] - '0') <= most;
     *at += there ? 2 : 0;
     return there;
 }
@@ -194,8 +196,8 @@ static struct span span_of(const char *text) {
 }
 
 static int month_named(const char *at, size_t length) {
-    static const char *const names[] = {"january", "february", "march", "april", "may", "june", "july", "august", "september",
-        "october", "november", "december"};
+    static const char *const names[] = {"january", "february", "march", "april", "may", "june", "july", "august",
+        "september", "october", "november", "december"};
     for (int m = 0; m < 12; m++) {
         bool same = length == 3 || length == strlen(names[m]);
         for (size_t i = 0; i < length && same; i++) {
@@ -319,12 +321,13 @@ enum date_reading date_read(const char *text, enum date_order order, double *day
 }
 
 bool date_read_exchanged(const char *text, enum date_order order, double *day) {
-    static const int other_of[DATE_ORDER_COUNT] = {[DATE_DMY] = DATE_MDY, [DATE_MDY] = DATE_DMY, [DATE_DMYY] = DATE_MDYY,
-        [DATE_MDYY] = DATE_DMYY};
+    static const int other_of[DATE_ORDER_COUNT] = {
+        [DATE_DMY] = DATE_MDY, [DATE_MDY] = DATE_DMY, [DATE_DMYY] = DATE_MDYY, [DATE_MDYY] = DATE_DMYY};
     double as_read, other;
     bool two = order == DATE_DMY || order == DATE_MDY || order == DATE_DMYY || order == DATE_MDYY;
     bool both = two && !date_is_iso(text) && date_read(text, order, &as_read) == DATE_READ &&
-                date_read(text, (enum date_order)other_of[order], &other) == DATE_READ && (as_read < other || as_read > other);
+                date_read(text, (enum date_order)other_of[order], &other) == DATE_READ &&
+                (as_read < other || as_read > other);
     *day = both ? other : (double)NAN;
     return both;
 }
@@ -377,8 +380,9 @@ int dates_visit_by_window(const struct plan *plan, size_t file, double days, boo
             continue;
         }
         equal = fabs(off) >= nearest;
-        bool later = best == NOWHERE || !equal ||
-                     moment->target > plan->dates->moments[dates_moment_of_slot(plan, from->first_slot + (size_t)best)].target;
+        bool later =
+            best == NOWHERE || !equal ||
+            moment->target > plan->dates->moments[dates_moment_of_slot(plan, from->first_slot + (size_t)best)].target;
         best = later ? (int)c : best;
         nearest = fabs(off);
     }

@@ -14,7 +14,8 @@ static const char *order_names(struct reader *reader) {
 
 static bool order_of(struct reader *reader, const cJSON *item, const char *path, enum date_order *order) {
     return (cJSON_IsString(item) && date_order_read(item->valuestring, order)) ||
-           wrong(reader, path, arena_format(&reader->plan->arena, "must be an order of dates, one of %s", order_names(reader)));
+           wrong(reader, path,
+               arena_format(&reader->plan->arena, "must be an order of dates, one of %s", order_names(reader)));
 }
 
 static bool read_file_orders(struct reader *reader, const cJSON *dates) {
@@ -23,7 +24,8 @@ static bool read_file_orders(struct reader *reader, const cJSON *dates) {
     plan->dates->file_order = ARENA_NEW(&plan->arena, plan->file_count, enum date_order);
     plan->dates->file_says = ARENA_NEW(&plan->arena, plan->file_count, bool);
     if (files && !cJSON_IsObject(files)) {
-        return wrong(reader, "dates.files", "must be an object of files and their orders, such as {\"visits\": \"Y/M/D\"}");
+        return wrong(
+            reader, "dates.files", "must be an object of files and their orders, such as {\"visits\": \"Y/M/D\"}");
     }
     for (const cJSON *item = files ? files->child : NULL; item; item = item->next) {
         const char *path = join(reader, "dates.files", item->string);
@@ -83,7 +85,8 @@ static bool read_earliest(struct reader *reader, const cJSON *dates) {
 }
 
 /* A date said once of each participant: randomised, stopped, withdrew, died. */
-static bool read_single(struct reader *reader, const cJSON *dates, enum moment_kind kind, const char *label, int *index) {
+static bool read_single(
+    struct reader *reader, const cJSON *dates, enum moment_kind kind, const char *label, int *index) {
     struct dates *to = reader->plan->dates;
     const char *key = moment_name(kind), *path = join(reader, "dates", key);
     const cJSON *item = member(dates, key);
@@ -93,7 +96,8 @@ static bool read_single(struct reader *reader, const cJSON *dates, enum moment_k
     }
     struct moment *moment = &to->moments[to->moment_count];
     *moment = (struct moment){.kind = kind, .label = label, .target = (double)NAN};
-    if (!keys_known(reader, item, path, "column file visit") || !read_place(reader, item, path, &moment->column, &moment->place)) {
+    if (!keys_known(reader, item, path, "column file visit") ||
+        !read_place(reader, item, path, &moment->column, &moment->place)) {
         return false;
     }
     *index = (int)to->moment_count++;
@@ -116,7 +120,8 @@ static bool read_moment(struct reader *reader, const cJSON *item, const char *pa
         return wrong(reader, join(reader, path, "window"), "needs a target day, from which it is counted");
     }
     if (moment->window.given && (moment->window.low > 0 || moment->window.high < 0)) {
-        return wrong(reader, join(reader, path, "window"), "is counted from the target day and must hold it, such as [-14, 14]");
+        return wrong(
+            reader, join(reader, path, "window"), "is counted from the target day and must hold it, such as [-14, 14]");
     }
     for (size_t i = 0; i < to->moment_count; i++) {
         if (strcmp(to->moments[i].label, moment->label) == 0) {
@@ -131,7 +136,8 @@ static bool read_moments(struct reader *reader, const cJSON *dates) {
     struct dates *to = reader->plan->dates;
     const cJSON *visits = member(dates, "visits");
     if (visits && !cJSON_IsArray(visits)) {
-        return wrong(reader, "dates.visits", "must be a list of visits in order of time, each with its label and column");
+        return wrong(
+            reader, "dates.visits", "must be a list of visits in order of time, each with its label and column");
     }
     to->moments = ARENA_NEW(&reader->plan->arena, 4 + (visits ? cJSON_GetArraySize(visits) : 0), struct moment);
     if (!read_single(reader, dates, MOMENT_RANDOMISED, "Randomised", &to->randomised)) {
@@ -148,7 +154,8 @@ static bool read_moments(struct reader *reader, const cJSON *dates) {
         !read_single(reader, dates, MOMENT_DIED, "Died", &to->died)) {
         return false;
     }
-    return to->moment_count > 0 || wrong(reader, "dates", "names no date; give \"randomised\" or \"visits\" a column, or leave the key out");
+    return to->moment_count > 0 ||
+           wrong(reader, "dates", "names no date; give \"randomised\" or \"visits\" a column, or leave the key out");
 }
 
 /* ---- visits found by their date ---- */
@@ -159,8 +166,11 @@ static bool window_fits(struct reader *reader, const char *path, size_t f) {
     for (size_t c = 0; c < file->codes.count; c++) {
         int m = dates_moment_of_slot(plan, file->first_slot + c);
         if (m == NOWHERE || !plan->dates->moments[m].window.given) {
-            return wrong(reader, path, arena_format(&reader->plan->arena,
-                "finds visits by their window, but no visit of \"dates\" gives the code \"%.60s\" a target and a window", file->codes.item[c]));
+            return wrong(reader, path,
+                arena_format(&reader->plan->arena,
+                    "finds visits by their window, but no visit of \"dates\" gives the code \"%.60s\" a target and a "
+                    "window",
+                    file->codes.item[c]));
         }
     }
     return true;
@@ -175,12 +185,14 @@ static bool read_window(struct reader *reader, const cJSON *item, const char *pa
     }
     int f = file_of(plan, id, strlen(id));
     if (f == NOWHERE || !plan->files[f].by_visit) {
-        return wrong(reader, join(reader, path, "file"), "must be the id of a file of this plan that has one row per visit");
+        return wrong(
+            reader, join(reader, path, "file"), "must be the id of a file of this plan that has one row per visit");
     }
     const struct dates *dates = plan->dates;
     if (dates->randomised == NOWHERE || (plan->files[dates->moments[dates->randomised].place.file].by_visit &&
                                             (int)dates->moments[dates->randomised].place.file == f)) {
-        return wrong(reader, path, "counts days from randomisation: give \"dates.randomised\" a column that is not in that file");
+        return wrong(reader, path,
+            "counts days from randomisation: give \"dates.randomised\" a column that is not in that file");
     }
     struct plan_file *file = &plan->files[f];
     if (file->window) {
@@ -198,7 +210,8 @@ static bool read_windows(struct reader *reader, const cJSON *dates) {
         return !windows || read_window(reader, windows, "dates.by_window");
     }
     if (!cJSON_IsArray(windows)) {
-        return wrong(reader, "dates.by_window", "must be an object with the file and the column of its date, or a list of such");
+        return wrong(
+            reader, "dates.by_window", "must be an object with the file and the column of its date, or a list of such");
     }
     for (const cJSON *item = windows->child; item; item = item->next) {
         if (!read_window(reader, item, at_index(reader, "dates.by_window", index++))) {
@@ -225,13 +238,15 @@ bool read_dates(struct reader *reader, const cJSON *root) {
     if (!dates) {
         return visits_found(reader);
     }
-    if (!keys_known(reader, dates, "dates", "order files sites earliest randomised visits stopped withdrew died by_window")) {
+    if (!keys_known(
+            reader, dates, "dates", "order files sites earliest randomised visits stopped withdrew died by_window")) {
         return false;
     }
     struct dates *to = reader->plan->dates = ARENA_NEW(&reader->plan->arena, 1, struct dates);
     to->received = (double)NAN;
     if (!member(dates, "order")) {
-        return wrong(reader, "dates.order", "is missing: say how dates are written, such as \"D/M/Y\"; it is never guessed");
+        return wrong(
+            reader, "dates.order", "is missing: say how dates are written, such as \"D/M/Y\"; it is never guessed");
     }
     return order_of(reader, member(dates, "order"), "dates.order", &to->order) && read_file_orders(reader, dates) &&
            read_site_orders(reader, root, dates) && read_earliest(reader, dates) && read_moments(reader, dates) &&

@@ -49,7 +49,8 @@ bool of_a_file(struct reader *reader, const char *path, const struct place *plac
 /* Adds the column to the variables, or finds it there; a column has one kind. */
 bool place_variable(struct reader *reader, const struct variable *wanted, int *index);
 
-/* In plan-derived.c: an item of the key "derived"; its variables, after all others; what may not rest on a follow-up. */
+/* In plan-derived.c: an item of the key "derived"; its variables, after all others; what may not rest on a follow-up.
+ */
 bool read_derived(struct reader *reader, const cJSON *item, const char *path);
 bool settle_derived(struct reader *reader);
 bool nothing_comes_late(struct reader *reader);

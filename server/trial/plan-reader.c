@@ -27,8 +27,9 @@ bool keys_known(struct reader *reader, const cJSON *object, const char *path, co
             found = strcspn(word, " ") == length && memcmp(word, child->string, length) == 0;
         }
         if (!found) {
-            return fault_set(reader->fault, FAULT_INPUT, "%s: the key \"%.60s\"%s%s is not one a plan has here; known are: %s",
-                reader->name, child->string, *path ? " in " : "", path, known);
+            return fault_set(reader->fault, FAULT_INPUT,
+                "%s: the key \"%.60s\"%s%s is not one a plan has here; known are: %s", reader->name, child->string,
+                *path ? " in " : "", path, known);
         }
         for (const cJSON *before = object->child; before != child; before = before->next) {
             if (strcmp(before->string, child->string) == 0) {
@@ -44,8 +45,8 @@ const cJSON *member(const cJSON *object, const char *key) {
     return cJSON_GetObjectItemCaseSensitive(object, key);
 }
 
-bool read_text(struct reader *reader, const cJSON *object, const char *path, const char *key, bool required,
-    const char **value) {
+bool read_text(
+    struct reader *reader, const cJSON *object, const char *path, const char *key, bool required, const char **value) {
     const cJSON *item = member(object, key);
     if (!item) {
         return required ? wrong(reader, join(reader, path, key), "is missing; a plan needs it") : true;

@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Day numbers against base R's as.Date (values/dates.csv, made by dates.R) and against glibc's timegm over 800 years. */
+/* Day numbers against base R's as.Date (values/dates.csv, made by dates.R) and against glibc's timegm over 800 years.
+ */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>

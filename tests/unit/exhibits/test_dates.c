@@ -1,5 +1,6 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* The exhibit of dates: days from randomisation counted by hand, by arm as blinding allows; and what a plan without dates gets. */
+/* The exhibit of dates: days from randomisation counted by hand, by arm as blinding allows; and what a plan without
+ * dates gets. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -9,13 +10,17 @@
 
 #include "exhibit_case.h"
 
-static const char plan[] =
-    "{\"title\": \"Harbour\", \"participant\": \"pid\", \"arm\": {\"column\": \"grp\", \"levels\": [{\"code\": \"Lx\", \"reference\": true}, "
-    "{\"code\": \"Wx\"}]}, \"blinding\": \"BLINDING\", \"outcomes\": [{\"id\": \"y\", \"role\": \"primary\", \"better\": \"lower\", \"visits\": "
-    "[{\"label\": \"End\", \"column\": \"y\"}]}], \"dates\": {\"order\": \"D/M/Y\", \"randomised\": {\"column\": \"rand\"}, \"visits\": ["
-    "{\"label\": \"8 weeks\", \"column\": \"d8\", \"target\": 56, \"window\": [-7, 7]}, {\"label\": \"End\", \"column\": \"d26\"}]}}";
+static const char plan[] = "{\"title\": \"Harbour\", \"participant\": \"pid\", \"arm\": {\"column\": \"grp\", "
+                           "\"levels\": [{\"code\": \"Lx\", \"reference\": true}, "
+                           "{\"code\": \"Wx\"}]}, \"blinding\": \"BLINDING\", \"outcomes\": [{\"id\": \"y\", \"role\": "
+                           "\"primary\", \"better\": \"lower\", \"visits\": "
+                           "[{\"label\": \"End\", \"column\": \"y\"}]}], \"dates\": {\"order\": \"D/M/Y\", "
+                           "\"randomised\": {\"column\": \"rand\"}, \"visits\": ["
+                           "{\"label\": \"8 weeks\", \"column\": \"d8\", \"target\": 56, \"window\": [-7, 7]}, "
+                           "{\"label\": \"End\", \"column\": \"d26\"}]}}";
 
-/* Days to 8 weeks: 49 and 63, both bounds of the window; 48 early; 64 late; 56; none; a month 13; without randomisation. */
+/* Days to 8 weeks: 49 and 63, both bounds of the window; 48 early; 64 late; 56; none; a month 13; without
+ * randomisation. */
 static const char csv[] = "pid,grp,y,rand,d8,d26\n"
                           "P1,Lx,1,01/01/2026,19/02/2026,01/07/2026\n"
                           "P2,Lx,2,01/01/2026,05/03/2026,2026-07-02\n"
@@ -46,7 +51,8 @@ static void test_unblinded(void **state) {
     struct renderings r;
     open_as(&c, "unblinded");
     assert_true(render(&c, "dates", NULL, 0, &r, NULL));
-    const cJSON *week8 = member_with(field(r.parsed, "visits"), "visit", "8 weeks"), *end = member_with(field(r.parsed, "visits"), "visit", "End");
+    const cJSON *week8 = member_with(field(r.parsed, "visits"), "visit", "8 weeks"),
+                *end = member_with(field(r.parsed, "visits"), "visit", "End");
     expect_arm(week8, "Lx", (const double[]){4, 0, 48, 56, 64, 2, 1, 1});
     expect_arm(week8, "Wx", (const double[]){1, 3, 56, 56, 56, 1, 0, 0});
     near(cJSON_GetArrayItem(field(week8, "window"), 0)->valuedouble, 49, 0, 0, "window");
@@ -70,7 +76,8 @@ static void test_blinded(void **state) {
         const cJSON *arms = field(member_with(field(r.parsed, "visits"), "visit", "8 weeks"), "arms");
         assert_int_equal(cJSON_GetArraySize(arms), i + 1);
         if (i == 0) {
-            expect_arm(member_with(field(r.parsed, "visits"), "visit", "8 weeks"), "all", (const double[]){5, 3, 48, 56, 64, 3, 1, 1});
+            expect_arm(member_with(field(r.parsed, "visits"), "visit", "8 weeks"), "all",
+                (const double[]){5, 3, 48, 56, 64, 3, 1, 1});
         }
         const struct text *const all[] = {&r.text, &r.json, &r.csv, &r.html, &r.svg};
         for (size_t a = 0; a < sizeof all / sizeof *all; a++) {
@@ -108,7 +115,8 @@ static void test_distribution_refused(void **state) {
     open_as(&c, "pooled");
     const struct asked asked = {"variable", "d8"};
     assert_false(render(&c, "distribution", &asked, 1, &r, &fault));
-    assert_string_equal(fault.message, "distribution: d8 is a date and has no distribution here; the exhibit dates shows it");
+    assert_string_equal(
+        fault.message, "distribution: d8 is a date and has no distribution here; the exhibit dates shows it");
     renderings_release(&r);
     case_close(&c);
 }

@@ -1,8 +1,9 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
-/* Dates: texts by order, what the plan says of them, each check with a case where it speaks and one where it is silent, one order for
- * a site by one decision, visits found by date with ties, and that a decision taken back leaves no trace. The calendar itself is held
- * against R and glibc in tests/reference. Serial numbers: ECMA-376-1:2016, 18.17.4.1 (1900-01-01 is 1, 60 stands for 29 February 1900,
- * 1900-03-01 is 61; from 1904, 1904-01-01 is 0). Years of two digits: POSIX.1-2017, strptime, %y. */
+/* Dates: texts by order, what the plan says of them, each check with a case where it speaks and one where it is silent,
+ * one order for a site by one decision, visits found by date with ties, and that a decision taken back leaves no trace.
+ * The calendar itself is held against R and glibc in tests/reference. Serial numbers: ECMA-376-1:2016, 18.17.4.1
+ * (1900-01-01 is 1, 60 stands for 29 February 1900, 1900-03-01 is 61; from 1904, 1904-01-01 is 0). Years of two digits:
+ * POSIX.1-2017, strptime, %y. */
 #include <setjmp.h>
 #include <stdarg.h>
 #include <stddef.h>
@@ -101,7 +102,8 @@ static void test_texts(void **state) {
     for (size_t i = 0; i < sizeof texts / sizeof *texts; i++) {
         double day;
         enum date_reading reading = date_read(texts[i].text, texts[i].order, &day);
-        const char *got = date_words(&arena, day), *about = arena_format(&arena, "%s as %s", texts[i].text, date_order_name(texts[i].order));
+        const char *got = date_words(&arena, day),
+                   *about = arena_format(&arena, "%s as %s", texts[i].text, date_order_name(texts[i].order));
         if (reading != texts[i].reading) {
             fail_msg("%s: reading %d, wanted %d", about, reading, texts[i].reading);
         }
@@ -117,9 +119,15 @@ static void test_exchanged(void **state) {
         enum date_order order;
         const char *other;
     } cases[] = {
-        {"03/04/2026", DATE_DMY, "2026-03-04"}, {"03/04/2026", DATE_MDY, "2026-04-03"}, {"03/04/26", DATE_DMYY, "2026-03-04"},
-        {"04/04/2026", DATE_DMY, NULL}, {"13/04/2026", DATE_DMY, NULL}, {"2026-03-04", DATE_DMY, NULL}, {"2026/03/04", DATE_YMD, NULL},
-        {"03-APR-2026", DATE_DMONY, NULL}, {"", DATE_DMY, NULL},
+        {"03/04/2026", DATE_DMY, "2026-03-04"},
+        {"03/04/2026", DATE_MDY, "2026-04-03"},
+        {"03/04/26", DATE_DMYY, "2026-03-04"},
+        {"04/04/2026", DATE_DMY, NULL},
+        {"13/04/2026", DATE_DMY, NULL},
+        {"2026-03-04", DATE_DMY, NULL},
+        {"2026/03/04", DATE_YMD, NULL},
+        {"03-APR-2026", DATE_DMONY, NULL},
+        {"", DATE_DMY, NULL},
     };
     struct arena arena;
     arena_init(&arena);
@@ -152,7 +160,8 @@ static void test_order_names(void **state) {
 
 static const char one_plan[] =
     "{'title': 'T', 'participant': 'pid', 'site': {'column': 'site'},"
-    " 'outcomes': [{'id': 'y', 'label': 'Why', 'role': 'primary', 'better': 'lower', 'visits': [{'label': 'End', 'column': 'y'}]}],"
+    " 'outcomes': [{'id': 'y', 'label': 'Why', 'role': 'primary', 'better': 'lower', 'visits': [{'label': 'End', "
+    "'column': 'y'}]}],"
     " 'dates': {'order': 'D/M/Y', 'sites': {'09': 'Y/M/D'}, 'earliest': '2020-01-01', 'randomised': {'column': 'rand'},"
     "  'visits': [{'label': 'Baseline', 'column': 'd0', 'target': 0, 'window': [-28, 7]},"
     "             {'label': '8 weeks', 'column': 'd8', 'target': 56, 'window': [-14, 14]}],"
@@ -230,13 +239,16 @@ static const struct {
         "Date of Baseline of P1 reads \"01/03/26\", with a year of two digits; as D/M/Y it would be 2026-03-01.",
         "{'kind':'correct','column':'d0','participant':'P1','from':'01/03/26','to':'2026-03-01'}"},
     {"P1,01,5,03/03/2026,46082,28/04/2026,,\n", 1, "serial-number-date/d0/P1",
-        "Date of Baseline of P1 reads 46082, no date but the number that a spreadsheet counts days by: 2026-03-01 in the system from 1900, "
+        "Date of Baseline of P1 reads 46082, no date but the number that a spreadsheet counts days by: 2026-03-01 in "
+        "the system from 1900, "
         "2030-03-02 in that from 1904.",
         "{'kind':'correct','column':'d0','participant':'P1','from':'46082','to':'2026-03-01'}"},
     {"P1,01,5,03/03/2026,01/03/2026,28/04/2027,,\n", 1, "date-in-the-future/d8/P1",
         "Date of 8 weeks of P1 is 2027-04-28, after the day the data were received (2026-12-01).", NULL},
     {"P1,01,5,03/03/2026,01/03/2026,01/12/2026,,\n", 1, "outside-window/d8/P1",
-        "Date of 8 weeks of P1 is 2026-12-01, day 273 after randomisation, 217 days after the planned day 56; the window is 42 to 70.", NULL},
+        "Date of 8 weeks of P1 is 2026-12-01, day 273 after randomisation, 217 days after the planned day 56; the "
+        "window is 42 to 70.",
+        NULL},
     {"P1,01,5,03/03/2026,28/02/2016,28/04/2026,,\n", 1, "date-too-early/d0/P1",
         "Date of Baseline of P1 is 2016-02-28, before the earliest day the plan allows (2020-01-01).", NULL},
     {"P1,01,5,20/03/2026,20/03/2026,19/03/2026,,\n", 1, "dates-out-of-order/d8/P1",
@@ -245,14 +257,17 @@ static const struct {
         "Date of 8 weeks of P1 is 2026-05-15, after \"Died\" (2026-05-14), which must come later.", NULL},
     {"P1,01,5,20/03/2026,20/03/2026,15/05/2026,14/05/2026,\n", 1, "dates-out-of-order/d8/P1",
         "Date of 8 weeks of P1 is 2026-05-15, after \"Withdrew\" (2026-05-14), which must come later.", NULL},
-    {"P1,01,5,20/03/2026,20/03/2026,15/05/2026,15/05/2026,15/05/2026\n", 0, NULL, NULL, NULL}, /* the same day is in order */
+    {"P1,01,5,20/03/2026,20/03/2026,15/05/2026,15/05/2026,15/05/2026\n", 0, NULL, NULL,
+        NULL}, /* the same day is in order */
     /* as declared it is outside the window or out of order, exchanged it is neither */
     {"P1,01,5,10/02/2026,10/02/2026,04/07/2026,,\n", 1, "ambiguous-date/d8/P1",
-        "Date of 8 weeks of P1 reads \"04/07/2026\", taken as 2026-07-04, which is outside the visit's window; with day and month exchanged it is "
+        "Date of 8 weeks of P1 reads \"04/07/2026\", taken as 2026-07-04, which is outside the visit's window; with "
+        "day and month exchanged it is "
         "2026-04-07, inside.",
         "{'kind':'correct','column':'d8','participant':'P1','from':'04/07/2026','to':'2026-04-07'}"},
     {"P1,01,5,10/02/2026,10/02/2026,04/01/2026,,\n", 1, "ambiguous-date/d8/P1",
-        "Date of 8 weeks of P1 reads \"04/01/2026\", taken as 2026-01-04, which is out of order with Baseline (2026-02-10); with day and month "
+        "Date of 8 weeks of P1 reads \"04/01/2026\", taken as 2026-01-04, which is out of order with Baseline "
+        "(2026-02-10); with day and month "
         "exchanged it is 2026-04-01, which is in order.",
         "{'kind':'correct','column':'d8','participant':'P1','from':'04/01/2026','to':'2026-04-01'}"},
     /* exchanged it would be day 80, outside the window: no such proposal */
@@ -274,7 +289,8 @@ static void test_one_participant(void **state) {
         }
         if (one[i].proposal) { /* taken, it settles it, and nothing new comes up */
             const char *proposal = find(&dated, one[i].id)->proposal;
-            const char *batch = arena_format(&dated.arena, "[%.*s,\"reason\":\"r\"}]", (int)strlen(proposal) - 1, proposal);
+            const char *batch =
+                arena_format(&dated.arena, "[%.*s,\"reason\":\"r\"}]", (int)strlen(proposal) - 1, proposal);
             case_must(&dated.c, batch);
             look(&dated);
             assert_int_equal(dated.found.open, 0);
@@ -299,11 +315,10 @@ static const char *day_of(struct dated *dated, const char *id, const char *colum
     return words ? words : cell_state_name(case_state(&dated->c, id, column));
 }
 
-static const char two_sites[] =
-    "P1,01,5,03/03/2026,03/03/2026,28/04/2026,,\n"
-    "P2,01,5,04/03/2026,04/03/2026,29/04/2026,,\n"
-    "P3,07,5,03/13/2026,03/13/2026,05/08/2026,,\n"
-    "P4,07,5,03/05/2026,2026-03-05,04/30/2026,,\n";
+static const char two_sites[] = "P1,01,5,03/03/2026,03/03/2026,28/04/2026,,\n"
+                                "P2,01,5,04/03/2026,04/03/2026,29/04/2026,,\n"
+                                "P3,07,5,03/13/2026,03/13/2026,05/08/2026,,\n"
+                                "P4,07,5,03/05/2026,2026-03-05,04/30/2026,,\n";
 
 static void test_site_at_once(void **state) {
     (void)state;
@@ -334,8 +349,9 @@ static void test_site_at_once(void **state) {
     take(&dated, "impossible-date/d0/P3");
     assert_int_equal(dated.found.open, 0);
     /* taken back, all of it leaves no trace */
-    case_must(&dated.c, "[{'kind': 'reverse', 'number': 3, 'reason': 'r'}, {'kind': 'reverse', 'number': 1, 'reason': 'r'},"
-                        " {'kind': 'reverse', 'number': 2, 'reason': 'r'}]");
+    case_must(&dated.c,
+        "[{'kind': 'reverse', 'number': 3, 'reason': 'r'}, {'kind': 'reverse', 'number': 1, 'reason': 'r'},"
+        " {'kind': 'reverse', 'number': 2, 'reason': 'r'}]");
     assert_string_equal(before, dated.c.frame->state_sha256);
     look(&dated);
     assert_int_equal(find(&dated, "date-order/rand/site 07")->state, DISCREPANCY_OPEN);
@@ -352,25 +368,35 @@ static void test_groups(void **state) {
         const char *records, *id, *message, *proposal;
         size_t open;
     } cases[] = {
-        {"P1,01,5,46082,2026-03-01,2026-04-28,,\nP2,01,5,46083,2026-03-02,2026-04-29,,\n", "serial-number-date/rand/site 01",
-            "Site 01, rand: 2 dates are numbers that a spreadsheet counts days by, from 1900 (or from 1904: then 1,462 days later).",
+        {"P1,01,5,46082,2026-03-01,2026-04-28,,\nP2,01,5,46083,2026-03-02,2026-04-29,,\n",
+            "serial-number-date/rand/site 01",
+            "Site 01, rand: 2 dates are numbers that a spreadsheet counts days by, from 1900 (or from 1904: then 1,462 "
+            "days later).",
             "{'kind':'date-order','column':'rand','order':'serial-1900','site':'01'}", 1},
-        {"P1,01,5,01/03/26,2026-03-01,2026-04-28,,\nP2,01,5,02/03/26,2026-03-02,2026-04-29,,\n", "two-digit-year/rand/site 01",
+        {"P1,01,5,01/03/26,2026-03-01,2026-04-28,,\nP2,01,5,02/03/26,2026-03-02,2026-04-29,,\n",
+            "two-digit-year/rand/site 01",
             "Site 01, rand: 2 dates have a year of two digits; 69 to 99 would be the 1900s, 00 to 68 the 2000s.",
             "{'kind':'date-order','column':'rand','order':'D/M/YY','site':'01'}", 1},
         /* site 09 writes Y/M/D by the plan; what it wrote reads as D/M/Y and as M/D/Y: nothing is proposed */
-        {"P1,09,5,01/03/2026,2026-01-03,2026-02-28,,\nP2,09,5,02/03/2026,2026-02-03,2026-03-31,,\n", "date-order/rand/site 09",
-            "Site 09, rand: 2 dates cannot be read as Y/M/D; all of them read as D/M/Y (day, month, year), and so do they as M/D/Y: ask the "
-            "site.", NULL, 1},
-        {"P1,,5,03/13/2026,2026-03-13,2026-05-08,,\nP2,,5,03/14/2026,2026-03-14,2026-05-08,,\n", "date-order/rand/site ",
+        {"P1,09,5,01/03/2026,2026-01-03,2026-02-28,,\nP2,09,5,02/03/2026,2026-02-03,2026-03-31,,\n",
+            "date-order/rand/site 09",
+            "Site 09, rand: 2 dates cannot be read as Y/M/D; all of them read as D/M/Y (day, month, year), and so do "
+            "they as M/D/Y: ask the "
+            "site.",
+            NULL, 1},
+        {"P1,,5,03/13/2026,2026-03-13,2026-05-08,,\nP2,,5,03/14/2026,2026-03-14,2026-05-08,,\n",
+            "date-order/rand/site ",
             "Without a site, rand: 2 dates cannot be read as D/M/Y; all of them read as M/D/Y (month, day, year).",
             "{'kind':'date-order','column':'rand','order':'M/D/Y','site':''}", 1},
         /* mixed: one reads only as M/D/Y, one only as D/M/Y, so the third is in doubt; its other dates are not given */
         {"P1,01,5,03/13/2026,,,,\nP2,01,5,13/03/2026,,,,\nP3,01,5,03/04/2026,,,,\n", "ambiguous-date/rand/site 01",
-            "Site 01, rand: 1 date reads only as M/D/Y where the order is D/M/Y, so 1 other, with day and month up to 12, can be read two ways; "
-            "it is read as D/M/Y.", "{'kind':'date-order','column':'rand','order':'D/M/Y','site':'01'}", 2},
+            "Site 01, rand: 1 date reads only as M/D/Y where the order is D/M/Y, so 1 other, with day and month up to "
+            "12, can be read two ways; "
+            "it is read as D/M/Y.",
+            "{'kind':'date-order','column':'rand','order':'D/M/Y','site':'01'}", 2},
         /* the same, but another date of the third speaks against the other reading */
-        {"P1,01,5,03/13/2026,,,,\nP2,01,5,13/03/2026,,,,\nP3,01,5,03/04/2026,,2026-05-29,,\n", "impossible-date/rand/P1",
+        {"P1,01,5,03/13/2026,,,,\nP2,01,5,13/03/2026,,,,\nP3,01,5,03/04/2026,,2026-05-29,,\n",
+            "impossible-date/rand/P1",
             "Date of randomisation of P1 reads \"03/13/2026\", which is no day as D/M/Y; as M/D/Y it is 2026-03-13.",
             "{'kind':'correct','column':'rand','participant':'P1','from':'03/13/2026','to':'2026-03-13'}", 1},
     };
@@ -396,21 +422,27 @@ static void test_refused_orders(void **state) {
     static const struct {
         const char *decision, *sentence;
     } cases[] = {
-        {"'column': 'y', 'order': 'M/D/Y'", "decision 1 of the batch (date-order) is about the column \"y\", which holds no dates; nothing was recorded"},
-        {"'column': 'rand', 'order': 'M/D/Y', 'site': '77'",
-            "decision 1 of the batch (date-order) names the site \"77\", which no participant has; nothing was recorded"},
-        {"'column': 'rand', 'order': 'Y/D/M'", "batch.json: decision 1 of the batch (date-order) has an \"order\" that is none of D/M/Y, M/D/Y, "
+        {"'column': 'y', 'order': 'M/D/Y'", "decision 1 of the batch (date-order) is about the column \"y\", which "
+                                            "holds no dates; nothing was recorded"},
+        {"'column': 'rand', 'order': 'M/D/Y', 'site': '77'", "decision 1 of the batch (date-order) names the site "
+                                                             "\"77\", which no participant has; nothing was recorded"},
+        {"'column': 'rand', 'order': 'Y/D/M'",
+            "batch.json: decision 1 of the batch (date-order) has an \"order\" that is none of D/M/Y, M/D/Y, "
             "Y/M/D, D-MON-Y, the same with YY, serial-1900 and serial-1904; nothing was recorded"},
-        {"'column': 'rand'", "batch.json: decision 1 of the batch (date-order) lacks \"order\"; it needs: column order; nothing was recorded"},
+        {"'column': 'rand'", "batch.json: decision 1 of the batch (date-order) lacks \"order\"; it needs: column "
+                             "order; nothing was recorded"},
     };
     struct dated dated;
     open_dated(&dated, two_sites);
     for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
-        case_refused(&dated.c, arena_format(&dated.arena, "[{'kind': 'date-order', %s, 'reason': 'r'}]", cases[i].decision), cases[i].sentence);
+        case_refused(&dated.c,
+            arena_format(&dated.arena, "[{'kind': 'date-order', %s, 'reason': 'r'}]", cases[i].decision),
+            cases[i].sentence);
     }
     case_must(&dated.c, "[{'kind': 'lock', 'reason': 'r'}]");
     case_refused(&dated.c, "[{'kind': 'date-order', 'column': 'rand', 'order': 'M/D/Y', 'reason': 'r'}]",
-        "decision 1 of the batch (date-order) would change data, and the study is locked; unlock it first, with a reason; nothing was recorded");
+        "decision 1 of the batch (date-order) would change data, and the study is locked; unlock it first, with a "
+        "reason; nothing was recorded");
     close_dated(&dated);
 }
 
@@ -423,8 +455,9 @@ static void test_states(void **state) {
     expect_text(day_of(&dated, "P1", "d8"), "blank", "blank");
     case_must(&dated.c, "[{'kind': 'missing-code', 'column': 'd0', 'value': '01/01/1900', 'reason': 'r'}]");
     expect_text(day_of(&dated, "P1", "d0"), "missing-code", "code");
-    case_must(&dated.c, "[{'kind': 'correct', 'column': 'd8', 'participant': 'P1', 'from': '', 'to': '2026-04-28', 'reason': 'r'},"
-                        " {'kind': 'set-missing', 'column': 'rand', 'participant': 'P1', 'from': '03/03/2026', 'reason': 'r'}]");
+    case_must(&dated.c,
+        "[{'kind': 'correct', 'column': 'd8', 'participant': 'P1', 'from': '', 'to': '2026-04-28', 'reason': 'r'},"
+        " {'kind': 'set-missing', 'column': 'rand', 'participant': 'P1', 'from': '03/03/2026', 'reason': 'r'}]");
     expect_text(day_of(&dated, "P1", "d8"), "2026-04-28", "corrected");
     expect_text(day_of(&dated, "P1", "rand"), "set-missing", "set missing");
     close_dated(&dated);
@@ -437,7 +470,8 @@ static const char window_plan[] =
     " 'files': [{'id': 'people', 'participant': 'pid'},"
     "   {'id': 'visits', 'layout': 'visit', 'participant': 'pid', 'codes': ['0', '8', '16']}],"
     " 'outcomes': [{'id': 'y', 'label': 'Why', 'role': 'primary', 'better': 'lower', 'visits': ["
-    "   {'label': 'Baseline', 'file': 'visits', 'visit': '0', 'column': 'y'}, {'label': '8 weeks', 'file': 'visits', 'visit': '8', 'column': 'y'},"
+    "   {'label': 'Baseline', 'file': 'visits', 'visit': '0', 'column': 'y'}, {'label': '8 weeks', 'file': 'visits', "
+    "'visit': '8', 'column': 'y'},"
     "   {'label': '16 weeks', 'file': 'visits', 'visit': '16', 'column': 'y'}]}],"
     " 'dates': {'order': 'D/M/Y', 'files': {'people': 'Y/M/D'}, 'randomised': {'column': 'people.rand'}, 'visits': ["
     "   {'label': 'Baseline', 'file': 'visits', 'visit': '0', 'column': 'on', 'target': 0, 'window': [-14, 14]},"
@@ -499,8 +533,10 @@ static void test_windows(void **state) {
     assert_int_equal(join->blank, 1);
     assert_int_equal(join->doubled, 1);
     expect_found(&dated, "outside-window/visits.on/P1/record 5",
-        "The date of P1 (visits, record 5) is 2026-06-01, day 151 after randomisation, in no visit's window; what the record says is in no "
-        "analysis, and counted.", NULL);
+        "The date of P1 (visits, record 5) is 2026-06-01, day 151 after randomisation, in no visit's window; what the "
+        "record says is in no "
+        "analysis, and counted.",
+        NULL);
     /* one site's other order; read so, record 10 is of day 71, 15 after the 8 weeks */
     expect_found(&dated, "date-order/visits.on/site 02",
         "Site 02, visits.on: 1 of 3 dates cannot be read as D/M/Y; all of them read as M/D/Y (month, day, year).",
@@ -508,7 +544,8 @@ static void test_windows(void **state) {
     close_dated(&dated);
 }
 
-/* Decisions move records between visits, and taken back leave no trace; sharing columns between versions changes nothing. */
+/* Decisions move records between visits, and taken back leave no trace; sharing columns between versions changes
+ * nothing. */
 static void test_windows_follow_decisions(void **state) {
     (void)state;
     static const struct {
@@ -516,17 +553,23 @@ static void test_windows_follow_decisions(void **state) {
         double value;
         enum cell_state state;
     } steps[] = {
-        {"[{'kind': 'keep-record', 'file': 'visits', 'participant': 'P2', 'row': 9, 'reason': 'r'}]", "P2", "visits.y@16", 23, CELL_OBSERVED},
-        {"[{'kind': 'date-order', 'column': 'visits.on', 'order': 'M/D/Y', 'site': '02', 'reason': 'r'}]", "P3", "visits.y@8", 30, CELL_OBSERVED},
-        {"[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'row': 5, 'from': '01/06/2026', 'to': '2026-04-22', 'reason': 'r'}]",
+        {"[{'kind': 'keep-record', 'file': 'visits', 'participant': 'P2', 'row': 9, 'reason': 'r'}]", "P2",
+            "visits.y@16", 23, CELL_OBSERVED},
+        {"[{'kind': 'date-order', 'column': 'visits.on', 'order': 'M/D/Y', 'site': '02', 'reason': 'r'}]", "P3",
+            "visits.y@8", 30, CELL_OBSERVED},
+        {"[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'row': 5, 'from': '01/06/2026', 'to': "
+         "'2026-04-22', 'reason': 'r'}]",
             "P1", "visits.y@16", 14, CELL_OBSERVED},
-        {"[{'kind': 'correct', 'column': 'people.rand', 'participant': 'P4', 'from': '', 'to': '2025-12-30', 'reason': 'r'}]", "P4",
-            "visits.y@0", 40, CELL_OBSERVED},
-        {"[{'kind': 'set-missing', 'column': 'visits.on', 'participant': 'P1', 'row': 3, 'from': '01/03/2026', 'reason': 'r'}]", "P1",
-            "visits.y@8", 11, CELL_OBSERVED},
-        {"[{'kind': 'correct', 'column': 'visits.y@8', 'participant': 'P1', 'from': '11', 'to': '111', 'reason': 'r'}]", "P1", "visits.y@8",
-            111, CELL_OBSERVED},
-        {"[{'kind': 'read-as', 'column': 'visits.pid', 'from': 'P9', 'to': 'P3', 'reason': 'r'}]", "P3", "visits.y@0", 90, CELL_OBSERVED},
+        {"[{'kind': 'correct', 'column': 'people.rand', 'participant': 'P4', 'from': '', 'to': '2025-12-30', 'reason': "
+         "'r'}]",
+            "P4", "visits.y@0", 40, CELL_OBSERVED},
+        {"[{'kind': 'set-missing', 'column': 'visits.on', 'participant': 'P1', 'row': 3, 'from': '01/03/2026', "
+         "'reason': 'r'}]",
+            "P1", "visits.y@8", 11, CELL_OBSERVED},
+        {"[{'kind': 'correct', 'column': 'visits.y@8', 'participant': 'P1', 'from': '11', 'to': '111', 'reason': 'r'}]",
+            "P1", "visits.y@8", 111, CELL_OBSERVED},
+        {"[{'kind': 'read-as', 'column': 'visits.pid', 'from': 'P9', 'to': 'P3', 'reason': 'r'}]", "P3", "visits.y@0",
+            90, CELL_OBSERVED},
     };
     enum { STEPS = sizeof steps / sizeof *steps };
     struct dated dated;
@@ -546,11 +589,17 @@ static void test_windows_follow_decisions(void **state) {
         case_must(&dated.c, arena_format(&dated.arena, "[{'kind': 'reverse', 'number': %zu, 'reason': 'r'}]", i + 1));
         assert_string_equal(dated.c.frame->state_sha256, states[i]);
     }
-    case_refused(&dated.c, "[{'kind': 'correct', 'column': 'visits.on@8', 'participant': 'P1', 'from': '01/03/2026', 'to': '2026-03-02', 'reason': 'r'}]",
-        "decision 1 of the batch (correct) is about one visit of a date by which visits are found; name visits.on and the record's row; nothing "
+    case_refused(&dated.c,
+        "[{'kind': 'correct', 'column': 'visits.on@8', 'participant': 'P1', 'from': '01/03/2026', 'to': '2026-03-02', "
+        "'reason': 'r'}]",
+        "decision 1 of the batch (correct) is about one visit of a date by which visits are found; name visits.on and "
+        "the record's row; nothing "
         "was recorded");
-    case_refused(&dated.c, "[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'from': '01/03/2026', 'to': '2026-03-02', 'reason': 'r'}]",
-        "decision 1 of the batch (correct) is about a date by which visits are found; say which record with \"row\"; nothing was recorded");
+    case_refused(&dated.c,
+        "[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'from': '01/03/2026', 'to': '2026-03-02', "
+        "'reason': 'r'}]",
+        "decision 1 of the batch (correct) is about a date by which visits are found; say which record with \"row\"; "
+        "nothing was recorded");
     close_dated(&dated);
 }
 
@@ -559,8 +608,10 @@ static void test_corrections_stay_with_their_value(void **state) {
     (void)state;
     struct dated dated;
     open_windows(&dated);
-    case_must(&dated.c, "[{'kind': 'correct', 'column': 'visits.y@8', 'participant': 'P1', 'from': '12', 'to': '120', 'reason': 'r'}]");
-    case_must(&dated.c, "[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'row': 2, 'from': '20/02/2026', 'to': '2026-02-26', 'reason': 'r'}]");
+    case_must(&dated.c,
+        "[{'kind': 'correct', 'column': 'visits.y@8', 'participant': 'P1', 'from': '12', 'to': '120', 'reason': 'r'}]");
+    case_must(&dated.c, "[{'kind': 'correct', 'column': 'visits.on', 'participant': 'P1', 'row': 2, 'from': "
+                        "'20/02/2026', 'to': '2026-02-26', 'reason': 'r'}]");
     expect_cell(&dated, "P1", "visits.y@8", 11, CELL_OBSERVED);
     close_dated(&dated);
 }
@@ -572,29 +623,39 @@ static void test_broken_plans(void **state) {
     static const struct {
         const char *from, *to, *sentence;
     } cases[] = {
-        {"'order': 'D/M/Y', ", "", "plan.json: dates.order is missing: say how dates are written, such as \"D/M/Y\"; it is never guessed"},
-        {"'order': 'D/M/Y'", "'order': 'DMY'", "plan.json: dates.order must be an order of dates, one of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, D/M/YY, "
+        {"'order': 'D/M/Y', ", "",
+            "plan.json: dates.order is missing: say how dates are written, such as \"D/M/Y\"; it is never guessed"},
+        {"'order': 'D/M/Y'", "'order': 'DMY'",
+            "plan.json: dates.order must be an order of dates, one of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, D/M/YY, "
             "M/D/YY, YY/M/D, D-MON-YY, serial-1900, serial-1904"},
-        {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'mood': 1", "plan.json: the key \"mood\" in dates is not one a plan has here; known are: order files "
+        {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'mood': 1",
+            "plan.json: the key \"mood\" in dates is not one a plan has here; known are: order files "
             "sites earliest randomised visits stopped withdrew died by_window"},
-        {"{'people': 'Y/M/D'}", "{'persons': 'Y/M/D'}", "plan.json: dates.files.persons is not the id of a file of this plan"},
-        {"{'people': 'Y/M/D'}", "{'people': 3}", "plan.json: dates.files.people must be an order of dates, one of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, "
+        {"{'people': 'Y/M/D'}", "{'persons': 'Y/M/D'}",
+            "plan.json: dates.files.persons is not the id of a file of this plan"},
+        {"{'people': 'Y/M/D'}", "{'people': 3}",
+            "plan.json: dates.files.people must be an order of dates, one of D/M/Y, M/D/Y, Y/M/D, D-MON-Y, "
             "D/M/YY, M/D/YY, YY/M/D, D-MON-YY, serial-1900, serial-1904"},
         {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'earliest': '01/01/2019'",
             "plan.json: dates.earliest must be a day as YYYY-MM-DD, such as \"2019-01-01\""},
         {"'target': 56, ", "", "plan.json: dates.visits[1].window needs a target day, from which it is counted"},
-        {"[-14, 14]", "[3, 14]", "plan.json: dates.visits[0].window is counted from the target day and must hold it, such as [-14, 14]"},
-        {", 'target': 112, 'window': [-28, 28]", "", "plan.json: dates.by_window finds visits by their window, but no visit of \"dates\" gives the "
+        {"[-14, 14]", "[3, 14]",
+            "plan.json: dates.visits[0].window is counted from the target day and must hold it, such as [-14, 14]"},
+        {", 'target': 112, 'window': [-28, 28]", "",
+            "plan.json: dates.by_window finds visits by their window, but no visit of \"dates\" gives the "
             "code \"16\" a target and a window"},
-        {"'randomised': {'column': 'people.rand'}, ", "", "plan.json: dates.by_window counts days from randomisation: give \"dates.randomised\" a "
+        {"'randomised': {'column': 'people.rand'}, ", "",
+            "plan.json: dates.by_window counts days from randomisation: give \"dates.randomised\" a "
             "column that is not in that file"},
         {"'by_window': {'file': 'visits'", "'by_window': {'file': 'people'",
             "plan.json: dates.by_window.file must be the id of a file of this plan that has one row per visit"},
-        {",  'by_window': {'file': 'visits', 'column': 'on'}", "", "plan.json: files[1].visit is missing; a plan needs it, unless "
+        {",  'by_window': {'file': 'visits', 'column': 'on'}", "",
+            "plan.json: files[1].visit is missing; a plan needs it, unless "
             "\"dates.by_window\" finds the visits of the file by date"},
         {"'site': {'column': 'people.site'},", "", NULL},
         {"'order': 'D/M/Y'", "'order': 'D/M/Y', 'sites': {'01': 'M.D.Y'}", NULL},
-        {"'randomised': {'column': 'people.rand'}", "'randomised': {'column': 'people.pid'}", "plan.json: the column \"people.pid\" is both Date of "
+        {"'randomised': {'column': 'people.rand'}", "'randomised': {'column': 'people.pid'}",
+            "plan.json: the column \"people.pid\" is both Date of "
             "randomisation and the participant's identifier; a column has one meaning"},
     };
     struct arena arena;
@@ -602,8 +663,8 @@ static void test_broken_plans(void **state) {
     for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
         const char *at = strstr(window_plan, cases[i].from);
         assert_non_null(at);
-        const char *json = quoted(&arena, arena_format(&arena, "%.*s%s%s", (int)(at - window_plan), window_plan, cases[i].to,
-            at + strlen(cases[i].from)));
+        const char *json = quoted(&arena, arena_format(&arena, "%.*s%s%s", (int)(at - window_plan), window_plan,
+                                              cases[i].to, at + strlen(cases[i].from)));
         struct plan plan;
         struct fault fault;
         fault_init(&fault);
