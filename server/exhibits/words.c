@@ -81,7 +81,7 @@ const char *decision_words(const struct view *view, const struct decision *decis
     case DECISION_CONFIRM:
         return arena_format(arena, "%s%s%s: %s is right as recorded", label, *who ? " of " : "", who, or_nothing(decision->value));
     case DECISION_KEEP_RECORD:
-        return arena_format(arena, "%s: record %u stands", who, decision->row);
+        return arena_format(arena, "%s: record %u%s%s stands", who, decision->row, decision->file ? " of " : "", decision->file ? decision->file : "");
     case DECISION_QUERY:
         return arena_format(arena, "%s%s%s%s%s", label, *label && *who ? " of " : "", who, *label || *who ? ": " : "",
             decision->text ? decision->text : "");
