@@ -21,6 +21,15 @@ static const char files_json[] =
     "     \"visit\": \"visit\", \"codes\": [\"V0\", \"V8\", \"V26\"]},\n"
     "    {\"id\": \"events\", \"name\": \"events.csv\", \"layout\": \"participant\", \"participant\": \"pid\"}]";
 
+static const char dates_json[] =
+    "{\n"
+    "    \"order\": \"D/M/Y\", \"earliest\": \"2024-01-01\", \"randomised\": {\"file\": \"people\", \"column\": \"randomised\"},\n"
+    "    \"visits\": [\n"
+    "      {\"label\": \"Baseline\", \"file\": \"visits\", \"visit\": \"V0\", \"column\": \"date\", \"target\": 0, \"window\": [-14, 0]},\n"
+    "      {\"label\": \"8 weeks\", \"file\": \"visits\", \"visit\": \"V8\", \"column\": \"date\", \"target\": 56, \"window\": [-14, 14]},\n"
+    "      {\"label\": \"26 weeks\", \"file\": \"visits\", \"visit\": \"V26\", \"column\": \"date\", \"target\": 182,\n"
+    "       \"window\": [-21, 21]}]}";
+
 static const struct planned_visit {
     const char *code;
     enum column pressure, ratio;
@@ -131,7 +140,7 @@ void quayside_make_files(uint64_t seed, struct quayside_files *out) {
     text_literal(&out->labs_csv, "pid,visit,sampled,uacr\n");
     text_literal(&out->events_csv, "pid,rescue,rescue_date\n");
     struct trial *trial = trial_new(seed);
-    struct naming naming = {.columns = column_names, .files = files_json};
+    struct naming naming = {.columns = column_names, .files = files_json, .dates = dates_json};
     uint64_t state = ~seed;
     for (size_t i = 0; i < PARTICIPANTS; i++) {
         struct dates dates;

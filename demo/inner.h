@@ -43,6 +43,7 @@ struct trial {
 struct naming {
     const char *const *columns; /* [COLUMNS] as decisions name them */
     const char *files;          /* the plan's "files" as JSON; NULL for one wide file */
+    const char *dates;          /* the plan's "dates" as JSON; NULL: none */
     size_t visit_row;           /* in several files: the record of visits.csv that stands of the one entered twice */
 };
 

@@ -466,6 +466,9 @@ void trial_write_plan(const struct naming *naming, uint64_t seed, struct text *o
     if (naming->files) {
         text_format(out, "  \"files\": %s,\n", naming->files);
     }
+    if (naming->dates) {
+        text_format(out, "  \"dates\": %s,\n", naming->dates);
+    }
     text_literal(out, "  \"participant\": \"pid\",\n"
                       "  \"arm\": {\"column\": \"grp\", \"levels\": [\n");
     text_format(out, "    {\"code\": \"%s\", \"label\": \"%s\", \"reference\": true},\n", truths[ADVICE].code,

@@ -1446,6 +1446,17 @@ static void hash_derived(struct hash *hash, const struct frame *frame, const str
     hash_field(hash, derived->claims ? frame->columns[derived->claims_variable]->hash : NULL);
 }
 
+static bool date_decided(const struct frame *frame, const char *column) {
+    for (size_t i = 0; i < frame->version; i++) {
+        const struct decision *decision = &frame->decisions[i];
+        bool changes = !decision->planned && decision->kind <= DECISION_SET_MISSING; /* planned: a code entered at load */
+        if (frame->stands[i] && changes && about_column(decision, column)) {
+            return true;
+        }
+    }
+    return false;
+}
+
 static void hash_state(struct frame *frame) {
     struct hash hash;
     hash_init(&hash);
@@ -1470,8 +1481,12 @@ static void hash_state(struct frame *frame) {
         hash_field(&hash, frame->plan->events[i].id);
         hash_field(&hash, frame->columns[frame->plan->events[i].variable]->hash);
     }
+    /* The same data may come with dates or without: those as received are left out, what a decision has made of them is not. */
     for (size_t i = 0; frame->plan->dates && i < frame->plan->dates->moment_count; i++) {
         const struct moment *moment = &frame->plan->dates->moments[i];
+        if (!date_decided(frame, moment->column)) {
+            continue;
+        }
         hash_field(&hash, moment_name(moment->kind));
         hash_field(&hash, moment->label);
         hash_field(&hash, frame->columns[moment->variable]->hash);

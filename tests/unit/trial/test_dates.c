@@ -446,6 +446,24 @@ static void test_refused_orders(void **state) {
     close_dated(&dated);
 }
 
+/* The same data without dates have the same fingerprint, until a decision changes a date. */
+static void test_state_with_and_without(void **state) {
+    (void)state;
+    struct dated dated;
+    struct trial_case bare;
+    open_dated(&dated, two_sites);
+    char *cut = arena_text(&dated.arena, one_plan);
+    strcpy(strstr(cut, ", 'dates'") ? strstr(cut, ", 'dates'") : strstr(cut, " 'dates'") - 1, "}");
+    case_open(&bare, arena_format(&dated.arena, "%s%s", one_header, two_sites), cut);
+    assert_string_equal(dated.c.frame->state_sha256, bare.frame->state_sha256);
+    case_must(&dated.c, "[{'kind': 'confirm', 'column': 'rand', 'value': '03/03/2026', 'reason': 'r'}]");
+    assert_string_equal(dated.c.frame->state_sha256, bare.frame->state_sha256);
+    take(&dated, "date-order/rand/site 07");
+    assert_string_not_equal(dated.c.frame->state_sha256, bare.frame->state_sha256);
+    case_close(&bare);
+    close_dated(&dated);
+}
+
 /* Codes for missing, corrections to ISO and values set missing, as in any column. */
 static void test_states(void **state) {
     (void)state;
@@ -687,6 +705,7 @@ int main(void) {
         cmocka_unit_test(test_groups),
         cmocka_unit_test(test_refused_orders),
         cmocka_unit_test(test_states),
+        cmocka_unit_test(test_state_with_and_without),
         cmocka_unit_test(test_windows),
         cmocka_unit_test(test_windows_follow_decisions),
         cmocka_unit_test(test_corrections_stay_with_their_value),
