@@ -4,16 +4,16 @@
 import { takeWho, whoFields } from "./decide.js";
 import { $, button, fill, make, restoreFocus } from "./page.js";
 import * as server from "./server.js";
-import { takesDrops } from "./start.js";
+import { accepted, sendFiles, takesDrops } from "./start.js";
 import { deciding } from "./study.js";
 import { count } from "./words.js";
 
-const form = { plan: null, guess: null, draft: "", file: "", fault: null, element: null, pre: null, opened: null, back: null };
+const form = { plan: null, guess: null, draft: "", file: "", fault: null, element: null, pre: null, said: new Map(), opened: null, back: null };
 
-export function showPlanForm(answer, opened, back) {
+export function showPlanForm(answer, opened, back, refused = []) {
   const { guess } = answer;
   const stem = (guess.name ?? "trial").replace(/\.[^.]*$/, "").replace(/[^\p{L}\p{N}._-]+/gu, "-") || "trial";
-  Object.assign(form, { plan: complete(answer.plan), guess, draft: answer.draft, file: `${stem}.study`, fault: null, opened, back });
+  Object.assign(form, { plan: complete(answer.plan), guess, draft: answer.draft, file: `${stem}.study`, fault: refused.join(" ") || null, said: new Map(), opened, back });
   draw();
   window.scrollTo(0, 0);
   restoreFocus(".question", $("main"));
@@ -23,6 +23,13 @@ export function showPlanForm(answer, opened, back) {
 function complete(plan) {
   const whole = { title: "", participant: "", outcomes: [], covariates: [], events: [], missing_codes: [], adjust_for: [], subgroups: [], blinding: "pooled", ...plan };
   if (whole.arm && !whole.arm.levels) whole.arm.levels = [];
+  const places = [whole.arm, whole.site, ...whole.covariates, ...whole.events, ...whole.outcomes.flatMap((outcome) => outcome.visits ?? [])];
+  for (const place of places) {
+    if (!place?.file) continue;
+    place.column = `${place.file}.${place.column}${place.visit === undefined ? "" : `@${place.visit}`}`;
+    delete place.file;
+    delete place.visit;
+  }
   return whole;
 }
 
@@ -39,15 +46,29 @@ function clean(value) {
   return result;
 }
 
-const column = (name) => form.guess.columns.find((one) => one.name === name);
+// A column by the name that the plan gives it: COLUMN, FILE.COLUMN, or FILE.COLUMN@CODE at one visit of a file with a row for each.
+const column = (name) => form.guess.columns.find((one) => one.name === name) ??
+  form.guess.columns.find((one) => one.layout === "visit" && name?.startsWith(`${one.name}@`));
+const codesOf = (one) => (one.layout === "visit" ? form.guess.files.find((file) => file.id === one.file).codes : []);
+const placesOf = (one) => (one.layout === "visit" ? codesOf(one).map(({ code }) => `${one.name}@${code}`) : [one.name]);
 const series = (name) => form.guess.series?.find((one) => one.visits.some((visit) => visit.column === name));
 const idOf = (text) => text.toLowerCase().normalize("NFKD").replace(/[^a-z0-9]+/g, "_").replace(/^_|_$/g, "") || "x";
 
 function uses() {
   const { plan } = form;
   const used = new Map();
-  const add = (name, words) => name && used.set(name, [...(used.get(name) ?? []), words]);
-  add(plan.participant, "identifier");
+  const add = (said, words) => {
+    const name = column(said)?.name ?? said;
+    if (name) used.set(name, [...(used.get(name) ?? []), words]);
+  };
+  if (plan.files) {
+    for (const file of plan.files) {
+      add(`${file.id}.${file.participant}`, "identifier");
+      if (file.visit) add(`${file.id}.${file.visit}`, "code of the visit");
+    }
+  } else {
+    add(plan.participant, "identifier");
+  }
   add(plan.arm?.column, "arm");
   for (const outcome of plan.outcomes) for (const visit of outcome.visits ?? []) add(visit.column, `${outcome.label || outcome.id}, ${visit.label}`);
   for (const covariate of plan.covariates) add(covariate.column, covariate.label || covariate.id);
@@ -121,7 +142,7 @@ function choice(words, options, value, path, choose, wide) {
 }
 
 function columnField(words, object, key, path, more = {}) {
-  const options = form.guess.columns.map((one) => [one.name, one.name]);
+  const options = form.guess.columns.flatMap(placesOf).map((name) => [name, name]);
   if (more.none) options.unshift(["", more.none]);
   return choice(words, options, object[key] ?? "", path, (value) => {
     object[key] = value;
@@ -152,7 +173,7 @@ function trialPart() {
   const file = make("input", { value: form.file, required: true, autocomplete: "off", "data-path": "file", "data-key": "file", on: { input: () => (form.file = file.value) } });
   return make("fieldset", {}, make("legend", {}, "The trial"),
     make("div", { class: "fields" }, textField("Title", plan, "title", "title", { wide: true, required: true, placeholder: "as in the protocol" }), label("Study file to make", file),
-      columnField("Participant’s identifier", plan, "participant", "participant")),
+      plan.files ? null : columnField("Participant’s identifier", plan, "participant", "participant")),
     who());
 }
 
@@ -223,7 +244,7 @@ function columnSelect(object, path) {
   const select = make("select", { "aria-label": "Column", "data-path": path, "data-key": path, on: { change: () => {
     object.column = select.value;
     changed(true);
-  } } }, form.guess.columns.map((one) => make("option", { value: one.name, selected: one.name === object.column }, one.name)));
+  } } }, form.guess.columns.flatMap(placesOf).map((name) => make("option", { value: name, selected: name === object.column }, name)));
   if (!column(object.column)) select.selectedIndex = -1;
   return select;
 }
@@ -302,16 +323,22 @@ const alone = "Follow-up"; // the label of an outcome's only visit, which is no 
 
 const newOf = {
   outcome: (name) => {
+    const one = column(name);
+    if (one.layout === "visit") {
+      form.plan.outcomes.push({ id: unique(idOf(name.slice(one.file.length + 1))), label: one.label ?? name, unit: one.unit ?? "", role: form.plan.outcomes.length ? "secondary" : "primary",
+        better: "lower", scale: "linear", visits: codesOf(one).map(({ code, label: words }) => ({ label: words, column: `${name}@${code}` })) });
+      return;
+    }
     const found = series(name);
     form.plan.outcomes.push({ id: unique(idOf(found?.id ?? name)), label: found?.label ?? column(name).label ?? name, unit: column(name).unit ?? "", role: form.plan.outcomes.length ? "secondary" : "primary",
       better: "lower", scale: "linear", visits: [{ label: alone, column: name }] });
   },
-  number: (name) => form.plan.covariates.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: name, kind: "number" }),
-  category: (name) => form.plan.covariates.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: name, kind: "category", levels: levelsOf(name) }),
+  number: (name) => form.plan.covariates.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: placesOf(column(name))[0], kind: "number" }),
+  category: (name) => form.plan.covariates.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: placesOf(column(name))[0], kind: "category", levels: levelsOf(name) }),
   event: (name) => {
     const values = (column(name).values ?? []).map((value) => value.text);
     const yes = values.filter((value) => /^(y|yes|1|true|j|ja|oui|si)$/i.test(value));
-    form.plan.events.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: name, yes, no: values.filter((value) => !yes.includes(value)) });
+    form.plan.events.push({ id: unique(idOf(name)), label: column(name).label ?? name, column: placesOf(column(name)).at(-1), yes, no: values.filter((value) => !yes.includes(value)) });
   },
 };
 
@@ -323,11 +350,82 @@ function unique(id) {
   return result;
 }
 
+// --- the files and how they lie ------------------------------------------------------------------------------------------
+
+// Guesses again with what was said of the files; what says nothing of columns is kept as it was typed.
+async function guessAgain(files, key) {
+  try {
+    const answer = await server.post("/guesses", { draft: form.draft, files: files.map((file) => ({ name: file.name, ...form.said.get(file.name) })) });
+    taken(answer, []);
+  } catch (fault) {
+    form.fault = fault.message;
+    draw();
+  }
+  restoreFocus(`[data-key="${CSS.escape(key)}"]`, $("main").querySelector("[data-key=add-file]"));
+}
+
+function taken(answer, refused) {
+  const { title, blinding, confidence, missing_baseline } = form.plan;
+  Object.assign(form, { guess: answer.guess, draft: answer.draft, plan: { ...complete(answer.plan), title, blinding, confidence, missing_baseline }, fault: refused.join(" ") || null });
+  draw();
+}
+
+async function addFiles(files) {
+  const note = form.element.querySelector(".files-note");
+  const { answer, refused } = await sendFiles(files, { draft: form.draft }, (words) => (note.textContent = words));
+  if (answer.guess && form.said.size) {
+    form.guess = answer.guess;
+    await guessAgain(form.guess.files, "add-file");
+    if (refused.length) fill($("plan-trouble"), refused.join(" "));
+  } else if (answer.guess) {
+    taken(answer, refused);
+  } else {
+    note.textContent = "";
+    form.fault = refused.join(" ");
+    fill($("plan-trouble"), form.fault);
+  }
+}
+
+function fileCard(file) {
+  const { files } = form.guess;
+  const at = form.plan.files?.findIndex((one) => one.id === file.id) ?? 0;
+  const path = `files[${at}]`;
+  const say = (key, value, more) => {
+    form.said.set(file.name, { ...form.said.get(file.name), [key]: value, ...more });
+    guessAgain(files, `${path}.${key}`);
+  };
+  const names = file.columns.map((name) => [name, name]);
+  const facts = [count(file.records, "record"), count(file.columns.length, "column"), file.participant ? count(file.participants, "participant") : "no identifier found",
+    files.length > 1 && !file.first ? `${file.shared} of them in ${files.find((one) => one.first).name}` : null, files.length > 1 && file.first ? "has every participant" : null];
+  const codes = make("input", { value: file.codes.map(({ code }) => code).join(", "), autocomplete: "off", "data-path": `${path}.codes`, "data-key": `${path}.codes`,
+    on: { change: () => say("codes", codes.value.split(",").map((part) => part.trim()).filter((part) => part !== "")) } });
+  return make("section", { class: "card", "aria-label": `File ${file.name}`, "data-at": path, "data-file": file.name },
+    make("header", {}, make("h4", {}, file.name), files.length > 1 ? button("Remove", () => {
+      form.said.delete(file.name);
+      guessAgain(files.filter((one) => one !== file), "add-file");
+    }, { class: "quiet", "aria-label": `Remove ${file.name}`, "data-key": `${path}.remove` }) : null),
+    make("p", { class: "hint" }, facts.filter(Boolean).join(", ")),
+    make("div", { class: "fields" },
+      choice("One row for each", [["participant", "participant"], ["visit", "participant and visit"]], file.layout, `${path}.layout`, (value) => say("layout", value), true),
+      files.length > 1 || file.layout === "visit" ? choice("Identifier", names, file.participant ?? "", `${path}.participant`, (value) => say("participant", value)) : null,
+      file.layout === "visit" ? choice("Code of the visit", names, file.visit ?? "", `${path}.visit`, (value) => say("visit", value, { layout: "visit", codes: undefined })) : null,
+      file.layout === "visit" ? label("Visits planned, in order of time", codes, true) : null));
+}
+
+function filesPart() {
+  const input = make("input", { type: "file", id: "more-files", multiple: true, accept: accepted, class: "unseen", tabindex: "-1", "aria-label": "More files", on: { change: () => addFiles([...input.files]) } });
+  const several = form.guess.files.length > 1;
+  return make("fieldset", {}, make("legend", {}, several ? "The files" : "The file"),
+    make("p", { class: "hint", "data-at": "files" }, several ? "The others are joined to the file that has every participant by their identifiers. Saying otherwise guesses the form again." : "Saying otherwise guesses the form again."),
+    form.guess.files.map(fileCard),
+    make("p", {}, button("Add a file", () => input.click(), { class: "quiet", "data-key": "add-file" }), " or drop it on the page. ", input, make("span", { class: "files-note", role: "status" })));
+}
+
 function columnsPart() {
   const used = uses();
   const example = (one) => (one.values ?? []).slice(0, 4).map((value) => value.text).join(", ");
-  return make("fieldset", {}, make("legend", {}, `The columns of ${form.guess.name ?? "the file"}`),
-    make("p", { class: "hint" }, `${count(form.guess.records, "record")}, ${count(form.guess.columns.length, "column")}. What stands below is a guess from names and values: look at each. Columns without a meaning stay in the study file and are not analysed.`),
+  return make("fieldset", {}, make("legend", {}, form.guess.files.length > 1 ? "The columns" : `The columns of ${form.guess.name ?? "the file"}`),
+    make("p", { class: "hint" }, form.guess.files.length > 1 ? `${count(form.guess.columns.length, "column")} of ${form.guess.files.length} files. ` : null, `What stands below is a guess from names and values: look at each. Columns without a meaning stay in the study file and are not analysed.`),
     make("div", { class: "scroll" }, make("table", { class: "table columns-table" },
       make("thead", {}, make("tr", {}, ["Column", "Filled", "For example", "Means"].map((words) => make("th", { scope: "col", class: words === "Filled" ? "number" : null }, words)))),
       make("tbody", {}, form.guess.columns.map((one) => make("tr", {}, make("th", { scope: "row" }, one.name), make("td", { class: "number" }, String(one.filled)),
@@ -346,7 +444,7 @@ function draw() {
   const typed = form.element ? { who: form.element.elements.who?.value, role: form.element.elements.role?.value } : {};
   form.pre = make("pre", { tabindex: "0", "aria-label": "The plan as JSON" });
   const trouble = make("div", { class: "trouble", role: "alert", id: "plan-trouble" });
-  form.element = make("form", { novalidate: true, on: { submit: makeStudy } }, columnsPart(), trialPart(), armPart(),
+  form.element = make("form", { novalidate: true, on: { submit: makeStudy } }, filesPart(), columnsPart(), trialPart(), armPart(),
     make("fieldset", {}, make("legend", {}, "Outcomes"), make("p", { class: "hint", "data-at": "outcomes" }, "Exactly one is primary. An outcome’s first visit is its baseline."), plan.outcomes.map(outcomeCard)),
     make("fieldset", {}, make("legend", {}, "Covariates"), make("p", { class: "hint" }, "Eligible: what the protocol admits. Plausible: beyond it a value is doubted. Bands: cut points such as 55, 65."), plan.covariates.map(covariateCard)),
     plan.events.length ? make("fieldset", {}, make("legend", {}, "Events"), plan.events.map(eventCard)) : null,
@@ -360,7 +458,7 @@ function draw() {
       ticks("Adjust for", "adjust_for", "adjust_for", "beside the baseline: prognostic, measured before randomisation, named in the plan."),
       ticks("Subgroups", "subgroups", "subgroups", "named in the plan.")),
     trouble,
-    make("p", { class: "actions" }, make("button", { type: "submit", class: "strong", "data-key": "make" }, "Make the study"), button("Save the plan", savePlan, { "data-key": "save-plan" }), button("Another file", form.back, { "data-key": "another" })));
+    make("p", { class: "actions" }, make("button", { type: "submit", class: "strong", "data-key": "make" }, "Make the study"), button("Save the plan", savePlan, { "data-key": "save-plan" }), button("Start again", form.back, { "data-key": "another" })));
   const side = make("aside", { class: "plan-side", "aria-label": "The plan" }, make("h3", {}, "The plan, as it will be kept"), form.pre, planFile());
   fill(main, make("h2", { class: "question", tabindex: "-1" }, "What do the columns mean?"), make("div", { class: "plan-form" }, form.element, side));
   if (typed.who && form.element.elements.who) {
@@ -386,7 +484,11 @@ function planFile() {
       draw();
     }
   };
-  takesDrops(place_of, take);
+  takesDrops(place_of, (files) => {
+    const plan = files.find((file) => /\.json$/i.test(file.name));
+    if (plan) take(plan);
+    else if (files.length) addFiles(files);
+  });
   return place_of;
 }
 
@@ -400,7 +502,7 @@ function savePlan() {
 // --- faults, where they belong ---------------------------------------------------------------------------------------------
 
 function pathOf(sentence) {
-  const path = sentence.match(/\b(title|participant|arm|outcomes|covariates|events|missing_codes|adjust_for|subgroups|blinding|confidence|missing_baseline)((?:\[\d+\]|\.[a-z_]+)*)/)?.[0];
+  const path = sentence.match(/\b(title|files|participant|arm|outcomes|covariates|events|missing_codes|adjust_for|subgroups|blinding|confidence|missing_baseline)((?:\[\d+\]|\.[a-z_]+)*)/)?.[0];
   if (path) return path;
   const name = sentence.match(/column "([^"]+)"/)?.[1];
   const field = name && [...form.element.querySelectorAll("select[data-path]")].find((select) => select.value === name);
@@ -431,6 +533,8 @@ function missing() {
   if (!form.file.trim()) return ["file", "The study file needs a name."];
   const { who, role } = form.element.elements;
   if (who && (!who.value.trim() || !role.value.trim())) return ["who", "Say who is deciding: a name and a role go into the record."];
+  const bare = (plan.files ?? []).findIndex((file) => !file.participant);
+  if (bare >= 0) return [`files[${bare}].participant`, "Say which column identifies a participant."];
   if (!plan.participant) return ["participant", "Say which column identifies a participant."];
   if (!plan.outcomes.length) return ["outcomes", "Say which column is the primary outcome: choose it in the table of columns above."];
   const both = (list, name) => list.flatMap((one, at) => ["plausible", "eligible"].filter((key) => one[key]?.includes(null))

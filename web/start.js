@@ -40,31 +40,47 @@ function studies(agenda, trouble, opened) {
       : make("p", {}, `There is none yet in ${agenda.folder ?? "this folder"}. Drop an export to make the first.`));
 }
 
+export const accepted = ".csv,.txt,.tsv,text/csv,.xlsx,.xpt,.sav,.zsav,.por,.dta,.sas7bdat";
+
+// Sends files one by one into one draft, each answer about all of them so far. Gives the last answer (the one given where none
+// was taken) and the sentences of those that were refused.
+export async function sendFiles(files, answer, tell) {
+  const refused = [];
+  for (const file of files) {
+    tell(`Reading ${file.name}, ${(file.size / 1024).toLocaleString("en-GB", { maximumFractionDigits: 0 })} KB…`);
+    try {
+      answer = await server.post(`/drafts?name=${encodeURIComponent(file.name)}${answer ? `&draft=${answer.draft}` : ""}`, file);
+    } catch (fault) {
+      refused.push(fault.message);
+    }
+  }
+  return { answer, refused };
+}
+
 function dropPlace(trouble, opened) {
   const progress = make("p", { class: "wait", role: "status" });
-  const input = make("input", { type: "file", id: "export", accept: ".csv,.txt,.tsv,text/csv", class: "unseen", on: { change: () => take(input.files[0]) } });
+  const input = make("input", { type: "file", id: "export", multiple: true, accept: accepted, class: "unseen", tabindex: "-1", "aria-label": "Files of an export", on: { change: () => take([...input.files]) } });
   const place = make("section", { class: "drop", "aria-labelledby": "drop-title" },
     make("h3", { id: "drop-title" }, "Drop an export here"),
-    make("p", {}, "One CSV file with a header and one record for each participant. Comma, semicolon or tab; UTF-8, UTF-16 or Windows-1252. Doubtful values are welcome: they are listed, not refused."),
-    make("p", {}, button("Choose a file", () => input.click(), { class: "strong", "data-key": "choose-export" }), input), progress);
-  const take = async (file) => {
-    if (!file) return;
+    make("p", {}, "One file or several of one trial, each with a header and one row for each participant, or one for each participant and visit. Comma, semicolon or tab; UTF-8, UTF-16 or Windows-1252; spreadsheets and common statistical files too. Doubtful values are welcome: they are listed, not refused."),
+    make("p", {}, button("Choose files", () => input.click(), { class: "strong", "data-key": "choose-export" }), input), progress);
+  const take = async (files) => {
+    if (!files.length) return;
     fill(trouble);
-    progress.textContent = `Reading ${file.name}, ${(file.size / 1024).toLocaleString("en-GB", { maximumFractionDigits: 0 })} KB…`;
-    try {
-      const draft = await server.post(`/drafts?name=${encodeURIComponent(file.name)}`, file);
-      showPlanForm(draft, opened, () => showStart(opened));
-    } catch (fault) {
+    const { answer, refused } = await sendFiles(files, null, (words) => (progress.textContent = words));
+    if (answer) {
+      showPlanForm(answer, opened, () => showStart(opened), refused);
+    } else {
       progress.textContent = "";
       input.value = "";
-      fill(trouble, fault.message);
+      fill(trouble, refused.join(" "));
     }
   };
   takesDrops(place, take);
   return place;
 }
 
-// A file dropped on the element, or anywhere on the page while the element is there.
+// Files dropped on the element, or anywhere on the page while the element is there.
 export function takesDrops(place, take) {
   const over = (event) => {
     if (!event.dataTransfer?.types.includes("Files")) return;
@@ -79,7 +95,7 @@ export function takesDrops(place, take) {
     }
     event.preventDefault();
     place.classList.remove("over");
-    take(event.dataTransfer.files[0]);
+    take([...event.dataTransfer.files]);
   };
   document.addEventListener("dragover", over);
   document.addEventListener("drop", drop);

@@ -46,6 +46,12 @@ static void ranks_release(struct ranks *ranks) {
 
 /* ---- is a pair of columns participant and visit? ---- */
 
+static bool is_unplanned(const char *code, struct arena *arena) {
+    struct name_parts parts;
+    name_take(&parts, code, arena);
+    return name_has(&parts, "unscheduled unsched unsch uns unplanned extra adhoc");
+}
+
 /* 6: plainly a visit's name; 4: a unit of time; 3: the codes read as times; 0: nothing says so. */
 static int names_visit(const struct look *look, struct arena *arena) {
     size_t read = 0;
@@ -65,7 +71,7 @@ static int names_visit(const struct look *look, struct arena *arena) {
         char *end;
         const char *text = look->values[i].value.text;
         bool number = (strtod(text, &end), end != text && !*end);
-        read += !number && visit_code_read("", text, arena, &order, &label);
+        read += !number && (visit_code_read("", text, arena, &order, &label) || is_unplanned(text, arena));
     }
     return 5 * read >= 4 * look->value_count ? 3 : 0;
 }
@@ -160,6 +166,9 @@ static int best_pair(struct guess *guess, const struct guess_file *file, const s
     int most = 0;
     for (size_t v = file->first_column; v < file->first_column + file->column_count; v++) {
         int name = said_when == NOWHERE ? names_visit(&looks[v], &guess->arena) : said_when == (int)v ? 6 : 0;
+        if (file->by_visit && said_when == NOWHERE && looks[v].value_count >= 2 && looks[v].value_count <= VISITS_MOST) {
+            name = name ? name : 1; /* a person says that there is one */
+        }
         if (!name) {
             continue;
         }
@@ -241,10 +250,7 @@ static int in_time(const void *left, const void *right) {
 
 /* A visit "unscheduled", or one that next to nobody has, was not planned. */
 static bool planned(const struct guess_code *code, size_t participants, struct arena *arena) {
-    struct name_parts parts;
-    name_take(&parts, code->code, arena);
-    return !name_has(&parts, "unscheduled unsched unsch uns unplanned extra adhoc") &&
-           (participants < 20 || 20 * code->records >= participants);
+    return !is_unplanned(code->code, arena) && (participants < 20 || 20 * code->records >= participants);
 }
 
 static void label_apart(struct guess_file *file) {
