@@ -133,6 +133,8 @@ enum derived_formula {
     DERIVED_DIFFERENCE,      /* first minus second */
     DERIVED_RATIO,           /* first over second */
     DERIVED_BODY_MASS_INDEX, /* weight in kg over the square of height in m */
+    DERIVED_DAYS_BETWEEN,    /* dates: second minus first */
+    DERIVED_AGE_AT,          /* dates: whole years completed from the first to the second */
     DERIVED_FORMULA_COUNT
 };
 struct derived_input {

@@ -12,6 +12,8 @@ static const char *const names[DERIVED_FORMULA_COUNT] = {
     [DERIVED_DIFFERENCE] = "difference",
     [DERIVED_RATIO] = "ratio",
     [DERIVED_BODY_MASS_INDEX] = "body-mass-index",
+    [DERIVED_DAYS_BETWEEN] = "days-between",
+    [DERIVED_AGE_AT] = "age-at",
 };
 
 const char *derived_formula_name(enum derived_formula formula) {
@@ -55,6 +57,10 @@ const char *derived_words(struct arena *arena, const struct derived *derived) {
     case DERIVED_BODY_MASS_INDEX:
         return arena_format(arena, "weight %s in kg divided by the square of height %s in m%s", first, second,
             derived->height_in_cm ? " (recorded in cm)" : "");
+    case DERIVED_DAYS_BETWEEN:
+        return arena_format(arena, "days from %s to %s", first, second);
+    case DERIVED_AGE_AT:
+        return arena_format(arena, "whole years completed from %s to %s", first, second);
     default:
         return items_words(arena, derived);
     }
@@ -62,12 +68,25 @@ const char *derived_words(struct arena *arena, const struct derived *derived) {
 
 /* ---- one value ---- */
 
+/* Somebody born on 29 February completes a year on 1 March where there is no such day. */
+static double whole_years(double birth, double at) {
+    int birth_year, birth_month, birth_day, year, month, day;
+    date_parts(birth, &birth_year, &birth_month, &birth_day);
+    date_parts(at, &year, &month, &day);
+    bool before = month < birth_month || (month == birth_month && day < birth_day);
+    return at < birth ? (double)NAN : year - birth_year - (before ? 1 : 0);
+}
+
 static double of_two(const struct derived *derived, double first, double second) {
     switch (derived->formula) {
     case DERIVED_DIFFERENCE:
         return first - second;
     case DERIVED_RATIO:
         return first / second;
+    case DERIVED_DAYS_BETWEEN:
+        return second - first;
+    case DERIVED_AGE_AT:
+        return whole_years(first, second);
     default: { /* body mass index */
         double metres = derived->height_in_cm ? second / 100 : second;
         return metres > 0 && first > 0 ? first / (metres * metres) : (double)NAN;
@@ -192,7 +211,8 @@ void derived_fill(struct column *column, const struct frame *frame, const struct
     column->state = ARENA_NEW(&column->arena, n, unsigned char);
     column->texts = ARENA_NEW(&column->arena, n, const char *);
     for (size_t i = 0; i < derived->of_count; i++) {
-        int decimals = frame->columns[derived->of[i].variable]->decimals + 1;
+        const struct column *input = frame->columns[derived->of[i].variable];
+        int decimals = input->kind == VARIABLE_DATE ? 0 : input->decimals + 1;
         decimals = decimals < MOST ? decimals : MOST;
         column->decimals = decimals > column->decimals ? decimals : column->decimals;
     }

@@ -1,6 +1,7 @@
 /* SPDX-License-Identifier: GPL-3.0-or-later */
 /* The key "derived" of a plan; and the guard that nothing recorded after randomisation is adjusted for. */
 #include "server/trial/plan-parts.h"
+#include "trial/dates.h"
 #include <math.h>
 #include <stdint.h>
 #include <string.h>
@@ -16,7 +17,13 @@ static const struct {
     [DERIVED_DIFFERENCE] = {"difference", 2, 2},
     [DERIVED_RATIO] = {"ratio", 2, 2},
     [DERIVED_BODY_MASS_INDEX] = {"body-mass-index", 2, 2},
+    [DERIVED_DAYS_BETWEEN] = {"days-between", 2, 2},
+    [DERIVED_AGE_AT] = {"age-at", 2, 2},
 };
+
+static bool takes_dates(enum derived_formula formula) {
+    return formula == DERIVED_DAYS_BETWEEN || formula == DERIVED_AGE_AT;
+}
 
 static bool takes_items(enum derived_formula formula) {
     return formula == DERIVED_MEAN || formula == DERIVED_SUM;
@@ -33,7 +40,8 @@ static bool read_formula(struct reader *reader, const cJSON *item, const char *p
             return true;
         }
     }
-    return wrong(reader, join(reader, path, "formula"), "must be mean, sum, difference, ratio or body-mass-index");
+    return wrong(reader, join(reader, path, "formula"), 
+        "must be mean, sum, difference, ratio, body-mass-index, days-between or age-at");
 }
 
 static bool read_inputs(struct reader *reader, const cJSON *item, const char *path, struct derived *derived) {
@@ -126,6 +134,10 @@ bool read_derived(struct reader *reader, const cJSON *item, const char *path) {
         !read_codes(reader, item, path, &derived->missing_codes)) {
         return false;
     }
+    derived->unit = *derived->unit                   ? derived->unit :
+        derived->formula == DERIVED_DAYS_BETWEEN     ? "days" :
+        derived->formula == DERIVED_AGE_AT           ? "years" :
+                                                       "";
     derived->column = arena_format(&plan->arena, "derived.%s", derived->id);
     derived->label = derived->label ? derived->label : derived->id;
     if (strpbrk(derived->id, ".@,=& ") || plan_derived(plan, derived->column) != NOWHERE) {
@@ -140,13 +152,17 @@ bool read_derived(struct reader *reader, const cJSON *item, const char *path) {
 
 /* A column that a derived value rests on or is compared with: what else the plan says of it stands. */
 static bool place_input(struct reader *reader, const struct derived *derived, const char *column, const struct place *place,
-    int *index) {
+    enum variable_kind kind, int *index) {
     struct plan *plan = reader->plan;
     *index = plan_variable(plan, column);
-    if (*index != NOWHERE && plan->variables[*index].kind == VARIABLE_NUMBER) {
+    if (kind == VARIABLE_DATE && !plan->dates) {
+        return fault_set(reader->fault, FAULT_INPUT, "%s: %s is made of dates, so the plan needs \"dates\" with the order they are written in",
+            reader->name, derived->column);
+    }
+    if (*index != NOWHERE && plan->variables[*index].kind == kind) {
         return true;
     }
-    struct variable variable = {.column = column, .place = *place, .label = column, .unit = "", .kind = VARIABLE_NUMBER,
+    struct variable variable = {.column = column, .place = *place, .label = column, .unit = "", .kind = kind,
         .outcome = NOWHERE, .visit = NOWHERE, .covariate = NOWHERE, .event = NOWHERE, .derived = NOWHERE,
         .moment = NOWHERE,
         .missing_codes = derived->missing_codes};
@@ -158,11 +174,13 @@ static bool place_derived(struct reader *reader, size_t i) {
     struct plan *plan = reader->plan;
     struct derived *derived = &plan->derived[i];
     for (size_t k = 0; k < derived->of_count; k++) {
-        if (!place_input(reader, derived, derived->of[k].column, &derived->of[k].place, &derived->of[k].variable)) {
+        if (!place_input(reader, derived, derived->of[k].column, &derived->of[k].place,
+                takes_dates(derived->formula) ? VARIABLE_DATE : VARIABLE_NUMBER, &derived->of[k].variable)) {
             return false;
         }
     }
-    if (derived->claims && !place_input(reader, derived, derived->claims, &derived->claims_place, &derived->claims_variable)) {
+    if (derived->claims && !place_input(reader, derived, derived->claims, &derived->claims_place, VARIABLE_NUMBER,
+                               &derived->claims_variable)) {
         return false;
     }
     derived->variable = plan_variable(plan, derived->column);
@@ -201,6 +219,10 @@ bool settle_derived(struct reader *reader) {
 static const char *follow_up_under(const struct plan *plan, int index) {
     const struct variable *variable = &plan->variables[index];
     if (variable->outcome != NOWHERE && (variable->visit > 0 || plan->outcomes[variable->outcome].visit_count == 1)) {
+        return variable->column;
+    }
+    const struct moment *moment = variable->moment == NOWHERE ? NULL : &plan->dates->moments[variable->moment];
+    if (moment && moment->kind != MOMENT_RANDOMISED && !(moment->kind == MOMENT_VISIT && !(moment->target > 0))) {
         return variable->column;
     }
     if (variable->derived != NOWHERE) {

@@ -274,6 +274,46 @@ static void test_checks(void **state) {
     case_close(&c);
 }
 
+/* ---- dates ---- */
+
+/* Days counted by R: as.Date("2026-03-01") - as.Date("2025-12-25") is 66, across a leap day from 2024-02-28 to 2024-03-01 2. Ages by the
+ * calendar: the year is complete on the birthday, and for 29 February on 1 March where there is none. */
+static void test_dates(void **state) {
+    (void)state;
+    static const struct {
+        const char *born, *from, *to;
+        double age, days;
+    } cases[] = {
+        {"1960-03-01", "2025-12-25", "2026-03-01", 66, 66}, {"1960-03-02", "2024-02-28", "2024-03-01", 63, 2},
+        {"1964-02-29", "2026-02-28", "2026-02-28", 61, 0},  {"1964-02-29", "2026-02-28", "2026-03-01", 62, 1},
+        {"2026-03-02", "2026-03-02", "2026-03-01", NAN, -1}, {"", "", "2026-03-01", NAN, NAN},
+    };
+    struct text data;
+    text_init(&data);
+    text_format(&data, "pid,born,rand,end,y0,y1\n");
+    for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
+        text_format(&data, "P%zu,%s,%s,%s,1,2\n", i, cases[i].born, cases[i].from, cases[i].to);
+    }
+    struct trial_case c;
+    case_open(&c, data.data, HEAD
+        " 'outcomes': [{'id': 'y', 'role': 'primary', 'better': 'lower',"
+        "   'visits': [{'label': 'Baseline', 'column': 'y0'}, {'label': 'End', 'column': 'y1'}]}],"
+        " 'dates': {'order': 'Y/M/D', 'randomised': {'column': 'rand'}},"
+        " 'derived': [{'id': 'age', 'formula': 'age-at', 'of': ['born', 'end']}, {'id': 'days', 'formula': 'days-between', 'of': ['rand', 'end']}],"
+        TAIL);
+    for (size_t i = 0; i < sizeof cases / sizeof *cases; i++) {
+        char who[8];
+        snprintf(who, sizeof who, "P%zu", i);
+        near(case_number(&c, who, "derived.age"), cases[i].age, 0, 0, cases[i].born);
+        near(case_number(&c, who, "derived.days"), cases[i].days, 0, 0, cases[i].to);
+    }
+    expect_text(frame_text(c.frame, case_column(&c, "derived.days"), 0), "66", "days are whole");
+    struct discrepancies all;
+    checks_run(c.frame, c.received, &c.arena, &all);
+    case_close(&c);
+    text_release(&data);
+}
+
 /* ---- against R ---- */
 
 /* The four follow-up scores of R's HSAUR3::BtheB, of which at least two must be there:
@@ -338,7 +378,7 @@ static void test_plans(void **state) {
         const char *old, *new, *sentence; /* NULL: taken */
     } cases[] = {
         {"'formula': 'mean'", "'formula': 'median'",
-            "plan.json: derived[0].formula must be mean, sum, difference, ratio or body-mass-index"},
+            "plan.json: derived[0].formula must be mean, sum, difference, ratio, body-mass-index, days-between or age-at"},
         {"'of': ['s0', 'd0']", "'of': ['s0']", "plan.json: derived[0].of must list two or more columns for the formula \"mean\""},
         {"'of': ['kg', 'cm']", "'of': ['kg', 'cm', 's0']",
             "plan.json: derived[1].of must list two columns for the formula \"body-mass-index\""},
@@ -412,6 +452,7 @@ int main(void) {
         cmocka_unit_test(test_missing_inputs_and_records),
         cmocka_unit_test(test_decisions_about_it),
         cmocka_unit_test(test_checks),
+        cmocka_unit_test(test_dates),
         cmocka_unit_test(test_against_r),
         cmocka_unit_test(test_plans),
     };
