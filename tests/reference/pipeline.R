@@ -583,6 +583,8 @@ random_trials <- function() {
     transform(base(20, 32), a = sprintf("%.10g", 2 * y0 + 1)),
     list(number_of("a", "Again")), "a")
   for (k in 2:6) small(paste0("tiny-", k), paste("Seeded trial of", k), base(k, 40 + k))
+  # R's own reader of decimals may miss the nearest double by one unit in the last place, which far from 0 would be seen;
+  # with this seed it does not
   set.seed(51); n <- 40; noise <- rnorm(n)
   d <- data.frame(pid = pid(n), grp = rep(c("A", "B"), each = 20),
     age = round(rnorm(n, 60, 8)), y0 = sprintf("%.6f", 1e6 + noise))

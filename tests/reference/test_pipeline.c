@@ -32,7 +32,9 @@ static char *file_text(const char *case_name, const char *ending, bool needed) {
         text_append(&text, part, n);
     }
     fclose(file);
-    return text_take(&text);
+    char *bytes = text_take(&text);
+    text_release(&text); /* taking leaves an empty text behind */
+    return bytes;
 }
 
 static void open_case(struct exhibit_case *c, const char *name) {
