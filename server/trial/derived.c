@@ -82,7 +82,7 @@ static double of_two(const struct derived *derived, double first, double second)
     case DERIVED_DIFFERENCE:
         return first - second;
     case DERIVED_RATIO:
-        return first / second;
+        return second < 0 || second > 0 ? first / second : (double)NAN;
     case DERIVED_DAYS_BETWEEN:
         return second - first;
     case DERIVED_AGE_AT:
