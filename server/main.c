@@ -323,6 +323,7 @@ static void print_account(const struct text *account) {
 }
 
 static enum exit_status run_load(const struct given *given) {
+    memory_for_bulk();
     struct fault fault;
     fault_init(&fault);
     size_t count = given->word_count;

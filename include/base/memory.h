@@ -14,6 +14,10 @@ void *memory_grow(void *old, size_t count, size_t size);    /* old may be NULL; 
 char *memory_text(const char *text);                        /* a copy; text may be NULL, then NULL */
 void memory_free(void *memory);
 
+/* For a task that fills much memory once, such as loading: asks for it in large pages and keeps it until the end, which saves
+ * most of what the system spends on handing pages out. Before any thread is started; where it cannot be had nothing changes. */
+void memory_for_bulk(void);
+
 struct arena {
     struct arena_block *block; /* newest first */
     size_t used;               /* bytes handed out of the newest block */

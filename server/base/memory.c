@@ -6,6 +6,8 @@
 #include <stdio.h>
 #include <stdlib.h>
 #include <string.h>
+#include <malloc.h>
+#include <sys/mman.h>
 
 enum { BLOCK_SIZE = 1 << 16 };
 
@@ -41,6 +43,20 @@ void *memory_grow(void *old, size_t count, size_t size) {
 
 char *memory_text(const char *text) {
     return text ? or_stop(strdup(text)) : NULL;
+}
+
+void memory_for_bulk(void) {
+    enum { PAGE = 2 << 20, ROOM = 256 << 20 };
+    mallopt(M_ARENA_MAX, 1);
+    mallopt(M_MMAP_THRESHOLD, ROOM);
+    mallopt(M_TRIM_THRESHOLD, 2 * ROOM);
+    /* The heap grows once to its room, untouched; then its whole large pages are asked for. */
+    char *room = malloc(ROOM - PAGE);
+    if (room) {
+        uintptr_t start = ((uintptr_t)room + PAGE - 1) / PAGE * PAGE;
+        madvise((void *)start, ROOM - 2 * (size_t)PAGE, MADV_HUGEPAGE);
+        free(room);
+    }
 }
 
 void memory_free(void *memory) {
